@@ -1,0 +1,115 @@
+"""What the planning studies hand to the report: frozen records, plain numbers, units in the names."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from enum import StrEnum
+
+import numpy as np
+from numpy.typing import NDArray
+
+__all__ = ["BandShare", "BinnedSpectrum", "Counts", "PlanResult", "PlanRow", "Verdict"]
+
+
+class Verdict(StrEnum):
+    """What a plan comes down to."""
+
+    WITHIN_REACH = "within reach"
+    TOO_MANY = "more than the transits available"
+    FLOOR = "unreachable (floor)"
+    CONFUSION = "unreachable (confusion)"
+    NO_BAND = "no band in range"
+    SATURATED = "saturated"
+
+
+@dataclass(frozen=True, kw_only=True)
+class BandShare:
+    """A stretch of wavelength and its share of the information in one transit, all else known."""
+
+    from_um: float
+    to_um: float
+    share: float
+
+
+@dataclass(frozen=True, kw_only=True)
+class Counts:
+    """Significance and transits under one treatment of the nuisances.
+
+    ``snr_limit`` is infinite where neither a floor nor confusion bounds it. ``transits_required`` and the hours
+    are ``None`` where no number of transits is enough; ``transits_unrounded`` is the real-valued solution.
+    """
+
+    snr_one_transit: float
+    snr_limit: float
+    transits_required: int | None
+    transits_unrounded: float | None
+    hours_required: float | None
+    in_transit_hours_required: float | None
+
+
+@dataclass(frozen=True, kw_only=True)
+class PlanRow:
+    """One gas at one mixing ratio with one mode."""
+
+    gas: str
+    mixing_ratio: float
+    mode: str
+    verdict: Verdict
+    marginalised: Counts
+    all_known: Counts
+    best_bands: tuple[BandShare, ...]
+    confusion: tuple[tuple[str, float], ...]
+    """Nuisances that cost most: (name, S/N of one transit if this one alone were known), largest gain first."""
+    uncovered_um: tuple[tuple[str, float, float], ...]
+    """Stretches (gas, from, to) that a gas's data do not cover."""
+    saturated_um: tuple[tuple[float, float], ...]
+    cautions: tuple[str, ...]
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class BinnedSpectrum:
+    """Model spectrum of one row in the bins of its mode. All arrays have shape ``(bin,)``; depths in ppm."""
+
+    gas: str
+    mixing_ratio: float
+    mode: str
+    detector: NDArray[np.int64]
+    from_um: NDArray[np.float64]
+    to_um: NDArray[np.float64]
+    depth_ppm: NDArray[np.float64]
+    shares_ppm: Mapping[str, NDArray[np.float64]]
+    """Share of each gas, the candidate first (design: depth with it less depth without its absorption)."""
+    noise_one_transit_ppm: NDArray[np.float64]
+    floor_ppm: NDArray[np.float64]
+    """Floor of each bin (its own width taken into account)."""
+    usable: NDArray[np.bool_]
+    """False where saturated or not covered."""
+    scale_height_ppm: float
+    """Depth change of one scale height."""
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class PlanResult:
+    """All rows of a plan with what a reader needs to judge them."""
+
+    title: str
+    invented: bool
+    """The target is made up (demonstration); the report says so."""
+    threshold_sigma: float
+    power: float
+    transits_available: int | None
+    transit_duration_h: float
+    charged_hours_per_transit: float
+    scale_height_km: float
+    scale_height_ppm: float
+    rows: tuple[PlanRow, ...]
+    spectra: tuple[BinnedSpectrum, ...]
+    """In the order of the rows."""
+    line_data: tuple[str, ...]
+    """One sentence per gas: embedded or imported, edition or hash, range, quality."""
+    assumptions: tuple[str, ...]
+    nuisances: tuple[tuple[str, str], ...]
+    """(name, prior width in words)."""
+    cautions: tuple[str, ...]
+    version: str
