@@ -1,0 +1,147 @@
+"""The store of computed tables: arrays on disk, named by what they were computed from.
+
+An entry is one ``.npy`` file ``<key>-<checksum>.npy``: the key is a hash of everything the array depends on, the
+checksum is that of the file's bytes. A file appears by one atomic rename, so two processes building the same entry
+end with one good file, and a build that is killed leaves no half-written entry. A file whose bytes do not give its
+checksum is removed, rebuilt, and said.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import os
+import tempfile
+import zlib
+from collections.abc import Callable, Iterator, Mapping
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+__all__ = ["Store", "digest"]
+
+DEFAULT_LIMIT_BYTES = 6_000_000_000
+
+
+def digest(*parts: bytes | str) -> str:
+    """Short hash of a sequence of texts and byte strings."""
+    total = hashlib.sha256()
+    for part in parts:
+        data = part.encode() if isinstance(part, str) else part
+        total.update(len(data).to_bytes(8, "little"))
+        total.update(data)
+    return total.hexdigest()[:24]
+
+
+class Store:
+    """Arrays on disk, keyed by content.
+
+    Parameters
+    ----------
+    folder : Path, optional
+        Where to keep them; by default ``$LIMBCAST_STORE`` or the user's cache folder.
+    limit_bytes : int
+        When the store grows beyond this, the entries that were used longest ago are removed.
+
+    Attributes
+    ----------
+    notices : list of str
+        What the user should hear: damaged entries that were rebuilt, a folder that cannot be written.
+    """
+
+    def __init__(self, folder: Path | None = None, limit_bytes: int = DEFAULT_LIMIT_BYTES) -> None:
+        if folder is None:
+            import platformdirs
+
+            named = os.environ.get("LIMBCAST_STORE")
+            folder = Path(named) if named else Path(platformdirs.user_cache_dir("limbcast")) / "tables"
+        self.folder = folder
+        self.limit_bytes = limit_bytes
+        self.notices: list[str] = []
+        self._writable = True
+
+    def fetch(self, group: str, key: Mapping[str, Any], build: Callable[[], NDArray[Any]]) -> NDArray[Any]:
+        """The array for a key: memory-mapped if it is stored, else built, stored and returned.
+
+        Parameters
+        ----------
+        group : str
+            Sub-folder, for instance the gas.
+        key : mapping
+            Everything the array depends on; must be JSON-serialisable.
+        build : callable
+            Computes the array when it is not there.
+        """
+        name = digest(json.dumps(key, sort_keys=True))
+        found = self._read(group, name)
+        if found is not None:
+            return found
+        array = np.ascontiguousarray(build())
+        self._write(group, name, array)
+        return array
+
+    def entries(self) -> Iterator[Path]:
+        """All stored files."""
+        return (path for path in self.folder.glob("*/*.npy") if path.is_file())
+
+    def size_bytes(self) -> int:
+        """Bytes that the store takes on disk."""
+        return sum(path.stat().st_size for path in self.entries())
+
+    def clear(self) -> int:
+        """Remove every entry; returns the number removed."""
+        removed = 0
+        for path in list(self.entries()):
+            path.unlink(missing_ok=True)
+            removed += 1
+        return removed
+
+    def _read(self, group: str, name: str) -> NDArray[Any] | None:
+        for path in (self.folder / group).glob(f"{name}-*.npy"):
+            try:
+                if f"{_checksum(path):08x}" == path.stem.rpartition("-")[2]:
+                    array: NDArray[Any] = np.load(path, mmap_mode="r", allow_pickle=False)
+                    os.utime(path)
+                    return array
+            except (OSError, ValueError):
+                pass
+            self.notices.append(f"store: {path} was damaged and is built again")
+            path.unlink(missing_ok=True)
+        return None
+
+    def _write(self, group: str, name: str, array: NDArray[Any]) -> None:
+        if not self._writable:
+            return
+        folder = self.folder / group
+        try:
+            folder.mkdir(parents=True, exist_ok=True)
+            with tempfile.NamedTemporaryFile(dir=folder, suffix=".part", delete=False) as file:
+                np.save(file, array, allow_pickle=False)
+            path = Path(file.name)
+            os.replace(path, folder / f"{name}-{_checksum(path):08x}.npy")
+        except OSError as error:
+            self._writable = False
+            self.notices.append(
+                f"store: {self.folder} cannot be written ({error.strerror or error}); tables are kept in memory only. "
+                "Set LIMBCAST_STORE to a folder you can write to"
+            )
+            return
+        self._prune()
+
+    def _prune(self) -> None:
+        files = sorted(((p.stat().st_mtime, p.stat().st_size, p) for p in self.entries()), reverse=True)
+        total = 0
+        for _, size, path in files:
+            total += size
+            if total > self.limit_bytes:
+                path.unlink(missing_ok=True)
+
+
+def _checksum(path: Path) -> int:
+    total = 0
+    with path.open("rb") as file:
+        while chunk := file.read(1 << 22):
+            total = zlib.crc32(chunk, total)
+    return total
