@@ -23,7 +23,15 @@ from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.molecules import Molecule, find_molecule
 from planner.spectroscopy.store import Store, digest
 
-__all__ = ["Constants", "build_lines", "embedded_formulas", "read_constants", "smooth_cross_section"]
+__all__ = [
+    "Constants",
+    "build_lines",
+    "embedded_formulas",
+    "lines_from_table",
+    "read_constants",
+    "smooth_cross_section",
+    "table_from_lines",
+]
 
 _LINE_KINDS = {
     "linear": "linear:linear_lines",
@@ -114,7 +122,7 @@ def build_lines(constants: Constants, store: Store) -> Lines | None:
     if not constants.line_parts:
         return None
     key = {"list": constants.digest, "generators": _generators_digest()}
-    return _unpacked(store.fetch("lists", key, lambda: _packed(_generate(constants))))
+    return lines_from_table(store.fetch("lists", key, lambda: table_from_lines(_generate(constants))))
 
 
 def smooth_cross_section(
@@ -155,14 +163,16 @@ _FIELDS = [(name, "<f8") for name in (
 _LABELS = [(name, "S15") for name in ("upper_global", "lower_global", "upper_local", "lower_local")]
 
 
-def _packed(lines: Lines) -> NDArray[Any]:
+def table_from_lines(lines: Lines) -> NDArray[Any]:
+    """Lines as one structured array, for the store."""
     table = np.empty(len(lines), dtype=[*_FIELDS, *_LABELS])
     for name, _ in _FIELDS + _LABELS:
         table[name] = getattr(lines, name)
     return table
 
 
-def _unpacked(table: NDArray[Any]) -> Lines:
+def lines_from_table(table: NDArray[Any]) -> Lines:
+    """Inverse of :func:`table_from_lines`."""
     numbers = {name: np.array(table[name]) for name, _ in _FIELDS}
     labels = {name: table[name].astype("U15") for name, _ in _LABELS}
     return Lines(**numbers, **labels)

@@ -1,0 +1,218 @@
+"""Opacities of an atmosphere: tables of cross-sections made when needed, interpolated to one temperature.
+
+Tables hold log10 of the line cross-section as float32 on (pressure, wavenumber), one per gas, temperature node and
+block of the grid. Temperature nodes stand 12 % apart and are interpolated in 1/T, in which a Boltzmann factor is
+linear. Pressures are three per decade from 1e-6 to 10 bar and one Doppler-limited row that is held below.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from functools import lru_cache
+from math import floor, log
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.atmosphere.transmission import GasOpacity, PairOpacity
+from planner.spectroscopy.broadening import width_factor
+from planner.spectroscopy.grid import LogGrid
+from planner.spectroscopy.lines import Lines
+from planner.spectroscopy.lists.build import smooth_cross_section
+from planner.spectroscopy.rayleigh import rayleigh_cross_section
+from planner.spectroscopy.sources import GasSource, LineLibrary
+from planner.spectroscopy.store import Store, digest
+
+__all__ = ["PRESSURES_BAR", "TEMPERATURE_STEP", "Opacities", "temperature_nodes"]
+
+PRESSURES_BAR: NDArray[np.float64] = np.concatenate([[1e-8], np.logspace(-6, 1, 22)])
+TEMPERATURE_STEP = 1.12
+_LOWEST_K = 100.0
+_NOTHING = np.float32(-60.0)
+"""log10 of a cross-section that is zero."""
+
+_LEAST_SELF_FRACTION = 0.05
+"""Below this mixing ratio self-broadening changes no width by more than a few per cent and is left out."""
+
+Progress = Callable[[str, float], None]
+
+
+def temperature_nodes(temperature_k: float) -> tuple[float, float]:
+    """The two nodes that bracket a temperature; equal if it stands on a node."""
+    steps = log(temperature_k / _LOWEST_K) / log(TEMPERATURE_STEP)
+    low = floor(steps + 1e-9)
+    high = low if abs(steps - low) < 1e-6 else low + 1
+    return _LOWEST_K * TEMPERATURE_STEP**low, _LOWEST_K * TEMPERATURE_STEP**high
+
+
+class Opacities:
+    """Cross-sections of gases and pairs on one grid.
+
+    Parameters
+    ----------
+    library : LineLibrary
+        Where the lines come from.
+    store : Store
+        Keeps the tables.
+    grid : LogGrid
+        The samples.
+    air : mapping of formula to mixing ratio
+        Sets the broadening.
+    wing_per_cm : float
+        Line wings are cut at this distance.
+    water_continuum : bool
+        Whether the water continuum is on; its lines then lose their value at the cut, which the continuum holds.
+    progress : callable, optional
+        Called with a text and the share done while tables are built.
+    """
+
+    def __init__(
+        self,
+        library: LineLibrary,
+        store: Store,
+        grid: LogGrid,
+        *,
+        air: Mapping[str, float],
+        wing_per_cm: float = 25.0,
+        water_continuum: bool = True,
+        progress: Progress | None = None,
+    ) -> None:
+        self.grid = grid
+        self.broadening, self.broadening_note = width_factor(air)
+        self._library = library
+        self._store = store
+        self._wing_per_cm = wing_per_cm
+        self._water_continuum = water_continuum
+        self._progress = progress or (lambda text, share: None)
+        self._node = lru_cache(maxsize=64)(self._build_node)
+
+    def gas(self, formula: str, temperature_k: float, mixing_ratio: float = 0.0) -> GasOpacity:
+        """What one gas absorbs and scatters by itself at a temperature.
+
+        The mixing ratio enters through self-broadening alone.
+        """
+        wavenumber = self.grid.wavenumber_per_cm
+        flat = rayleigh_cross_section(formula, wavenumber)
+        source = self._library.gas(formula) if self.has_data(formula) else None
+        table = None
+        if source is not None:
+            if source.constants is not None:
+                smooth = smooth_cross_section(source.constants, wavenumber, temperature_k)
+                flat = flat if smooth is None else flat + smooth
+            if source.lines is not None and len(source.lines):
+                table = self._interpolated(source, temperature_k, mixing_ratio)
+        return GasOpacity(
+            formula=formula,
+            pressures_bar=PRESSURES_BAR,
+            log10_cross_section=table,
+            flat_cross_section_cm2=flat if np.any(flat) else None,
+        )
+
+    def has_data(self, formula: str) -> bool:
+        """Whether the gas has lines or bands at all (noble gases and homonuclear ones may have none)."""
+        from planner.errors import LineDataError
+
+        try:
+            self._library.gas(formula)
+        except LineDataError:
+            return False
+        return True
+
+    def pairs(self, formulas: Sequence[str], temperature_k: float) -> list[PairOpacity]:
+        """Collision-induced absorption of every known pair among the gases, and the water continuum."""
+        from planner.spectroscopy.collisions import collision_coefficient, collision_pairs
+        from planner.spectroscopy.watercontinuum import water_continuum
+
+        wavenumber = self.grid.wavenumber_per_cm
+        present = set(formulas)
+        found = [
+            PairOpacity(first=a, second=b, coefficient_cm5=collision_coefficient((a, b), wavenumber, temperature_k))
+            for a, b in collision_pairs()
+            if a in present and b in present
+        ]
+        if self._water_continuum and "H2O" in present:
+            own, foreign = water_continuum(wavenumber, temperature_k)
+            found += [
+                PairOpacity(first="H2O", second="H2O", coefficient_cm5=own),
+                PairOpacity(first="H2O", second="*", coefficient_cm5=foreign),
+            ]
+        return [pair for pair in found if np.any(pair.coefficient_cm5)]
+
+    def covered(self, formula: str) -> NDArray[np.bool_]:
+        """Where the gas's data can be trusted, shape ``(wavenumber,)``."""
+        wavenumber = self.grid.wavenumber_per_cm
+        mask = np.zeros(wavenumber.size, dtype=bool)
+        for low, high in self._library.gas(formula).covers_per_cm:
+            mask |= (wavenumber >= low) & (wavenumber <= high)
+        return mask
+
+    def _interpolated(self, source: GasSource, temperature_k: float, mixing_ratio: float) -> NDArray[np.float32]:
+        share = round(mixing_ratio, 1) if mixing_ratio >= _LEAST_SELF_FRACTION else 0.0
+        low_k, high_k = temperature_nodes(temperature_k)
+        low = self._node(source.molecule.formula, low_k, share)
+        if high_k == low_k:
+            return low
+        high = self._node(source.molecule.formula, high_k, share)
+        weight = np.float32((1 / low_k - 1 / temperature_k) / (1 / low_k - 1 / high_k))
+        return low + weight * (high - low)
+
+    def _build_node(self, formula: str, temperature_k: float, self_fraction: float) -> NDArray[np.float32]:
+        """Table on the whole grid at a temperature node, shape ``(pressure, wavenumber)``."""
+        source = self._library.gas(formula)
+        assert source.lines is not None
+        table = np.full((PRESSURES_BAR.size, self.grid.count), _NOTHING, dtype=np.float32)
+        blocks = self.grid.blocks()
+        for number, block in enumerate(blocks):
+            self._progress(f"{formula} at {temperature_k:.0f} K", number / len(blocks))
+            values = self._block(source, source.lines, block, temperature_k, self_fraction)
+            if values is not None:
+                mine, theirs = self.grid.part_of(block)
+                table[:, mine] = values[:, theirs]
+        return table
+
+    def _block(
+        self, source: GasSource, lines: Lines, block: LogGrid, temperature_k: float, self_fraction: float
+    ) -> NDArray[np.float32] | None:
+        wavenumber = block.wavenumber_per_cm
+        reach = self._wing_per_cm + 1.0
+        first, last = np.searchsorted(lines.wavenumber_per_cm, [wavenumber[0] - reach, wavenumber[-1] + reach])
+        if first == last:
+            return None
+        subtract = self._water_continuum and source.molecule.formula == "H2O"
+        key = {
+            "source": source.digest,
+            "kernel": _kernel_digest(),
+            "temperature_k": round(temperature_k, 6),
+            "self_fraction": self_fraction,
+            "broadening": round(self.broadening, 3),
+            "wing_per_cm": self._wing_per_cm,
+            "subtract_at_wing": subtract,
+            "block": [block.first, block.count, block.samples_per_unit_ln],
+            "pressures_bar": PRESSURES_BAR.tolist(),
+        }
+
+        def build() -> NDArray[np.float32]:
+            from planner.spectroscopy.crosssections import cross_sections
+
+            values = cross_sections(
+                lines.where(slice(first, last)),  # type: ignore[arg-type]
+                wavenumber,
+                temperature_k=temperature_k,
+                pressures_bar=PRESSURES_BAR,
+                self_fraction=self_fraction,
+                width_factor=round(self.broadening, 3),
+                wing_per_cm=self._wing_per_cm,
+                subtract_at_wing=subtract,
+            )
+            with np.errstate(divide="ignore"):
+                return np.maximum(np.log10(values), _NOTHING).astype(np.float32)
+
+        return self._store.fetch(source.molecule.formula, key, build)
+
+
+@lru_cache(maxsize=1)
+def _kernel_digest() -> str:
+    folder = Path(__file__).parent
+    names = ("crosssections.py", "voigt.py", "_kernels.py", "molecules.py")
+    return digest(*((folder / name).read_bytes() for name in names if (folder / name).is_file()))
