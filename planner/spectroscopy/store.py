@@ -105,6 +105,8 @@ class Store:
                     array: NDArray[Any] = np.load(path, mmap_mode="r", allow_pickle=False)
                     os.utime(path)
                     return array
+            except FileNotFoundError:
+                continue  # another process has just removed it
             except (OSError, ValueError):
                 pass
             self.notices.append(f"store: {path} was damaged and is built again")
