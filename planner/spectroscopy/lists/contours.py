@@ -112,9 +112,7 @@ def _add_contour(
     boltzmann = math.exp(-_SECOND_RADIATION_CM_K * energy * (1.0 / temperature_k - 1.0 / _REFERENCE_K))
     height = intensity * boltzmann / (half_integral * (left + right))
     left, right = left * ratio**exponent, right * ratio**exponent
-    begin, middle, end = np.searchsorted(
-        wavenumber, [centre - farthest * left, centre, centre + farthest * right]
-    )
+    begin, middle, end = np.searchsorted(wavenumber, [centre - farthest * left, centre, centre + farthest * right])
     total[begin:middle] += height * shape((wavenumber[begin:middle] - centre) / left)
     total[middle:end] += height * shape((wavenumber[middle:end] - centre) / right)
 
@@ -140,7 +138,5 @@ def _span(part: Mapping[str, Any], key: str) -> tuple[float, float]:
     """Two ascending numbers of a part."""
     value = part.get(key)
     if not isinstance(value, (list, tuple)) or len(value) != 2 or not value[0] < value[1]:
-        raise LineDataError(
-            f"part {part.get('name', '?')!r}: {key}: expected two ascending numbers, got {value!r}"
-        )
+        raise LineDataError(f"part {part.get('name', '?')!r}: {key}: expected two ascending numbers, got {value!r}")
     return float(value[0]), float(value[1])
