@@ -1,0 +1,180 @@
+"""Records of the target: star, planet and its air.
+
+Field names carry the unit of the float they hold; the name in the file, and for making a record in Python, is the
+alias: ``Planet(name="b", mass="0.7 M_earth", ...)``. Strings with units and astropy quantities are both read.
+"""
+
+from __future__ import annotations
+
+import math
+
+import astropy.units as u
+from pydantic import Field, model_validator
+
+from planner.scenario import geometry
+from planner.scenario.fields import (
+    Amounts,
+    Bar,
+    Covered,
+    Days,
+    EarthMasses,
+    EarthRadii,
+    HazeFactor,
+    Impact,
+    Kelvin,
+    Magnitudes,
+    Name,
+    OptionalAu,
+    OptionalEarthMasses,
+    OptionalFile,
+    OptionalHours,
+    OptionalLogG,
+    OptionalSolarMasses,
+    Parsecs,
+    PerCm,
+    Record,
+    Shares,
+    Slope,
+    SolarRadii,
+    Switch,
+)
+from planner.scenario.readings import FieldProblem
+
+__all__ = ["Atmosphere", "Cloud", "Haze", "Planet", "Star"]
+
+
+class Star(Record):
+    """The host star. Its mass is given as such, or by its surface gravity: exactly one of the two."""
+
+    name: Name
+    temperature_k: Kelvin = Field(alias="temperature")
+    """Effective temperature."""
+    radius_rsun: SolarRadii = Field(alias="radius")
+    given_mass_msun: OptionalSolarMasses = Field(default=None, alias="mass")
+    given_log_g: OptionalLogG = Field(default=None, alias="log_g")
+    distance_pc: Parsecs = Field(alias="distance")
+    magnitudes: Magnitudes = Field(default_factory=dict)
+    """Vega magnitudes by band; where none is given, the photons follow from radius and distance."""
+    spectrum: OptionalFile = None
+    """File with the user's own spectrum; ``None`` for the built-in one."""
+    spectrum_at_earth: Switch = False
+    """Whether that spectrum is the flux that arrives here; otherwise only its shape counts."""
+
+    @model_validator(mode="after")
+    def _one_source_of_mass(self) -> Star:
+        if (self.given_mass_msun is None) == (self.given_log_g is None):
+            found = "neither" if self.given_mass_msun is None else "both"
+            raise ValueError(f'expected one of mass, such as "0.09 M_sun", and log_g, such as 5.2, got {found}')
+        return self
+
+    @model_validator(mode="after")
+    def _a_spectrum_to_speak_of(self) -> Star:
+        if self.spectrum_at_earth and self.spectrum is None:
+            raise FieldProblem("expected a spectrum as well, got none", ("spectrum_at_earth",))
+        return self
+
+    @property
+    def radius_m(self) -> float:
+        """Radius in metres."""
+        return float(self.radius_rsun * u.R_sun.to(u.m))
+
+    @property
+    def distance_m(self) -> float:
+        """Distance from us in metres."""
+        return float(self.distance_pc * u.pc.to(u.m))
+
+    @property
+    def mass_kg(self) -> float:
+        """Mass in kilograms."""
+        if self.given_log_g is not None:
+            return 10.0 ** (self.given_log_g - 2) * self.radius_m**2 / geometry.GRAVITATION_SI
+        return float((self.given_mass_msun or math.nan) * u.M_sun.to(u.kg))
+
+    @property
+    def log_g(self) -> float:
+        """log10 of the surface gravity in cm s-2."""
+        if self.given_log_g is not None:
+            return self.given_log_g
+        return 2 + math.log10(geometry.gravity_m_per_s2(mass_kg=self.mass_kg, radius_m=self.radius_m))
+
+
+class Planet(Record):
+    """The planet and its circular orbit. A missing ``distance`` follows from period and stellar mass."""
+
+    name: Name
+    mass_mearth: EarthMasses = Field(alias="mass")
+    mass_error_mearth: OptionalEarthMasses = Field(default=None, alias="mass_error")
+    radius_rearth: EarthRadii = Field(alias="radius")
+    """Radius at which the pressure of the atmosphere is given."""
+    period_d: Days = Field(alias="period")
+    impact_parameter: Impact
+    given_distance_au: OptionalAu = Field(default=None, alias="distance")
+    given_transit_duration_h: OptionalHours = Field(default=None, alias="transit_duration")
+
+    @property
+    def radius_m(self) -> float:
+        """Radius in metres."""
+        return float(self.radius_rearth * u.R_earth.to(u.m))
+
+    @property
+    def mass_kg(self) -> float:
+        """Mass in kilograms."""
+        return float(self.mass_mearth * u.M_earth.to(u.kg))
+
+    @property
+    def gravity_m_per_s2(self) -> float:
+        """Gravity at the radius."""
+        return geometry.gravity_m_per_s2(mass_kg=self.mass_kg, radius_m=self.radius_m)
+
+
+class Cloud(Record):
+    """A grey deck, opaque below its top, over a share of the limb."""
+
+    top_bar: Bar = Field(alias="top")
+    covered_fraction: Covered = 1.0
+
+
+class Haze(Record):
+    """Scattering on top of the air's own: its strength and its slope ``d ln sigma / d ln wavelength``."""
+
+    factor: HazeFactor
+    slope: Slope = -4.0
+
+
+class Atmosphere(Record):
+    """Isothermal air: the background fills what the absorbers and the candidate leave."""
+
+    temperature_k: Kelvin = Field(alias="temperature")
+    pressure_bar: Bar = Field(alias="pressure")
+    """Pressure at the planet's radius: the surface, or the reference level when there is none."""
+    surface: Switch
+    """Whether the planet's radius is an opaque surface."""
+    background: Shares
+    """Relative share by formula; shares need not add up to 1."""
+    absorbers: Amounts = Field(default_factory=dict)
+    """Mixing ratio by formula."""
+    cloud: Cloud | None = None
+    haze: Haze | None = None
+    refraction: Switch = True
+    water_continuum: Switch = True
+    line_wing_per_cm: PerCm = Field(default=25.0, alias="line_wing")
+
+    @model_validator(mode="after")
+    def _gases_once(self) -> Atmosphere:
+        for gas in self.absorbers:
+            if gas in self.background:
+                raise FieldProblem(f"{gas} is a background gas already; list it once", ("absorbers", gas))
+        total = sum(self.absorbers.values())
+        if total >= 1:
+            message = f"expected mixing ratios that leave room for the background, got a sum of {total:.6g}"
+            raise FieldProblem(message, ("absorbers",))
+        return self
+
+    @model_validator(mode="after")
+    def _cloud_above_the_surface(self) -> Atmosphere:
+        if self.surface and self.cloud is not None and self.cloud.top_bar >= self.pressure_bar:
+            message = (
+                f"expected less than the surface pressure, {self.pressure_bar:g} bar, got {self.cloud.top_bar:g} bar"
+            )
+            raise FieldProblem(message, ("cloud", "top"))
+        return self
