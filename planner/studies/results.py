@@ -60,7 +60,8 @@ class PlanRow:
     all_known: Counts
     best_bands: tuple[BandShare, ...]
     confusion: tuple[tuple[str, float], ...]
-    """Nuisances that cost most: (name, S/N of one transit if this one alone were known), largest gain first."""
+    """Nuisances that cost most: (name, S/N left if this one alone is unknown, at the number of transits that would
+    suffice were everything known), dearest first."""
     uncovered_um: tuple[tuple[str, float, float], ...]
     """Stretches (gas, from, to) that a gas's data do not cover."""
     saturated_um: tuple[tuple[float, float], ...]

@@ -1,0 +1,139 @@
+"""What else could make the same shape: directions of depth for one prior width of everything not known exactly.
+
+Directions are derivatives of the forward model at the scenario, times the prior width. Those of other absorbers come
+with the spectrum itself; the others are differences over a small step, taken on a thinned grid: the sampling noise of
+the two spectra is the same and cancels. Under a clear sky, where a cloud has no derivative, one finite step stands
+for it: a deck at 0.1 bar.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from math import log
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.atmosphere.transmission import TransitDepth
+from planner.scenario.records import Case, Scenario
+from planner.spectroscopy.molecules import find_molecule
+from planner.spectroscopy.opacity import temperature_nodes
+from planner.studies.forward import NO_CHANGE, Change, ForwardModel
+from planner.studies.observe import ModeView
+
+__all__ = ["Direction", "directions", "prior_widths"]
+
+Array = NDArray[np.float64]
+
+STRIDE = 4
+"""Differences use every fourth sample."""
+CLEAR_SKY_DECK_BAR = 0.1
+_STEP = 0.02
+_PPM = 1e6
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Direction:
+    """One nuisance: its name and the depth change in ppm for one prior width, per mode ``(bin,)``."""
+
+    name: str
+    per_mode_ppm: tuple[Array, ...]
+
+
+def directions(model: ForwardModel, case: Case, spectrum: TransitDepth, views: list[ModeView]) -> list[Direction]:
+    """All nuisance directions of one case.
+
+    Parameters
+    ----------
+    spectrum : TransitDepth
+        Of this case on the full grid, with the slopes of all absorbers.
+    """
+    scenario = model.scenario
+    found = [_offset(scenario, views, i, d) for i, view in enumerate(views) for d in range(len(view.mode.detectors))]
+    full = [view.means() for view in views]
+    for gas in scenario.atmosphere.absorbers:
+        if gas not in case.gases:
+            width = scenario.nuisances.absorbers_dex * log(10)
+            slope = spectrum.derivative[gas] * width * _PPM
+            found.append(Direction(name=gas, per_mode_ppm=tuple(means(slope) for means in full)))
+    thin = [view.means(STRIDE) for view in views]
+    base = model.depth(case, stride=STRIDE).depth
+    for name, change, factor in _steps(scenario):
+        moved = model.depth(case, change, stride=STRIDE).depth
+        difference = (moved - base) * factor * _PPM
+        found.append(Direction(name=name, per_mode_ppm=tuple(means(difference) for means in thin)))
+    return [d for d in found if any(np.any(part) for part in d.per_mode_ppm)]
+
+
+def prior_widths(scenario: Scenario) -> tuple[tuple[str, str], ...]:
+    """Every nuisance with its prior width in words, for the output."""
+    priors, atmosphere = scenario.nuisances, scenario.atmosphere
+    cloud = f"{priors.cloud_top_dex:g} dex in its top pressure"
+    if atmosphere.cloud is None:
+        cloud = f"one-sided: a deck at {CLEAR_SKY_DECK_BAR:g} bar counts as one sigma (the sky is clear)"
+    haze = f"{priors.haze_dex:g} dex"
+    if atmosphere.haze is None:
+        haze = f"one-sided: scattering up by {priors.haze_dex:g} dex over that of the air (there is none)"
+    rows = [
+        ("offset of each detector", f"{priors.offset_ppm:g} ppm"),
+        ("radius", f"{100 * priors.radius_fraction:g} %"),
+        ("temperature", f"{100 * priors.temperature_fraction:g} %"),
+        ("gravity", f"{100 * scenario.gravity_fraction:.3g} %"),
+        ("molar mass", f"{100 * priors.molar_mass_fraction:g} %"),
+        ("cloud", cloud),
+        ("haze", haze),
+        *((gas, f"{priors.absorbers_dex:g} dex in mixing ratio") for gas in atmosphere.absorbers),
+        *((f"rival {gas}", f"0 to {ratio:.3g}, linear in its share") for gas, ratio in priors.rivals.items()),
+    ]
+    return tuple(rows)
+
+
+def _offset(scenario: Scenario, views: list[ModeView], mode: int, detector: int) -> Direction:
+    parts = [np.zeros(len(view.bins)) for view in views]
+    parts[mode][views[mode].bins.detector == detector] = scenario.nuisances.offset_ppm
+    return Direction(name=f"offset of {views[mode].detectors[detector]}", per_mode_ppm=tuple(parts))
+
+
+def _steps(scenario: Scenario) -> list[tuple[str, Change, float]]:
+    """Steps of the forward model: name, change, and the factor from its difference to one prior width."""
+    priors, atmosphere = scenario.nuisances, scenario.atmosphere
+    warm = _temperature_step(atmosphere.temperature_k)
+    steps = [
+        ("radius", Change(radius=1 + _STEP), priors.radius_fraction / _STEP),
+        ("temperature", Change(temperature=1 + warm), priors.temperature_fraction / warm),
+        ("gravity", Change(gravity=1 + _STEP), scenario.gravity_fraction / _STEP),
+        ("molar mass", Change(molar_mass=1 + _STEP), priors.molar_mass_fraction / _STEP),
+        ("cloud", *_cloud_step(scenario)),
+        ("haze", *_haze_step(scenario)),
+    ]
+    for gas, ratio in priors.rivals.items():
+        steps.append((f"rival {find_molecule(gas).formula}", replace(NO_CHANGE, added=((gas, ratio),)), 1.0))
+    return [step for step in steps if step[2] != 0]
+
+
+def _temperature_step(temperature_k: float) -> float:
+    """A relative step that stays between the temperature nodes already in use."""
+    low, high = temperature_nodes(temperature_k)
+    up, down = high / temperature_k - 1, low / temperature_k - 1
+    if up == down == 0:
+        return _STEP
+    widest = up if up > -down else down
+    return float(np.clip(0.8 * widest, -0.05, 0.05))
+
+
+def _cloud_step(scenario: Scenario) -> tuple[Change, float]:
+    width = scenario.nuisances.cloud_top_dex
+    if scenario.atmosphere.cloud is not None:
+        step = 0.1
+        return Change(cloud_top=10**-step), width / step
+    if scenario.atmosphere.surface and scenario.atmosphere.pressure_bar <= CLEAR_SKY_DECK_BAR:
+        return NO_CHANGE, 0.0
+    return Change(cloud_top_bar=CLEAR_SKY_DECK_BAR), 1.0 if width else 0.0
+
+
+def _haze_step(scenario: Scenario) -> tuple[Change, float]:
+    width, haze = scenario.nuisances.haze_dex, scenario.atmosphere.haze
+    if haze is None:
+        return Change(haze_factor=10**width - 1), 1.0 if width else 0.0
+    step = 0.1
+    return Change(haze_factor=haze.factor * 10**step), width / step

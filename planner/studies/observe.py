@@ -1,0 +1,150 @@
+"""The observing side of a scenario: modes with their bins, noise, floor and photon weights."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.instrument.binning import Bins, make_bins
+from planner.instrument.floor import floor_covariance
+from planner.instrument.modefiles import read_mode
+from planner.instrument.modes import Mode
+from planner.instrument.noise import Noise, photon_weights, transit_noise
+from planner.scenario.records import Scenario
+from planner.spectroscopy.grid import SAMPLES_PER_UNIT_LN, LogGrid
+from planner.star.flux import photon_flux
+from planner.star.record import Star
+from planner.star.spectrumfile import read_spectrum
+
+__all__ = ["BinMeans", "ModeView", "observing_grid", "source_of_light", "view_modes"]
+
+Array = NDArray[np.float64]
+
+
+class BinMeans:
+    """Photon-weighted means over bins of what is sampled on a wavenumber grid.
+
+    Parameters
+    ----------
+    weights : (detector, wavenumber)
+        Electrons per s and sample that each detector collects.
+    wavelength_um : (wavenumber,)
+        Descending, as the wavenumbers ascend.
+    bins : Bins
+    """
+
+    def __init__(self, weights: Array, wavelength_um: Array, bins: Bins) -> None:
+        ascending = wavelength_um[::-1]
+        count = wavelength_um.size
+        self._stop = count - np.searchsorted(ascending, bins.from_um, side="left")
+        self._start = count - np.searchsorted(ascending, bins.to_um, side="left")
+        self._detector = bins.detector
+        self._weights = weights
+        self._total = self._sum(np.ones(count))
+
+    def __call__(self, samples: Array) -> Array:
+        """Means of ``(..., wavenumber)`` over the bins, ``(..., bin)``."""
+        return self._sum(samples) / self._total
+
+    def _sum(self, samples: Array) -> Array:
+        result = np.empty((*samples.shape[:-1], self._detector.size))
+        for detector in np.unique(self._detector):
+            mine = self._detector == detector
+            running = np.cumsum(samples * self._weights[detector], axis=-1)
+            running = np.concatenate([np.zeros((*samples.shape[:-1], 1)), running], axis=-1)
+            result[..., mine] = running[..., self._stop[mine]] - running[..., self._start[mine]]
+        return result
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class ModeView:
+    """One mode as it looks at one star."""
+
+    mode: Mode
+    bins: Bins
+    noise: Noise
+    floor_ppm2: Array
+    charged_hours: float
+    """Hours charged for one transit: in transit, baseline, settling and overhead."""
+    grid: LogGrid
+    weights: Array
+    """Electrons per s and grid sample, ``(detector, wavenumber)``."""
+
+    def means(self, stride: int = 1) -> BinMeans:
+        """The bin means for every ``stride``-th sample of the grid."""
+        return BinMeans(self.weights[:, ::stride], self.grid.wavelength_um[::stride], self.bins)
+
+    @cached_property
+    def detectors(self) -> tuple[str, ...]:
+        """Names of the detectors, unique within the scenario."""
+        return tuple(f"{self.mode.name}: {detector.name}" for detector in self.mode.detectors)
+
+
+def source_of_light(scenario: Scenario) -> Star:
+    """The star of a scenario as a source of photons."""
+    star = scenario.star
+    return Star(
+        temperature_k=star.temperature_k,
+        radius_rsun=star.radius_rsun,
+        log_g=star.log_g,
+        distance_pc=star.distance_pc,
+        magnitudes=star.magnitudes,
+        spectrum=read_spectrum(star.spectrum, at_earth=star.spectrum_at_earth) if star.spectrum else None,
+    )
+
+
+def observing_grid(scenario: Scenario, samples_per_unit_ln: int | None = None) -> LogGrid:
+    """One grid over all modes of a scenario; at least 500 samples in each bin that is asked for."""
+    spans = [read_mode(name).span_um for name in scenario.modes]
+    density = samples_per_unit_ln or max(SAMPLES_PER_UNIT_LN, int(np.ceil(500 * scenario.bins.resolving_power)))
+    return LogGrid.covering(min(a for a, _ in spans), max(b for _, b in spans), density)
+
+
+def view_modes(scenario: Scenario, grid: LogGrid) -> list[ModeView]:
+    """All modes of a scenario with their noise for its star and transit."""
+    star = source_of_light(scenario)
+    photons = photon_flux(star, grid.wavelength_um)
+    return [_view(scenario, read_mode(name), grid, photons) for name in scenario.modes]
+
+
+def _view(scenario: Scenario, mode: Mode, grid: LogGrid, photons: Array) -> ModeView:
+    if scenario.noise is not None:
+        floor = mode.floor.model_copy(
+            update={
+                "depth_ppm": scenario.noise.floor_ppm,
+                "resolving_power": scenario.noise.floor_resolving_power,
+                "correlation_length": None,
+            }
+        )
+        mode = mode.model_copy(update={"floor": floor})
+    bins = make_bins(mode, scenario.bins.resolving_power)
+    wavelength = grid.wavelength_um
+    noise = transit_noise(
+        mode,
+        bins,
+        wavelength,
+        photons,
+        in_transit_s=3600 * scenario.transit_duration_h,
+        out_of_transit_s=3600 * scenario.out_of_transit_h,
+    )
+    step_um = wavelength / grid.samples_per_unit_ln
+    weights = np.array([photon_weights(mode, i, wavelength, photons) * step_um for i in range(len(mode.detectors))])
+    return ModeView(
+        mode=mode,
+        bins=bins,
+        noise=noise,
+        floor_ppm2=floor_covariance(mode, bins),
+        charged_hours=_charged_hours(scenario, mode),
+        grid=grid,
+        weights=weights,
+    )
+
+
+def _charged_hours(scenario: Scenario, mode: Mode) -> float:
+    goal, telescope = scenario.goal, mode.telescope
+    settling = telescope.settling_min / 60 if goal.settling_h is None else goal.settling_h
+    overhead = telescope.overhead_min / 60 if goal.overhead_h is None else goal.overhead_h
+    return scenario.transit_duration_h + scenario.out_of_transit_h + settling + overhead

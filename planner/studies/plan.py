@@ -1,0 +1,347 @@
+"""How many transits for each gas, here, with each mode: the main study."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from math import ceil, floor
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner import __version__
+from planner.atmosphere.transmission import TransitDepth
+from planner.detection.significance import Measurement, target_snr
+from planner.scenario.records import Case, Scenario
+from planner.spectroscopy.opacity import Opacities
+from planner.spectroscopy.sources import LineLibrary
+from planner.spectroscopy.store import Store
+from planner.star.flux import star_cautions
+from planner.studies.forward import ForwardModel
+from planner.studies.nuisances import Direction, directions, prior_widths
+from planner.studies.observe import ModeView, observing_grid, source_of_light, view_modes
+from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, Verdict
+
+__all__ = ["CAUTIONS", "Sight", "Workshop", "plan", "see"]
+
+Array = NDArray[np.float64]
+Progress = Callable[[str, float], None]
+
+CAUTIONS = (
+    "These are estimates: confirm exposure settings and noise with the observatory's own tools and staff before "
+    "submitting.",
+    "A detected gas is not detected life or industry: most gases have other sources too.",
+)
+_NO_SIGNAL_PPM = 0.02
+"""A share that nowhere exceeds this counts as no band in range."""
+_MISSION_YEARS = 5.0
+_BAND_INFORMATION = 0.8
+_CONFUSION_TRANSITS = 100.0
+"""Transits at which confusion is quoted where even perfect knowledge does not suffice."""
+_PPM = 1e6
+
+
+class Workshop:
+    """The rooms set up for one scenario: grid, modes, opacities, forward model.
+
+    Parameters
+    ----------
+    scenario : Scenario
+    lines_folder : Path, optional
+        Real line files to lay over the embedded data.
+    samples_per_unit_ln : int, optional
+        Finer sampling than the scenario needs, for tests of convergence.
+    """
+
+    def __init__(
+        self,
+        scenario: Scenario,
+        *,
+        lines_folder: Path | None = None,
+        progress: Progress | None = None,
+        samples_per_unit_ln: int | None = None,
+    ) -> None:
+        self.scenario = scenario
+        self.store = Store()
+        self.library = LineLibrary(self.store, lines_folder)
+        grid = observing_grid(scenario, samples_per_unit_ln)
+        self.views = view_modes(scenario, grid)
+        self.opacities = Opacities(
+            self.library,
+            self.store,
+            grid,
+            air=scenario.air(),
+            wing_per_cm=scenario.atmosphere.line_wing_per_cm,
+            water_continuum=scenario.atmosphere.water_continuum,
+            progress=progress,
+        )
+        self.model = ForwardModel(scenario, self.opacities)
+
+    def line_data(self) -> tuple[str, ...]:
+        """One sentence per source used and per stretch not used, for every gas of the scenario."""
+        atmosphere = self.scenario.atmosphere
+        gases = dict.fromkeys([*(g for c in self.scenario.cases for g in c.gases), *atmosphere.absorbers])
+        gases |= dict.fromkeys(atmosphere.background)
+        sentences: list[str] = []
+        for gas in gases:
+            if self.opacities.has_data(gas):
+                source = self.library.gas(gas)
+                sentences += [*source.provenance, *source.partial]
+        return (*sentences, self.opacities.broadening_note)
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Sight:
+    """One case through all modes: the spectrum and everything that judges it."""
+
+    case: Case
+    measurements: tuple[Measurement, ...]
+    """Per mode, usable bins only."""
+    usable: tuple[NDArray[np.bool_], ...]
+    templates_ppm: tuple[Array, ...]
+    """Per mode, all bins; zero where the gas's data do not cover."""
+    depth_ppm: tuple[Array, ...]
+    shares_ppm: tuple[dict[str, Array], ...]
+
+
+def plan(scenario: Scenario, *, lines_folder: Path | None = None, progress: Progress | None = None) -> PlanResult:
+    """Transits, hours and verdict for every case and mode of a scenario.
+
+    Raises
+    ------
+    PlannerError
+        If line data or modes cannot be read or used.
+    """
+    workshop = Workshop(scenario, lines_folder=lines_folder, progress=progress)
+    rows: list[PlanRow] = []
+    spectra: list[BinnedSpectrum] = []
+    for case in scenario.cases:
+        sight = see(workshop, case)
+        for index in range(len(workshop.views)):
+            rows.append(_row(workshop, sight, index))
+            spectra.append(binned_spectrum(workshop, sight, index))
+    return PlanResult(
+        title=scenario.title,
+        invented=scenario.invented,
+        threshold_sigma=scenario.goal.threshold_sigma,
+        power=scenario.goal.power,
+        transits_available=scenario.goal.transits_available,
+        transit_duration_h=scenario.transit_duration_h,
+        charged_hours_per_transit=max(view.charged_hours for view in workshop.views),
+        scale_height_km=scenario.scale_height_km(),
+        scale_height_ppm=scenario.scale_height_ppm(),
+        rows=tuple(rows),
+        spectra=tuple(spectra),
+        line_data=(*workshop.line_data(), *workshop.store.notices),
+        assumptions=_assumptions(workshop),
+        nuisances=prior_widths(scenario),
+        cautions=(*CAUTIONS, *_star_cautions(workshop)),
+        version=__version__,
+    )
+
+
+def see(workshop: Workshop, case: Case) -> Sight:
+    """The spectrum of a case, its template and nuisances, in the bins of every mode."""
+    model, views = workshop.model, workshop.views
+    gases = [*case.gases, *(g for g in workshop.scenario.air(case) if g not in case.gases)]
+    spectrum = _covered(model.depth(case, shares_of=gases), workshop.opacities)
+    if len(case.gases) == 1:
+        template = spectrum.depth - spectrum.depth_without[case.gases[0]]
+    else:
+        template = spectrum.depth - model.depth(case, transparent=case.gases).depth
+    nuisances = directions(model, case, spectrum, views)
+    means = [view.means() for view in views]
+    templates = [mean(template) * _PPM for mean in means]
+    usable = [np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views]
+    return Sight(
+        case=case,
+        measurements=tuple(_measurement(view, templates[i], usable[i], nuisances, i) for i, view in enumerate(views)),
+        usable=tuple(usable),
+        templates_ppm=tuple(templates),
+        depth_ppm=tuple(mean(spectrum.depth) * _PPM for mean in means),
+        shares_ppm=tuple(
+            {gas: mean(spectrum.depth - spectrum.depth_without[gas]) * _PPM for gas in gases} for mean in means
+        ),
+    )
+
+
+def _covered(spectrum: TransitDepth, opacities: Opacities) -> TransitDepth:
+    """The same with every gas's share and slope zero where its data do not cover."""
+    without, slopes = dict(spectrum.depth_without), dict(spectrum.derivative)
+    for gas in without:
+        if opacities.has_data(gas):
+            mask = opacities.covered(gas)
+            without[gas] = np.where(mask, without[gas], spectrum.depth)
+            slopes[gas] = np.where(mask, slopes[gas], 0.0)
+    return TransitDepth(
+        depth=spectrum.depth,
+        depth_without=without,
+        derivative=slopes,
+        bottom_transmission=spectrum.bottom_transmission,
+    )
+
+
+def _measurement(
+    view: ModeView, template: Array, usable: NDArray[np.bool_], nuisances: list[Direction], mode: int
+) -> Measurement:
+    mine = [d for d in nuisances if np.any(d.per_mode_ppm[mode][usable])]
+    return Measurement(
+        template_ppm=template[usable],
+        white_ppm=view.noise.depth_error_ppm[usable],
+        floor_ppm2=view.floor_ppm2[np.ix_(usable, usable)],
+        nuisances=tuple(d.name for d in mine),
+        directions_ppm=np.array([d.per_mode_ppm[mode][usable] for d in mine]).reshape(len(mine), int(usable.sum())),
+    )
+
+
+def _row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
+    scenario, view, measurement = workshop.scenario, workshop.views[index], sight.measurements[index]
+    target = target_snr(scenario.goal.threshold_sigma, scenario.goal.power)
+    known = _counts(measurement.known(), target, scenario, view)
+    marginalised = _counts(measurement, target, scenario, view)
+    verdict = _verdict(sight, index, known, marginalised, target, _transits_available(scenario))
+    return PlanRow(
+        gas=sight.case.label,
+        mixing_ratio=sight.case.mixing_ratios[0],
+        mode=view.mode.name,
+        verdict=verdict,
+        marginalised=marginalised,
+        all_known=known,
+        best_bands=_best_bands(view, sight.usable[index], measurement),
+        confusion=_confusion(measurement, known),
+        uncovered_um=_uncovered(workshop, sight.case, view),
+        saturated_um=view.noise.saturated_um,
+        cautions=(),
+    )
+
+
+def _counts(measurement: Measurement, target: float, scenario: Scenario, view: ModeView) -> Counts:
+    unrounded = measurement.transits_for(target) if measurement.template_ppm.size else None
+    required = None if unrounded is None else max(1, ceil(unrounded - 1e-9))
+    return Counts(
+        snr_one_transit=measurement.snr(1.0) if measurement.template_ppm.size else 0.0,
+        snr_limit=measurement.snr_limit() if measurement.template_ppm.size else 0.0,
+        transits_required=required,
+        transits_unrounded=unrounded,
+        hours_required=None if required is None else required * view.charged_hours,
+        in_transit_hours_required=None if required is None else required * scenario.transit_duration_h,
+    )
+
+
+def _verdict(sight: Sight, index: int, known: Counts, marginalised: Counts, target: float, available: int) -> Verdict:
+    template, usable = np.abs(sight.templates_ppm[index]), sight.usable[index]
+    if template.max(initial=0.0) < _NO_SIGNAL_PPM:
+        return Verdict.NO_BAND
+    if template[usable].max(initial=0.0) < _NO_SIGNAL_PPM:
+        return Verdict.SATURATED
+    if marginalised.transits_required is None:
+        return Verdict.FLOOR if known.snr_limit <= target else Verdict.CONFUSION
+    return Verdict.WITHIN_REACH if marginalised.transits_required <= available else Verdict.TOO_MANY
+
+
+def _transits_available(scenario: Scenario) -> int:
+    """As stated, else what the orbit offers in five years."""
+    stated = scenario.goal.transits_available
+    return stated if stated is not None else floor(_MISSION_YEARS * 365.25 / scenario.planet.period_d)
+
+
+def _confusion(measurement: Measurement, known: Counts) -> tuple[tuple[str, float], ...]:
+    """What each nuisance alone does to the significance that would suffice were all known; the three dearest."""
+    transits = known.transits_unrounded or _CONFUSION_TRANSITS
+    full = measurement.known().snr(transits)
+    left = sorted(((name, measurement.only(name).snr(transits)) for name in measurement.nuisances), key=lambda c: c[1])
+    return tuple((name, snr) for name, snr in left[:3] if snr < 0.98 * full)
+
+
+def _best_bands(view: ModeView, usable: NDArray[np.bool_], measurement: Measurement) -> tuple[BandShare, ...]:
+    """The stretches that hold most of the information: fewest bins with 80 % of it, neighbours joined, best first."""
+    information = np.zeros(len(view.bins))
+    information[usable] = measurement.information()
+    order = np.argsort(information)[::-1]
+    needed = int(np.searchsorted(np.cumsum(information[order]), _BAND_INFORMATION)) + 1
+    chosen = np.zeros(len(view.bins), dtype=bool)
+    chosen[order[:needed]] = information[order[:needed]] > 0
+    bands: list[BandShare] = []
+    for run in _runs(chosen, view.bins.detector):
+        bands.append(
+            BandShare(
+                from_um=float(view.bins.from_um[run[0]]),
+                to_um=float(view.bins.to_um[run[-1]]),
+                share=float(information[run].sum()),
+            )
+        )
+    return tuple(sorted(bands, key=lambda band: -band.share)[:3])
+
+
+def _runs(mask: NDArray[np.bool_], detector: NDArray[np.int64]) -> list[NDArray[np.intp]]:
+    """Index runs where the mask holds, on one detector each; single bins left out between are bridged."""
+    index = np.flatnonzero(mask)
+    if not index.size:
+        return []
+    breaks = np.flatnonzero((np.diff(index) > 2) | (np.diff(detector[index]) != 0)) + 1
+    return list(np.split(index, breaks))
+
+
+def _uncovered(workshop: Workshop, case: Case, view: ModeView) -> tuple[tuple[str, float, float], ...]:
+    wavelength = view.grid.wavelength_um
+    seen = view.weights.sum(axis=0) > 0
+    found: list[tuple[str, float, float]] = []
+    for gas in [*case.gases, *workshop.scenario.atmosphere.absorbers]:
+        if not workshop.opacities.has_data(gas):
+            continue
+        missing = np.flatnonzero(seen & ~workshop.opacities.covered(gas))
+        for run in np.split(missing, np.flatnonzero(np.diff(missing) > 1) + 1):
+            if run.size > 1:
+                found.append((gas, float(wavelength[run[-1]]), float(wavelength[run[0]])))
+    return tuple(found)
+
+
+def binned_spectrum(workshop: Workshop, sight: Sight, index: int) -> BinnedSpectrum:
+    """The spectrum of a case in the bins of one mode, with the shares, the noise and the floor."""
+    view = workshop.views[index]
+    return BinnedSpectrum(
+        gas=sight.case.label,
+        mixing_ratio=sight.case.mixing_ratios[0],
+        mode=view.mode.name,
+        detector=view.bins.detector,
+        from_um=view.bins.from_um,
+        to_um=view.bins.to_um,
+        depth_ppm=sight.depth_ppm[index],
+        shares_ppm=sight.shares_ppm[index],
+        noise_one_transit_ppm=view.noise.depth_error_ppm,
+        floor_ppm=np.sqrt(np.diag(view.floor_ppm2)),
+        usable=sight.usable[index],
+        scale_height_ppm=workshop.scenario.scale_height_ppm(sight.case),
+    )
+
+
+def _star_cautions(workshop: Workshop) -> tuple[str, ...]:
+    spans = [view.mode.span_um for view in workshop.views]
+    star = source_of_light(workshop.scenario)
+    return star_cautions(star, min(a for a, _ in spans), max(b for _, b in spans))
+
+
+def _assumptions(workshop: Workshop) -> tuple[str, ...]:
+    scenario = workshop.scenario
+    goal = scenario.goal
+    baseline = scenario.out_of_transit_h
+    available = _transits_available(scenario)
+    sentences = [
+        f"detection: one-sided threshold of {goal.threshold_sigma:g} sigma reached with probability {goal.power:g}",
+        f"bins of R = {scenario.bins.resolving_power:g}, or the resolution element where that is wider",
+        f"one transit: {scenario.transit_duration_h:.2f} h in transit, {baseline:.2f} h out of transit",
+        f"transits available: {available}"
+        + ("" if goal.transits_available else f" (all in {_MISSION_YEARS:g} years; visibility not considered)"),
+        "isothermal air with constant mixing ratios; white noise averages down with transits, the floor does not",
+    ]
+    for view in workshop.views:
+        floor_at = view.mode.floor
+        groups = ", ".join(
+            f"{d.name} {n}" for d, n in zip(view.mode.detectors, view.noise.groups.tolist(), strict=True)
+        )
+        sentences.append(
+            f"{view.mode.name}: floor {floor_at.depth_ppm:g} ppm at R = {floor_at.resolving_power:g}, "
+            f"{view.charged_hours:.2f} h charged per transit, groups per ramp: {groups}"
+        )
+    return tuple(sentences)
