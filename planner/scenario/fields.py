@@ -107,7 +107,7 @@ Impact = Annotated[float, BeforeValidator(Number(kind="a plain number of stellar
 OptionalLogG = Annotated[float | None, BeforeValidator(Number(kind="a plain number, log10 of cm s-2,", low=0, high=9))]
 Covered = Annotated[float, BeforeValidator(Number(kind="a share of the limb", low=0, high=1, open_low=True))]
 HazeFactor = Annotated[
-    float, BeforeValidator(Number(kind="a multiple of the air's Rayleigh scattering", low=0, open_low=True))
+    float, BeforeValidator(Number(kind="a multiple of the Rayleigh scattering of N2", low=0, open_low=True))
 ]
 Slope = Annotated[float, BeforeValidator(Number(kind="a slope such as -4,", low=-20, high=0))]
 Sigmas = Annotated[float, BeforeValidator(Number(kind="a plain number of sigma", low=0, open_low=True))]

@@ -1,32 +1,21 @@
 """Closed forms of the star-planet system: pure functions of plain numbers, SI units unless a name says otherwise.
 
-Orbits are circular. Constants are the CODATA 2018 values and the IAU 2015 nominal values that astropy carries.
+Orbits are circular. Gravity and scale height are those of the atmosphere, `planner.atmosphere.layers`.
 """
 
 from __future__ import annotations
 
 import math
 
+from planner.atmosphere.layers import GRAVITATION_SI
+
 __all__ = [
-    "BOLTZMANN_J_PER_K",
-    "GRAVITATION_SI",
     "equilibrium_temperature_k",
     "full_transit_duration_s",
-    "gravity_m_per_s2",
     "orbital_distance_m",
-    "scale_height_m",
     "scale_height_ppm",
     "transit_duration_s",
 ]
-
-GRAVITATION_SI = 6.67430e-11  # m3 kg-1 s-2, CODATA 2018
-BOLTZMANN_J_PER_K = 1.380649e-23  # exact, SI 2019
-_MOLE = 6.02214076e23  # exact, SI 2019
-
-
-def gravity_m_per_s2(*, mass_kg: float, radius_m: float) -> float:
-    """Gravity at the radius, ``G M / R^2``."""
-    return GRAVITATION_SI * mass_kg / radius_m**2
 
 
 def orbital_distance_m(*, period_s: float, star_mass_kg: float) -> float:
@@ -72,11 +61,6 @@ def _chord_time_s(period_s: float, star_over_distance: float, reach: float, impa
     return period_s / math.pi * math.asin(min(1.0, sine))
 
 
-def scale_height_m(*, temperature_k: float, molar_mass_g: float, gravity_m_per_s2: float) -> float:
-    """Pressure scale height ``k T / (mu g)`` of an isothermal ideal gas."""
-    return BOLTZMANN_J_PER_K * temperature_k / (molar_mass_g * 1e-3 / _MOLE * gravity_m_per_s2)
-
-
-def scale_height_ppm(*, scale_height_m: float, radius_m: float, star_radius_m: float) -> float:
+def scale_height_ppm(*, scale_height_km: float, radius_m: float, star_radius_m: float) -> float:
     """Transit depth of a thin ring one scale height wide, ``2 R H / R_star^2``, in ppm."""
-    return 2e6 * radius_m * scale_height_m / star_radius_m**2
+    return 2e9 * radius_m * scale_height_km / star_radius_m**2

@@ -70,12 +70,20 @@ def starting_scenario() -> str:
 
 
 def _check_files(scenario: Scenario) -> None:
-    """Refuse a scenario that names a file that is not there."""
+    """Refuse a scenario that names a file or a shipped mode that is not there."""
+    from planner.instrument.modefiles import list_modes
+
     if scenario.star.spectrum is not None and not scenario.star.spectrum.is_file():
         raise ScenarioError(f"{scenario.place('star', 'spectrum')}: no such file: {scenario.star.spectrum}")
+    known = list_modes()
     for index, mode in enumerate(scenario.modes):
-        if isinstance(mode, Path) and not mode.is_file():
-            raise ScenarioError(f"{scenario.place('modes', index)}: no such file: {mode}")
+        place = scenario.place("modes", index)
+        if isinstance(mode, Path):
+            if not mode.is_file():
+                raise ScenarioError(f"{place}: no such file: {mode}")
+        elif mode not in known:
+            hint = nearest(mode, known) or f"; known modes: {', '.join(known)}"
+            raise ScenarioError(f'{place}: expected a known mode or the path of a .toml file, got "{mode}"{hint}')
 
 
 def _syntax_message(error: tomllib.TOMLDecodeError, where: str | Path) -> str:

@@ -9,6 +9,7 @@ from typing import Annotated
 import astropy.units as u
 from pydantic import BeforeValidator, Field, PrivateAttr, model_validator
 
+from planner.atmosphere import layers
 from planner.scenario import geometry
 from planner.scenario.fields import Name, Record, Switch
 from planner.scenario.locate import heading
@@ -162,16 +163,14 @@ class Scenario(Record):
 
     def scale_height_km(self, case: Case | None = None) -> float:
         """Scale height at the planet's radius."""
-        return 1e-3 * geometry.scale_height_m(
-            temperature_k=self.atmosphere.temperature_k,
-            molar_mass_g=self.molar_mass_g(case),
-            gravity_m_per_s2=self.planet.gravity_m_per_s2,
+        return layers.scale_height_km(
+            self.atmosphere.temperature_k, self.molar_mass_g(case), self.planet.gravity_m_per_s2
         )
 
     def scale_height_ppm(self, case: Case | None = None) -> float:
         """Transit depth of one scale height."""
         return geometry.scale_height_ppm(
-            scale_height_m=1e3 * self.scale_height_km(case),
+            scale_height_km=self.scale_height_km(case),
             radius_m=self.planet.radius_m,
             star_radius_m=self.star.radius_m,
         )

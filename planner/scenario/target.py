@@ -11,7 +11,7 @@ import math
 import astropy.units as u
 from pydantic import Field, model_validator
 
-from planner.scenario import geometry
+from planner.atmosphere.layers import GRAVITATION_SI, gravity_m_per_s2
 from planner.scenario.fields import (
     Amounts,
     Bar,
@@ -87,7 +87,7 @@ class Star(Record):
     def mass_kg(self) -> float:
         """Mass in kilograms."""
         if self.given_log_g is not None:
-            return 10.0 ** (self.given_log_g - 2) * self.radius_m**2 / geometry.GRAVITATION_SI
+            return 10.0 ** (self.given_log_g - 2) * self.radius_m**2 / GRAVITATION_SI
         return float((self.given_mass_msun or math.nan) * u.M_sun.to(u.kg))
 
     @property
@@ -95,7 +95,7 @@ class Star(Record):
         """log10 of the surface gravity in cm s-2."""
         if self.given_log_g is not None:
             return self.given_log_g
-        return 2 + math.log10(geometry.gravity_m_per_s2(mass_kg=self.mass_kg, radius_m=self.radius_m))
+        return 2 + math.log10(gravity_m_per_s2(self.mass_kg, 1e-3 * self.radius_m))
 
 
 class Planet(Record):
@@ -124,7 +124,7 @@ class Planet(Record):
     @property
     def gravity_m_per_s2(self) -> float:
         """Gravity at the radius."""
-        return geometry.gravity_m_per_s2(mass_kg=self.mass_kg, radius_m=self.radius_m)
+        return gravity_m_per_s2(self.mass_kg, 1e-3 * self.radius_m)
 
 
 class Cloud(Record):
@@ -135,10 +135,12 @@ class Cloud(Record):
 
 
 class Haze(Record):
-    """Scattering on top of the air's own: its strength and its slope ``d ln sigma / d ln wavelength``."""
+    """Scattering on top of the air's own."""
 
     factor: HazeFactor
-    slope: Slope = -4.0
+    """Cross-section per molecule of air at 1 um, in units of the Rayleigh cross-section of N2 there."""
+    wavelength_slope: Slope = Field(default=-4.0, alias="slope")
+    """``d ln(cross-section) / d ln(wavelength)``; -4 for particles much smaller than the wavelength."""
 
 
 class Atmosphere(Record):

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import pytest
 
+from planner.atmosphere.layers import gravity_m_per_s2, scale_height_km
 from planner.scenario import Planet, Scenario, Star, geometry
 
 EARTH_RADIUS_M, EARTH_MASS_KG = 6.3781e6, 5.9722e24
@@ -212,15 +213,11 @@ def _other(name):
 
 def _heights(scenario, molar_mass_g):
     """Scale height in km and its depth in ppm at the equilibrium temperature."""
-    height_m = geometry.scale_height_m(
-        temperature_k=scenario.equilibrium_temperature_k(),
-        molar_mass_g=molar_mass_g,
-        gravity_m_per_s2=scenario.planet.gravity_m_per_s2,
-    )
+    height = scale_height_km(scenario.equilibrium_temperature_k(), molar_mass_g, scenario.planet.gravity_m_per_s2)
     depth = geometry.scale_height_ppm(
-        scale_height_m=height_m, radius_m=scenario.planet.radius_m, star_radius_m=scenario.star.radius_m
+        scale_height_km=height, radius_m=scenario.planet.radius_m, star_radius_m=scenario.star.radius_m
     )
-    return height_m * 1e-3, depth
+    return height, depth
 
 
 @pytest.mark.parametrize("letter", TRAPPIST)
@@ -259,7 +256,7 @@ def test_trappist_gravity_published():
     masses = (0.85, 1.38, 0.41, 0.62, 0.68, 1.34)
     published = (7.07, 12.14, 6.75, 7.22, 6.11, 10.34)
     for radius, mass, gravity in zip(radii, masses, published, strict=True):
-        computed = geometry.gravity_m_per_s2(mass_kg=mass * EARTH_MASS_KG, radius_m=radius * EARTH_RADIUS_M)
+        computed = gravity_m_per_s2(mass * EARTH_MASS_KG, radius * EARTH_RADIUS_M * 1e-3)
         assert computed == pytest.approx(gravity, abs=0.02)
 
 
@@ -310,14 +307,13 @@ def test_k2_18_equilibrium_temperature_published():
 def test_earth():
     """The Earth: 278.33 K without albedo, 254.59 K with 0.3; H = 7.460 km at 255 K and 8.433 km at 288.15 K.
 
-    Closed forms with 28.97 g/mol and g = 9.81 m/s2, the last one with the standard 9.80665 m/s2; one scale height of 8 km is 0.2108 ppm of the Sun's disc.
+    Closed forms with 28.97 g/mol and g = 9.81 m/s2, the last one with 9.80665 m/s2; one
+    scale height of 8 km is 0.2108 ppm of the Sun's disc.
     """
     sun = {"star_temperature_k": 5772.0, "star_radius_m": SUN_RADIUS_M, "distance_m": AU_M}
     assert geometry.equilibrium_temperature_k(**sun) == pytest.approx(278.33, abs=0.03)
     assert geometry.equilibrium_temperature_k(**sun, albedo=0.3) == pytest.approx(254.59, abs=0.03)
-    height = geometry.scale_height_m(temperature_k=255, molar_mass_g=28.97, gravity_m_per_s2=9.81)
-    assert height == pytest.approx(7460, abs=1)
-    height = geometry.scale_height_m(temperature_k=288.15, molar_mass_g=28.97, gravity_m_per_s2=9.80665)
-    assert height == pytest.approx(8433, abs=1)
-    depth = geometry.scale_height_ppm(scale_height_m=8000, radius_m=EARTH_RADIUS_M, star_radius_m=SUN_RADIUS_M)
+    assert scale_height_km(255, 28.97, 9.81) == pytest.approx(7.460, abs=1e-3)
+    assert scale_height_km(288.15, 28.97, 9.80665) == pytest.approx(8.433, abs=1e-3)
+    depth = geometry.scale_height_ppm(scale_height_km=8, radius_m=EARTH_RADIUS_M, star_radius_m=SUN_RADIUS_M)
     assert depth == pytest.approx(0.2108, abs=6e-5)

@@ -172,7 +172,7 @@ def test_read_scenario_invalid(tmp_path):
 
 def test_paths_are_relative_to_the_scenario(tmp_path):
     """Own spectra and modes are looked for beside the scenario, and missing ones refused with their line."""
-    changed = DEMO.replace('"mid-infrared-low-resolution"', '"mine.toml"').replace(
+    changed = DEMO.replace('"mid-infrared-slitless"', '"mine.toml"').replace(
         "[planet]", 'spectrum = "star.ecsv"\n[planet]'
     )
     path = tmp_path / "mine_too.toml"
