@@ -88,7 +88,7 @@ def test_methane_within_the_published_spread():
 
 
 def test_methane_against_its_polarisability():
-    """The static polarisability of CH4, 2.593 cubic Angstrom (handbook, from memory), is the red limit to 3 % in sigma."""
+    """The static polarisability of CH4, 2.593 cubic Angstrom (handbook, from memory), bounds the red limit to 3 %."""
     nu = 1000.0
     static = 128.0 * np.pi**5 / 3.0 * nu**4 * (2.593e-24) ** 2
     assert rayleigh_cross_section("CH4", nu)[0] == pytest.approx(static, rel=0.03)
