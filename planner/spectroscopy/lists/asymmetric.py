@@ -64,6 +64,7 @@ def asymmetric_lines(part: Mapping[str, Any], hitran_number: int) -> Lines:
     ----------
     part : mapping
         ``isotopologue``; ``cut_cm``, weakest line kept; ``k_max``, largest K of the basis (default: J);
+        ``merge_per_cm``: lines of a band closer than this in wavenumber and lower energy become one (default 0);
         ``spin_weights``, for lower levels whose (K_a, K_c) are even-even, even-odd, odd-even, odd-odd, and
         ``spin_weights_antisymmetric`` for those of the vibrational states in ``antisymmetric_states``;
         ``air_width``, ``self_width`` (1/cm/atm) and ``air_exponent``, four numbers c each, meaning
@@ -121,9 +122,10 @@ def _set_lines(band: BandSet, solver: _Solver, part: Mapping[str, Any], hitran_n
     total = sum(float(group.strength.sum()) for group in groups)
     if total <= 0:
         raise LineDataError(f"{where}: {band.name}: no line has a positive wavenumber and strength")
-    ka_most, cuts = np.array(band.ka_most), np.maximum(band.cuts_cm, float(part["cut_cm"]))
+    ka_most, cuts = np.array(band.ka_most), np.array(band.cuts_cm)
     pieces = [_columns(group, band.sum_cm / total, ka_most, cuts) for group in groups]
     column = {name: np.concatenate([piece[name] for piece in pieces]) for name in pieces[0]}
+    column = _merged(column, float(part.get("merge_per_cm", 0.0)))
     decay, ka = np.exp(-column["j_max"] / float(part["width_j_scale"])), column["ka"] / 10.0
     self_width, air_width = (
         np.maximum(_LEAST_WIDTH_PER_CM_ATM, _four_terms(part[key], decay, ka)) for key in ("self_width", "air_width")
@@ -254,6 +256,18 @@ def _columns(group: _Group, scale: float, ka_most: Floats, cuts_cm: Floats) -> d
         "upper": _label_index(group.upper, j_upper, up),
         "lower": _label_index(group.lower, j_lower, low),
     }
+
+
+def _merged(column: dict[str, NDArray[Any]], tolerance_per_cm: float) -> dict[str, NDArray[Any]]:
+    """One line for neighbours of equal wavenumber and lower energy: the unresolved doublets of high J."""
+    order = np.argsort(column["wavenumber"], kind="stable")
+    column = {name: values[order] for name, values in column.items()}
+    apart = np.ones(order.size, dtype=bool)
+    apart[1:] = (np.diff(column["wavenumber"]) >= tolerance_per_cm) | (
+        np.abs(np.diff(column["energy"])) >= tolerance_per_cm
+    )
+    total = np.bincount(np.cumsum(apart) - 1, weights=column["intensity"])
+    return {name: values[apart] for name, values in column.items()} | {"intensity": total}
 
 
 def _label_index(levels: Levels, j: NDArray[np.int64], level: NDArray[np.int64]) -> NDArray[np.int64]:

@@ -19,7 +19,15 @@ _NEEDED = {
     "kind", "isotopologue", "cut_cm", "spin_weights", "width_j_scale", "air_width", "air_exponent", "self_width",
     "distortion", "states",
 }  # fmt: skip
-_OPTIONAL = {"source", "k_max", "antisymmetric_states", "spin_weights_antisymmetric", "bands", "coupled"}
+_OPTIONAL = {
+    "source",
+    "k_max",
+    "merge_per_cm",
+    "antisymmetric_states",
+    "spin_weights_antisymmetric",
+    "bands",
+    "coupled",
+}
 _COUPLED_KEYS = {"states", "lower", "sum_cm", "j_max", "couplings", "moments", "keep", "source"}
 
 
@@ -117,7 +125,7 @@ def _single_bands(part: Mapping[str, Any], where: str) -> Iterator[BandSet]:
                 j_max=int(j_max),
                 moments=(Moment(state=0, axis=axis, factors=_six([1.0, *factors])),),
                 ka_most=(np.inf,),
-                cuts_cm=(0.0,),
+                cuts_cm=(float(part["cut_cm"]),),
             )
         except (TypeError, ValueError, KeyError) as error:
             expected = "[upper, lower, axis a, b or c, sum, largest J, [m1, m2, ...], source]"
@@ -130,7 +138,7 @@ def _coupled_sets(part: Mapping[str, Any], where: str) -> Iterator[BandSet]:
         try:
             place = {name: number for number, name in enumerate(table["states"])}
             keep = {place[name]: limits for name, limits in table.get("keep", {}).items()}
-            limits = [keep.get(number, (np.inf, 0.0)) for number in place.values()]
+            limits = [keep.get(number, (np.inf, part["cut_cm"])) for number in place.values()]
             yield BandSet(
                 states=tuple(place),
                 lower=table["lower"],

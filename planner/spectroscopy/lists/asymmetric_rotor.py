@@ -268,13 +268,13 @@ def _solve(
         matrix = _coupling_matrix(coupling, bases[coupling.second], bases[coupling.first], j_max)
         whole[:, other, one] += matrix
         whole[:, one, other] += np.swapaxes(matrix, 1, 2)
-    real = np.concatenate(bases)[np.newaxis, :] <= np.arange(j_max + 1)[:, np.newaxis]
-    exists, energy, vectors = _eigen(whole, real)
+    k = np.concatenate(bases)
+    exists, energy, vectors = _eigen(whole, k)
     owner = np.repeat(np.arange(len(states)), [k.size for k in bases])
     if len(states) == 1:
         state, ka = np.zeros(energy.shape, dtype=np.int64), np.broadcast_to(bases[0], energy.shape).copy()
     else:
-        state, ka = _resemblance(alone, parts, real, vectors, owner, np.concatenate(bases))
+        state, ka = _resemblance(alone, parts, vectors, owner, k)
     j = np.arange(j_max + 1)[:, np.newaxis]
     minus = np.array([1 if block & MINUS else 0 for block in blocks])
     return Levels(
@@ -301,24 +301,22 @@ def _coupling_matrix(coupling: Coupling, k_second: NDArray[np.int64], k_first: N
     return coupling.strength_per_cm * matrix
 
 
-def _eigen(matrices: Floats, real: NDArray[np.bool_]) -> tuple[NDArray[np.bool_], Floats, Floats]:
-    """Eigenvalues and vectors of each J among its real functions, padded: exists, energy, vectors."""
-    exists = np.zeros(real.shape, dtype=bool)
-    energy, vectors = np.zeros(real.shape), np.zeros(matrices.shape)
-    for j, functions in enumerate(real):
-        pick = np.flatnonzero(functions)
-        if pick.size:
-            values, columns = np.linalg.eigh(matrices[j][np.ix_(pick, pick)])
-            exists[j, : pick.size] = True
-            energy[j, : pick.size] = values
-            vectors[j, pick, : pick.size] = columns
-    return exists, energy, vectors
+def _eigen(matrices: Floats, k: NDArray[np.int64]) -> tuple[NDArray[np.bool_], Floats, Floats]:
+    """Eigenvalues and vectors of each J among the functions with K <= J, padded: exists, energy, vectors."""
+    from planner.spectroscopy.lists.eigen_kernel import eigen_stack
+
+    order = np.argsort(k, kind="stable")
+    sizes = np.searchsorted(k[order], np.arange(matrices.shape[0]), side="right")
+    energy, ordered = np.zeros(matrices.shape[:2]), np.zeros(matrices.shape)
+    eigen_stack(np.ascontiguousarray(matrices[:, order][:, :, order]), sizes, energy, ordered)
+    vectors = np.empty_like(ordered)
+    vectors[:, order] = ordered
+    return np.arange(k.size)[np.newaxis, :] < sizes[:, np.newaxis], energy, vectors
 
 
 def _resemblance(
     alone: Floats,
     parts: Sequence[slice],
-    real: NDArray[np.bool_],
     vectors: Floats,
     owner: NDArray[np.int64],
     k: NDArray[np.int64],
@@ -326,7 +324,7 @@ def _resemblance(
     """Dominant state and K_a of every coupled level, by its overlap with the levels of the uncoupled states."""
     share = np.zeros_like(vectors)
     for part in parts:
-        _, _, free = _eigen(alone[:, part, part], real[:, part])
+        _, _, free = _eigen(alone[:, part, part], k[part])
         share[:, part, :] = (np.swapaxes(free, 1, 2) @ vectors[:, part, :]) ** 2
     by_state = np.stack([share[:, part, :].sum(axis=1) for part in parts], axis=1)
     state = by_state.argmax(axis=1)
