@@ -145,6 +145,6 @@ def _view(scenario: Scenario, mode: Mode, grid: LogGrid, photons: Array) -> Mode
 
 def _charged_hours(scenario: Scenario, mode: Mode) -> float:
     goal, telescope = scenario.goal, mode.telescope
-    settling = telescope.settling_min / 60 if goal.settling_h is None else goal.settling_h
-    overhead = telescope.overhead_min / 60 if goal.overhead_h is None else goal.overhead_h
+    settling = telescope.settling_h if goal.settling_h is None else goal.settling_h
+    overhead = telescope.overhead_h if goal.overhead_h is None else goal.overhead_h
     return scenario.transit_duration_h + scenario.out_of_transit_h + settling + overhead

@@ -33,7 +33,7 @@ CAUTIONS = (
     "submitting.",
     "A detected gas is not detected life or industry: most gases have other sources too.",
 )
-_NO_SIGNAL_PPM = 0.02
+_NO_SIGNAL_PPM = 0.1
 """A share that nowhere exceeds this counts as no band in range."""
 _MISSION_YEARS = 5.0
 _BAND_INFORMATION = 0.8
