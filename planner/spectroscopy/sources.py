@@ -1,15 +1,12 @@
 """Which line data stand for a gas: the embedded list, or real files laid over it where they are complete.
 
-Coverage is never a file's first and last line. It is declared (``coverage.toml`` beside the files), or it is measured:
-within each stretch of an isotopologue's lines that has no gap over 5 per cm, the file must hold at least 0.9 of the
-intensity that the embedded list puts there. What falls short is reported as partial and not used, so that a fragment
-never stands for a band.
+Each isotopologue and interval has one source: the newest real file that is complete there
+(`planner.spectroscopy.coverage`), else the embedded list.
 """
 
 from __future__ import annotations
 
 import re
-import tomllib
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from functools import lru_cache
@@ -19,6 +16,16 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.errors import LineDataError
+from planner.spectroscopy.coverage import (
+    COVERAGE_FILE,
+    Declaration,
+    Interval,
+    inside,
+    measured_coverage,
+    read_declarations,
+    subtract,
+    union,
+)
 from planner.spectroscopy.hitran import read_par
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.lists.build import (
@@ -32,13 +39,7 @@ from planner.spectroscopy.lists.build import (
 from planner.spectroscopy.molecules import Molecule, find_molecule
 from planner.spectroscopy.store import Store, digest
 
-__all__ = ["GasSource", "Interval", "LineLibrary", "measured_coverage"]
-
-Interval = tuple[float, float]
-
-_GAP_PER_CM = 5.0
-_COMPLETE_SHARE = 0.9
-COVERAGE_FILE = "coverage.toml"
+__all__ = ["GasSource", "LineLibrary"]
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -88,7 +89,7 @@ class _Folder:
     """All line files of a folder, read once."""
 
     files: dict[Path, tuple[Lines, str]] = field(default_factory=dict)
-    declared: dict[str, list[dict[str, object]]] = field(default_factory=dict)
+    declared: dict[str, list[Declaration]] = field(default_factory=dict)
 
 
 class LineLibrary:
@@ -154,12 +155,11 @@ class LineLibrary:
                 mask = (lines.molecule == molecule.hitran_number) & (lines.isotopologue == isotopologue)
                 chosen = lines.where(mask)
                 declared = self._declared(path, molecule, int(isotopologue))
-                if declared is not None:
-                    good, why = declared, []
-                else:
+                good = declared or ()
+                if declared is None:
                     mine = None if embedded is None else embedded.where(embedded.isotopologue == isotopologue)
                     good, why = measured_coverage(chosen, mine)
-                partial += [f"{path.name}: {molecule.formula} isotopologue {isotopologue}: {text}" for text in why]
+                    partial += [f"{path.name}: {molecule.formula} isotopologue {isotopologue}: {text}" for text in why]
                 if good:
                     found.append(
                         _Segment(
@@ -175,87 +175,9 @@ class LineLibrary:
         return _without_overlap(found), tuple(partial)
 
     def _declared(self, path: Path, molecule: Molecule, isotopologue: int) -> tuple[Interval, ...] | None:
-        rows = self._folder.declared.get(path.name)
-        if rows is None:
-            return None
-        ranges = []
-        for row in rows:
-            isotopologues = row.get("isotopologues")
-            if find_molecule(str(row["gas"])).formula == molecule.formula and (
-                isotopologues is None or isotopologue in isotopologues  # type: ignore[operator]
-            ):
-                low, high = row["range_per_cm"]  # type: ignore[misc]
-                ranges.append((float(low), float(high)))
-        return union(ranges) or None
-
-
-def measured_coverage(lines: Lines, embedded: Lines | None) -> tuple[tuple[Interval, ...], list[str]]:
-    """Where a file's lines of one isotopologue are complete, and reasons for what is not.
-
-    Parameters
-    ----------
-    lines : Lines
-        Lines of one isotopologue of one molecule from one file.
-    embedded : Lines or None
-        The embedded lines of the same isotopologue, the yardstick.
-
-    Returns
-    -------
-    intervals : tuple of (from, to)
-        Stretches without a gap over 5 per cm that hold at least 0.9 of the embedded intensity.
-    reasons : list of str
-        One per stretch that is not used.
-    """
-    good: list[Interval] = []
-    reasons: list[str] = []
-    nu = lines.wavenumber_per_cm
-    breaks = np.flatnonzero(np.diff(nu) > _GAP_PER_CM) + 1
-    short = 0
-    for piece in np.split(np.arange(nu.size), breaks):
-        low, high = float(nu[piece[0]]), float(nu[piece[-1]])
-        if high - low < _GAP_PER_CM:
-            short += piece.size
-            continue
-        here = float(lines.intensity_cm[piece].sum())
-        yardstick = _sum_within(embedded, low, high)
-        if embedded is None or not len(embedded):
-            reasons.append(
-                f"{low:.2f}-{high:.2f} per cm: no embedded list to judge it by; declare it in {COVERAGE_FILE} to use it"
-            )
-        elif here >= _COMPLETE_SHARE * yardstick:
-            good.append((low, high))
-        else:
-            reasons.append(
-                f"{low:.2f}-{high:.2f} per cm: partial, not used (holds {here / yardstick:.2g} of the embedded intensity)"
-            )
-    if short:
-        reasons.append(f"{short} lines in stretches shorter than {_GAP_PER_CM:g} per cm: partial, not used")
-    return tuple(good), reasons
-
-
-def union(intervals: Sequence[Interval]) -> tuple[Interval, ...]:
-    """Ascending disjoint intervals that cover the same points."""
-    merged: list[Interval] = []
-    for low, high in sorted(intervals):
-        if merged and low <= merged[-1][1]:
-            merged[-1] = (merged[-1][0], max(high, merged[-1][1]))
-        else:
-            merged.append((low, high))
-    return tuple(merged)
-
-
-def _sum_within(lines: Lines | None, low: float, high: float) -> float:
-    if lines is None:
-        return 0.0
-    first, last = np.searchsorted(lines.wavenumber_per_cm, [low - 1e-6, high + 1e-6])
-    return float(lines.intensity_cm[first:last].sum())
-
-
-def _inside(wavenumber_per_cm: NDArray[np.float64], intervals: Sequence[Interval]) -> NDArray[np.bool_]:
-    mask = np.zeros(wavenumber_per_cm.size, dtype=bool)
-    for low, high in intervals:
-        mask |= (wavenumber_per_cm >= low) & (wavenumber_per_cm <= high)
-    return mask
+        """Declared coverage of one file, or None if it says nothing about this gas."""
+        rows = [row for row in self._folder.declared.get(path.name, []) if row.covers(molecule.formula, isotopologue)]
+        return union([row.interval_per_cm for row in rows]) or None
 
 
 def _without_overlap(segments: list[_Segment]) -> list[_Segment]:
@@ -266,7 +188,7 @@ def _without_overlap(segments: list[_Segment]) -> list[_Segment]:
         for other in taken:
             if other.edition == segment.edition:
                 _refuse_repeated_lines(segment, other)
-        free = _subtract(segment.intervals, [i for s in taken for i in s.intervals])
+        free = subtract(segment.intervals, [i for s in taken for i in s.intervals])
         if free:
             kept.append(
                 _Segment(
@@ -290,16 +212,6 @@ def _refuse_repeated_lines(one: _Segment, other: _Segment) -> None:
         )
 
 
-def _subtract(intervals: Sequence[Interval], taken: Sequence[Interval]) -> tuple[Interval, ...]:
-    free: list[Interval] = list(intervals)
-    for low, high in taken:
-        pieces: list[Interval] = []
-        for a, b in free:
-            pieces += [(x, y) for x, y in ((a, min(b, low)), (max(a, high), b)) if y > x]
-        free = pieces
-    return tuple(free)
-
-
 def _laid_over(embedded: Lines | None, segments: Sequence[_Segment]) -> tuple[Lines | None, tuple[str, ...]]:
     if not segments:
         return embedded, ()
@@ -309,10 +221,10 @@ def _laid_over(embedded: Lines | None, segments: Sequence[_Segment]) -> tuple[Li
         keep = np.ones(len(embedded), dtype=bool)
         for segment in segments:
             same = embedded.isotopologue == segment.isotopologue
-            keep &= ~(same & _inside(embedded.wavenumber_per_cm, segment.intervals))
+            keep &= ~(same & inside(embedded.wavenumber_per_cm, segment.intervals))
         parts.append(embedded.where(keep))
     for segment in segments:
-        parts.append(segment.lines.where(_inside(segment.lines.wavenumber_per_cm, segment.intervals)))
+        parts.append(segment.lines.where(inside(segment.lines.wavenumber_per_cm, segment.intervals)))
         edition = f"HITRAN{segment.edition}" if segment.edition else "edition not named"
         sentences.append(
             f"{find_molecule(str(_formula(segment))).formula}: isotopologue {segment.isotopologue} over "
@@ -332,9 +244,9 @@ def _ranges(intervals: Sequence[Interval]) -> str:
     return ", ".join(f"{low:.6g}-{high:.6g}" for low, high in intervals)
 
 
-def _edition(path: Path, declared: Sequence[dict[str, object]]) -> int:
-    named = [str(row["edition"]) for row in declared if "edition" in row] or [path.name]
-    found = re.search(r"(?:hitran)[_-]?(\d{4})", named[0], re.IGNORECASE)
+def _edition(path: Path, declared: Sequence[Declaration]) -> int:
+    named = next((row.edition for row in declared if row.edition is not None), path.name)
+    found = re.search(r"hitran[_-]?(\d{4})", named, re.IGNORECASE)
     return int(found.group(1)) if found else 0
 
 
@@ -344,7 +256,7 @@ def _read_folder(folder: Path, store: Store) -> _Folder:
     paths = sorted(p for p in folder.iterdir() if re.search(r"\.par(\.gz)?$", p.name, re.IGNORECASE))
     if not paths:
         raise LineDataError(f"{folder}: holds no .par or .par.gz file")
-    result = _Folder(declared=_read_declared(folder / COVERAGE_FILE))
+    result = _Folder(declared=read_declarations(folder / COVERAGE_FILE))
     for path in paths:
         file_digest = digest(path.read_bytes())
         table = store.fetch("files", {"par": file_digest}, _reader(path))
@@ -354,23 +266,3 @@ def _read_folder(folder: Path, store: Store) -> _Folder:
 
 def _reader(path: Path) -> Callable[[], NDArray[np.void]]:
     return lambda: table_from_lines(read_par(path))
-
-
-def _read_declared(path: Path) -> dict[str, list[dict[str, object]]]:
-    if not path.is_file():
-        return {}
-    try:
-        rows = tomllib.loads(path.read_text())["file"]
-        result: dict[str, list[dict[str, object]]] = {}
-        for row in rows:
-            low, high = row["range_per_cm"]
-            if not float(low) < float(high):
-                raise ValueError(f"range_per_cm {low} to {high} is empty")
-            find_molecule(str(row["gas"]))
-            result.setdefault(row["name"], []).append(row)
-    except (tomllib.TOMLDecodeError, KeyError, TypeError, ValueError) as error:
-        raise LineDataError(
-            f'{path}: expected tables [[file]] with name = "x.par", gas = "CO2", range_per_cm = [2100, 2300] and, if '
-            f'wanted, isotopologues = [1, 2] and edition = "HITRAN2020"; got {error!r}'
-        ) from error
-    return result

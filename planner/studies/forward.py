@@ -74,7 +74,7 @@ class ForwardModel:
             cloud_top_bar=top_bar,
             cloud_fraction=cloud.covered_fraction if cloud is not None and change.cloud_top_bar is None else 1.0,
             haze_factor=own_haze if change.haze_factor is None else change.haze_factor,
-            haze_slope=-haze.slope if haze is not None else 4.0,
+            haze_slope=-haze.wavelength_slope if haze is not None else 4.0,
         )
         if not atmosphere.refraction:
             return air

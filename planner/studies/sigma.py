@@ -72,7 +72,7 @@ def sigma(
         raise RangeError(f"pressure: expected more than 0 and less than 1000 bar, got {pressure_bar:g} bar")
     store = Store()
     source = LineLibrary(store, lines_folder).gas(gas)
-    wavenumber = from_per_cm + step_per_cm * np.arange(count)
+    wavenumber = np.asarray(from_per_cm + step_per_cm * np.arange(count), dtype=np.float64)
     total = np.zeros(count)
     if source.lines is not None:
         from planner.spectroscopy.crosssections import cross_sections

@@ -6,10 +6,11 @@ import numpy as np
 import pytest
 
 from planner.errors import LineDataError
+from planner.spectroscopy.coverage import measured_coverage
 from planner.spectroscopy.hitran import write_par
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.lists.build import build_lines, read_constants
-from planner.spectroscopy.sources import LineLibrary, measured_coverage
+from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
 
 

@@ -1,0 +1,172 @@
+"""Where a file of line data is complete: declared by the user, or measured against the embedded list.
+
+Coverage is never a file's first and last line. It is declared (``coverage.toml`` beside the files), or it is measured:
+within each stretch of an isotopologue's lines that has no gap over 5 per cm, the file must hold at least 0.9 of the
+intensity that the embedded list puts there. What falls short is reported as partial and not used, so that a fragment
+never stands for a band.
+"""
+
+from __future__ import annotations
+
+import tomllib
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.errors import LineDataError
+from planner.spectroscopy.lines import Lines
+from planner.spectroscopy.molecules import find_molecule
+
+__all__ = [
+    "COVERAGE_FILE",
+    "Declaration",
+    "Interval",
+    "inside",
+    "measured_coverage",
+    "read_declarations",
+    "subtract",
+    "union",
+]
+
+Interval = tuple[float, float]
+
+COVERAGE_FILE = "coverage.toml"
+_GAP_PER_CM = 5.0
+_COMPLETE_SHARE = 0.9
+
+
+@dataclass(frozen=True, kw_only=True)
+class Declaration:
+    """What the user says a file holds completely."""
+
+    formula: str
+    isotopologues: tuple[int, ...] | None
+    """None for all that the file holds."""
+    interval_per_cm: Interval
+    edition: str | None
+
+    @classmethod
+    def parse(cls, row: dict[str, Any]) -> Declaration:
+        """From one ``[[file]]`` table."""
+        low, high = (float(end) for end in row["range_per_cm"])
+        if not 0 <= low < high:
+            raise ValueError(f"range_per_cm {low:g} to {high:g} is empty")
+        isotopologues = row.get("isotopologues")
+        return cls(
+            formula=find_molecule(str(row["gas"])).formula,
+            isotopologues=None if isotopologues is None else tuple(int(number) for number in isotopologues),
+            interval_per_cm=(low, high),
+            edition=row.get("edition"),
+        )
+
+    def covers(self, formula: str, isotopologue: int) -> bool:
+        """Whether it speaks of this gas and isotopologue."""
+        return self.formula == formula and (self.isotopologues is None or isotopologue in self.isotopologues)
+
+
+def read_declarations(path: Path) -> dict[str, list[Declaration]]:
+    """Declarations by file name; none if there is no such file.
+
+    Raises
+    ------
+    LineDataError
+        If the file does not follow the layout.
+    """
+    if not path.is_file():
+        return {}
+    result: dict[str, list[Declaration]] = {}
+    try:
+        for row in tomllib.loads(path.read_text(encoding="utf-8"))["file"]:
+            result.setdefault(str(row["name"]), []).append(Declaration.parse(row))
+    except (tomllib.TOMLDecodeError, UnicodeDecodeError, KeyError, TypeError, ValueError, LineDataError) as error:
+        raise LineDataError(
+            f'{path}: expected tables [[file]] with name = "x.par", gas = "CO2", range_per_cm = [2100, 2300] and, if '
+            f'wanted, isotopologues = [1, 2] and edition = "HITRAN2020"; got {error!r}'
+        ) from error
+    return result
+
+
+def measured_coverage(lines: Lines, embedded: Lines | None) -> tuple[tuple[Interval, ...], list[str]]:
+    """Where a file's lines of one isotopologue are complete, and reasons for what is not.
+
+    Parameters
+    ----------
+    lines : Lines
+        Lines of one isotopologue of one molecule from one file.
+    embedded : Lines or None
+        The embedded lines of the same isotopologue, the yardstick.
+
+    Returns
+    -------
+    intervals : tuple of (from, to)
+        Stretches without a gap over 5 per cm that hold at least 0.9 of the embedded intensity.
+    reasons : list of str
+        One per stretch that is not used.
+    """
+    good: list[Interval] = []
+    reasons: list[str] = []
+    nu = lines.wavenumber_per_cm
+    breaks = np.flatnonzero(np.diff(nu) > _GAP_PER_CM) + 1
+    short = 0
+    for piece in np.split(np.arange(nu.size), breaks):
+        low, high = float(nu[piece[0]]), float(nu[piece[-1]])
+        if high - low < _GAP_PER_CM:
+            short += piece.size
+            continue
+        here = float(lines.intensity_cm[piece].sum())
+        yardstick = _sum_within(embedded, low, high)
+        if embedded is None or not len(embedded):
+            reasons.append(
+                f"{low:.2f}-{high:.2f} per cm: no embedded list to judge it by; declare it in {COVERAGE_FILE} to use it"
+            )
+        elif here >= _COMPLETE_SHARE * yardstick:
+            good.append((low, high))
+        else:
+            reasons.append(
+                f"{low:.2f}-{high:.2f} per cm: partial, not used "
+                f"(holds {here / yardstick:.2g} of the embedded intensity)"
+            )
+    if short:
+        reasons.append(f"{short} lines in stretches shorter than {_GAP_PER_CM:g} per cm: partial, not used")
+    return tuple(good), reasons
+
+
+def union(intervals: Sequence[Interval]) -> tuple[Interval, ...]:
+    """Ascending disjoint intervals that cover the same points."""
+    merged: list[Interval] = []
+    for low, high in sorted(intervals):
+        if merged and low <= merged[-1][1]:
+            merged[-1] = (merged[-1][0], max(high, merged[-1][1]))
+        else:
+            merged.append((low, high))
+    return tuple(merged)
+
+
+def inside(wavenumber_per_cm: NDArray[np.float64], intervals: Sequence[Interval]) -> NDArray[np.bool_]:
+    """Which wavenumbers lie in any of the intervals, ends included."""
+    mask = np.zeros(wavenumber_per_cm.size, dtype=bool)
+    for low, high in intervals:
+        mask |= (wavenumber_per_cm >= low) & (wavenumber_per_cm <= high)
+    return mask
+
+
+def subtract(intervals: Sequence[Interval], taken: Sequence[Interval]) -> tuple[Interval, ...]:
+    """What is left of intervals when others are taken away."""
+    free: list[Interval] = list(intervals)
+    for low, high in taken:
+        pieces: list[Interval] = []
+        for a, b in free:
+            pieces += [(x, y) for x, y in ((a, min(b, low)), (max(a, high), b)) if y > x]
+        free = pieces
+    return tuple(free)
+
+
+def _sum_within(lines: Lines | None, low: float, high: float) -> float:
+    if lines is None:
+        return 0.0
+    first, last = np.searchsorted(lines.wavenumber_per_cm, [low - 1e-6, high + 1e-6])
+    return float(lines.intensity_cm[first:last].sum())
