@@ -132,9 +132,11 @@ def _native_width(detector: Spectrometer, edge: float) -> float:
     Found by repeated substitution, which settles fast as the element changes little over itself; the element of
     the last pass is rounded up by a part in 1e9 to stay on the wide side.
     """
-    width = _element(detector, edge)
+    width, before = _element(detector, edge), 0.0
     for _ in range(30):
-        width = _element(detector, edge + width / 2)
+        if abs(width - before) < 1e-3 * _TINY * width:
+            break
+        width, before = _element(detector, edge + width / 2), width
     return width * (1 + _TINY)
 
 

@@ -80,7 +80,7 @@ def _pairs_of_numbers(value: Any) -> Table:
 
 _CHARGE = Measure(kind="a charge", unit=u.electron, example="12 electron")
 _CURRENT = Measure(kind="a current", unit=u.electron / u.s, example="0.01 electron/s", zero_allowed=True)
-_TIME = Measure(kind="a time", unit=u.min, example="30 min", zero_allowed=True)
+_TIME = Measure(kind="a time", unit=u.h, example="30 min", zero_allowed=True)
 _ANGLE = Measure(kind="an angle", unit=u.arcsec, example="0.1 arcsec")
 _SHARE = Number(kind="a share", low=0, high=1, open_low=True)
 
@@ -89,7 +89,7 @@ Area = Annotated[float, BeforeValidator(Measure(kind="an area", unit=u.m**2, exa
 Charge = Annotated[float, BeforeValidator(_CHARGE)]
 Current = Annotated[float, BeforeValidator(_CURRENT)]
 OptionalCurrent = Annotated[float | None, BeforeValidator(_CURRENT)]
-Minutes = Annotated[float, BeforeValidator(_TIME)]
+Hours = Annotated[float, BeforeValidator(_TIME)]
 Seconds = Annotated[float, BeforeValidator(Measure(kind="a time", unit=u.s, example="0.226 s"))]
 OptionalAngle = Annotated[float | None, BeforeValidator(_ANGLE)]
 Share = Annotated[float, BeforeValidator(_SHARE)]
@@ -131,9 +131,9 @@ class Telescope(_Sourced):
     """What all detectors of a mode share."""
 
     collecting_area_m2: Area = Field(alias="collecting_area")
-    settling_min: Minutes = Field(alias="settling")
+    settling_h: Hours = Field(alias="settling")
     """Time per visit on the target before the light curve can be used."""
-    overhead_min: Minutes = Field(alias="overhead")
+    overhead_h: Hours = Field(alias="overhead")
     """Time per visit that is charged but spent off the target."""
     visible_share: Share = 1.0
     """Share of the clock time in which the target can be seen at all (occultations by the Earth)."""

@@ -98,7 +98,7 @@ def transit_noise(
     ----------
     mode : Mode
     bins : Bins
-        Of this mode.
+        Of this mode, at least one on each detector.
     wavelength_um, photons_per_s_m2_um : arrays, shape (sample,)
         The star's spectrum, wavelengths ascending or descending, over all bins; linear in between.
     in_transit_s, out_of_transit_s : float
@@ -109,10 +109,12 @@ def transit_noise(
     RangeError
         If the spectrum does not cover the bins.
     ValueError
-        If a time is not positive.
+        If a time is not positive, or a detector has no bin.
     """
     if not (in_transit_s > 0 and out_of_transit_s > 0):
         raise ValueError(f"expected times greater than zero, got {in_transit_s} and {out_of_transit_s}")
+    if set(bins.detector) != set(range(len(mode.detectors))):
+        raise ValueError(f"bins: expected bins on each of the {len(mode.detectors)} detectors of {mode.name}")
     spectrum = _ascending(wavelength_um, photons_per_s_m2_um)
     _check_covered(bins, spectrum[0])
     parts = [
@@ -147,7 +149,7 @@ def _detector_noise(
 
     group_s = detector.frames_per_group * detector.frame_time_s
     groups = choose_groups(
-        brightest_e_per_s=float(brightest.max(initial=0.0)),
+        brightest_e_per_s=float(brightest.max()),
         full_well_e=detector.full_well_e,
         group_time_s=group_s,
         at_most=_most_groups(detector, min(in_s, out_s)),
@@ -210,13 +212,13 @@ class _Light:
 
     def __init__(self, mode: Mode, detector: AnyDetector, spectrum: tuple[Array, Array], edges_um: Array) -> None:
         self._mode, self._detector = mode, detector
-        low, high = edges_um.min(initial=np.inf), edges_um.max(initial=-np.inf)
+        low, high = edges_um.min(), edges_um.max()
         inside = (spectrum[0] > low) & (spectrum[0] < high)
         # with the edges among the samples the integral of the linear interpolant is exact up to the throughput
         self._x_um = np.union1d(spectrum[0][inside], edges_um)
         electrons = _electrons(mode, detector, self._x_um, np.interp(self._x_um, *spectrum))
         steps = np.diff(self._x_um) * (electrons[1:] + electrons[:-1]) / 2
-        self._sum = np.concatenate([[0.0], np.cumsum(steps)])[: self._x_um.size]
+        self._sum = np.concatenate([[0.0], np.cumsum(steps)])
 
     def between(self, low_um: Array, high_um: Array) -> Array:
         """Electrons s-1 between each pair of wavelengths."""
