@@ -158,6 +158,18 @@ def test_hydrogen_helium_tables(reference_folder, name):
         assert score < 0.06
 
 
+def test_hydrogen_wing_table(reference_folder):
+    """Fletcher et al. 2018, the wing of H2-H2 rotation at 2500 to 2900 1/cm, 144 to 400 K: within 15 %.
+
+    Beyond, the fundamental overlaps, which the table does not hold.
+    """
+    temperatures, wavenumber, theirs = read_normal_hydrogen(reference_folder / "cia" / "fletcher_h2h2_2500-4000.dat")
+    alone = wavenumber < 2950.0
+    for temperature_k, column in zip(temperatures[5:], theirs.T[5:], strict=True):
+        ours = collision_coefficient(("H2", "H2"), wavenumber[alone], temperature_k)
+        assert np.abs(ours / column[alone] - 1.0).max() < 0.15
+
+
 def test_oxygen_a_band_table(reference_folder):
     """Tran & Hartmann 2008, O2 in air at 0.76 um: nine points of ten within 5 %."""
     wavenumber, alpha = np.loadtxt(reference_folder / "cia" / "O2_CIA_Aband_GGG.dat").T

@@ -19,13 +19,13 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.special import k1
 
 from planner.errors import LineDataError
 
 __all__ = ["contour_cross_section"]
 
 _REFERENCE_K = 296.0
+_BESSEL_K1_OF_1 = 0.6019072301972346  # modified Bessel function K1(1), not worth an import of scipy
 _SECOND_RADIATION_CM_K = 1.438777  # hc/k, CODATA 2018
 
 # Beyond its span a part keeps its value over the margin, then fades: the fit says nothing there, and a step
@@ -48,7 +48,7 @@ def _hyperbolic(x: NDArray[np.float64]) -> NDArray[np.float64]:
 # shape: function, its integral over one side, and the x where it has fallen below 1e-15
 _SHAPES = {
     "gaussian": (_gaussian, math.sqrt(0.5 * math.pi), 8.4),
-    "hyperbolic": (_hyperbolic, math.e * float(k1(1.0)), 36.0),
+    "hyperbolic": (_hyperbolic, math.e * _BESSEL_K1_OF_1, 36.0),
 }
 
 

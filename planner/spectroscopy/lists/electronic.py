@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -141,15 +141,7 @@ def _ground_levels(ground: Mapping[str, float], largest_n: int) -> list[_Triplet
     """Levels of X3Sigma-g with odd N (the nuclei have no spin)."""
     levels = [level for j in range(largest_n + 2) for level in _levels_of_j(ground, j) if level.n <= largest_n]
     zero = next(level.energy_per_cm for level in levels if (level.n, level.j) == (1, 0))
-    return [
-        _TripletLevel(
-            n=level.n,
-            j=level.j,
-            energy_per_cm=level.energy_per_cm - zero,
-            perpendicular_share=level.perpendicular_share,
-        )
-        for level in levels
-    ]
+    return [replace(level, energy_per_cm=level.energy_per_cm - zero) for level in levels]
 
 
 def _levels_of_j(ground: Mapping[str, float], j: int) -> Iterator[_TripletLevel]:
@@ -213,45 +205,49 @@ def _band_lines(
     part: Mapping[str, Any], band: Mapping[str, Any], levels: list[_TripletLevel], hitran_number: int
 ) -> Lines:
     """Lines of one band, scaled to its sum."""
-    pairs = [
-        (level, step, level.perpendicular_share * strength)
-        for level in levels
-        for step in (-1, 0, 1)
-        if (strength := _line_strength(band["upper"], level.j, step)) > 0.0 and level.perpendicular_share > 0.0
-    ]
-    n = np.array([level.n for level, _, _ in pairs])
-    j = np.array([level.j for level, _, _ in pairs])
-    j_upper = j + np.array([step for _, step, _ in pairs])
-    lower = np.array([level.energy_per_cm for level, _, _ in pairs])
+    n, j, j_upper, lower, strength = _transitions(band["upper"], levels)
     x = j_upper * (j_upper + 1.0)
-    zero = _diagonal(part["ground"], 1, 0)
-    position = band["origin_per_cm"] - zero + x * (band["rotation_per_cm"] - x * band["distortion_per_cm"]) - lower
+    upper = band["origin_per_cm"] + x * (band["rotation_per_cm"] - x * band["distortion_per_cm"])
+    position = upper - _diagonal(part["ground"], 1, 0) - lower
     scale = C2_CM_K / REFERENCE_TEMPERATURE_K
-    weight = np.array([w for _, _, w in pairs]) * position * np.exp(-scale * lower) * -np.expm1(-scale * position)
+    weight = strength * position * np.exp(-scale * lower) * -np.expm1(-scale * position)
     intensity = band["band_sum_cm"] * weight / weight.sum()
-    rows = np.array(part["widths"][band["widths"]], dtype=np.float64).T
-    air, own, exponent, shift = (np.interp(n, rows[0], row) for row in rows[1:])
+    isotopologue, upper_weight = int(part["isotopologue"]), 2.0 * j_upper + 1.0
     return Lines.make(
         molecule=hitran_number,
-        isotopologue=part["isotopologue"],
+        isotopologue=isotopologue,
         wavenumber_per_cm=position,
         intensity_cm=intensity,
-        einstein_a_per_s=einstein_a_per_s(
-            hitran_number, part["isotopologue"], position, intensity, lower, 2.0 * j_upper + 1.0
-        ),
+        einstein_a_per_s=einstein_a_per_s(hitran_number, isotopologue, position, intensity, lower, upper_weight),
         lower_energy_per_cm=lower,
-        air_width_per_cm_atm=air,
-        self_width_per_cm_atm=own,
-        temperature_exponent=exponent,
-        air_shift_per_cm_atm=shift,
+        **_broadening(part["widths"][band["widths"]], n),
         upper_global=f"       {band['upper']}      {band['vibration']}",
         lower_global="       X      0",
         lower_local=[
-            f" {_branch(a, c)}{a:3d}{_branch(b, c)}{b:3d}     d" for a, b, c in zip(n, j, j_upper, strict=True)
+            f" {_branch(low_n, up)}{low_n:3d}{_branch(low_j, up)}{low_j:3d}     d"
+            for low_n, low_j, up in zip(n, j, j_upper, strict=True)
         ],
-        upper_weight=2.0 * j_upper + 1.0,
+        upper_weight=upper_weight,
         lower_weight=2.0 * j + 1.0,
     )
+
+
+def _transitions(upper: str, levels: list[_TripletLevel]) -> tuple[NDArray[Any], ...]:
+    """N", J", J', lower energy and strength of every allowed line, each of shape ``(line,)``."""
+    rows = [
+        (level.n, level.j, level.j + step, level.energy_per_cm, level.perpendicular_share * strength)
+        for level in levels
+        for step in (-1, 0, 1)
+        if (strength := _line_strength(upper, level.j, step)) > 0.0 and level.perpendicular_share > 0.0
+    ]
+    return tuple(np.array(column) for column in zip(*rows, strict=True))
+
+
+def _broadening(rows: list[list[float]], n: NDArray[np.int64]) -> dict[str, NDArray[np.float64]]:
+    """Widths, exponent and shift, linear in N between the rows."""
+    table = np.array(rows, dtype=np.float64).T
+    names = ("air_width_per_cm_atm", "self_width_per_cm_atm", "temperature_exponent", "air_shift_per_cm_atm")
+    return {name: np.interp(n, table[0], column) for name, column in zip(names, table[1:], strict=True)}
 
 
 def _branch(lower: int, upper: int) -> str:
