@@ -11,18 +11,22 @@ from collections.abc import Callable, Mapping, Sequence
 from functools import lru_cache
 from math import floor, log
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from planner.atmosphere.transmission import GasOpacity, PairOpacity
+from planner.errors import LineDataError
 from planner.spectroscopy.broadening import width_factor
+from planner.spectroscopy.collisions import collision_coefficient, collision_pairs
 from planner.spectroscopy.grid import LogGrid
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.lists.build import smooth_cross_section
 from planner.spectroscopy.rayleigh import rayleigh_cross_section
 from planner.spectroscopy.sources import GasSource, LineLibrary
 from planner.spectroscopy.store import Store, digest
+from planner.spectroscopy.watercontinuum import WINDOWS_PER_CM, water_continuum
 
 __all__ = ["PRESSURES_BAR", "TEMPERATURE_STEP", "Opacities", "temperature_nodes"]
 
@@ -62,7 +66,7 @@ class Opacities:
     wing_per_cm : float
         Line wings are cut at this distance.
     water_continuum : bool
-        Whether the water continuum is on; its lines then lose their value at the cut, which the continuum holds.
+        Whether the water continuum is on; in its windows the lines then lose their value at the cut, which it holds.
     progress : callable, optional
         Called with a text and the share done while tables are built.
     """
@@ -111,8 +115,6 @@ class Opacities:
 
     def has_data(self, formula: str) -> bool:
         """Whether the gas has lines or bands at all (noble gases and homonuclear ones may have none)."""
-        from planner.errors import LineDataError
-
         try:
             self._library.gas(formula)
         except LineDataError:
@@ -121,9 +123,6 @@ class Opacities:
 
     def pairs(self, formulas: Sequence[str], temperature_k: float) -> list[PairOpacity]:
         """Collision-induced absorption of every known pair among the gases, and the water continuum."""
-        from planner.spectroscopy.collisions import collision_coefficient, collision_pairs
-        from planner.spectroscopy.watercontinuum import water_continuum
-
         wavenumber = self.grid.wavenumber_per_cm
         present = set(formulas)
         found = [
@@ -179,36 +178,50 @@ class Opacities:
         first, last = np.searchsorted(lines.wavenumber_per_cm, [wavenumber[0] - reach, wavenumber[-1] + reach])
         if first == last:
             return None
-        subtract = self._water_continuum and source.molecule.formula == "H2O"
-        key = {
+        nearby = lines.where(np.arange(first, last))
+        lowered = self._lowered(source, wavenumber)
+        key: dict[str, Any] = {
             "source": source.digest,
             "kernel": _kernel_digest(),
             "temperature_k": round(temperature_k, 6),
             "self_fraction": self_fraction,
             "broadening": round(self.broadening, 3),
             "wing_per_cm": self._wing_per_cm,
-            "subtract_at_wing": subtract,
+            "lowered_at_the_cut": int(lowered.sum()),
             "block": [block.first, block.count, block.samples_per_unit_ln],
             "pressures_bar": PRESSURES_BAR.tolist(),
         }
 
-        def build() -> NDArray[np.float32]:
+        def sums(subtract_at_wing: bool) -> NDArray[np.float64]:
             from planner.spectroscopy.crosssections import cross_sections
 
-            values = cross_sections(
-                lines.where(slice(first, last)),  # type: ignore[arg-type]
+            return cross_sections(
+                nearby,
                 wavenumber,
                 temperature_k=temperature_k,
                 pressures_bar=PRESSURES_BAR,
                 self_fraction=self_fraction,
-                width_factor=round(self.broadening, 3),
+                width_factor=key["broadening"],
                 wing_per_cm=self._wing_per_cm,
-                subtract_at_wing=subtract,
+                subtract_at_wing=subtract_at_wing,
             )
+
+        def build() -> NDArray[np.float32]:
+            values = sums(False)
+            if lowered.any():
+                values[:, lowered] = sums(True)[:, lowered]
             with np.errstate(divide="ignore"):
                 return np.maximum(np.log10(values), _NOTHING).astype(np.float32)
 
         return self._store.fetch(source.molecule.formula, key, build)
+
+    def _lowered(self, source: GasSource, wavenumber_per_cm: NDArray[np.float64]) -> NDArray[np.bool_]:
+        """Where lines lose their value at the cut: those of water inside the windows of its continuum."""
+        mask = np.zeros(wavenumber_per_cm.size, dtype=bool)
+        if self._water_continuum and source.molecule.formula == "H2O":
+            for low, high in WINDOWS_PER_CM:
+                mask |= (wavenumber_per_cm >= low) & (wavenumber_per_cm <= high)
+        return mask
 
 
 @lru_cache(maxsize=1)

@@ -1,7 +1,8 @@
 """The water continuum in the 10 and 4 um windows, from two published laws.
 
 What remains between the lines of water grows with the square of its density (self part) and with its density times
-that of the other gases (foreign part). Lines used beside it are cut at 25 1/cm and lowered by their value there.
+that of the other gases (foreign part). Inside the two windows, lines used beside it are cut at 25 1/cm and lowered by
+their value there, which the laws hold; elsewhere there is nothing to make up for that, and lines stay whole.
 
 * 350 to 1250 1/cm, self: Roberts, Selby & Biberman 1976 (Appl. Opt. 15, 2085), C = 1.25e-22 + 1.67e-19 exp(-7.87e-3 nu)
   cm2 per molecule and atm at 296 K with the factor exp(1800 K (1/T - 1/296 K)); numbers from memory. Their fit is of
@@ -26,7 +27,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-__all__ = ["water_continuum"]
+__all__ = ["WINDOWS_PER_CM", "water_continuum"]
 
 _REFERENCE_K = 296.0
 _COLDEST_K, _WARMEST_K = 250.0, 400.0  # a little more than the laboratory's range
@@ -34,6 +35,9 @@ _BINDING_K = 1800.0
 _FOREIGN_SHARE = 0.002
 
 _TEN_MICRON_PER_CM = (350.0, 1250.0)
+WINDOWS_PER_CM = (_TEN_MICRON_PER_CM, (2400.0, 2800.0))
+"""Where the laws hold, and with them what is taken off the lines at their cut; elsewhere lines stay whole."""
+
 _TEN_MICRON_FLOOR, _TEN_MICRON_RISE, _TEN_MICRON_SLOPE_CM = 1.25e-22, 1.67e-19, 7.87e-3
 
 # wavenumber (1/cm) and C at 296 K in cm2 per gram and atm
