@@ -105,7 +105,7 @@ class _Solver:
         for band in sets:
             for key in ((band.states, band.couplings), ((band.lower,), ())):
                 self._j_needed[key] = max(band.j_max, self._j_needed.get(key, 0))
-        self.k_max = int(part.get("k_max", max(self._j_needed.values(), default=0)))
+        self.k_max = max(2, int(part.get("k_max", max(self._j_needed.values(), default=0))))
         self._solved: dict[tuple[Any, ...], tuple[Levels, ...]] = {}
 
     def levels(self, states: tuple[str, ...], couplings: tuple[Coupling, ...] = ()) -> tuple[Levels, ...]:
@@ -241,7 +241,7 @@ def _factor(
 def _columns(group: _Group, scale: float, ka_most: Floats, cuts_cm: Floats) -> dict[str, NDArray[Any]]:
     """The lines of a group that are strong enough, one array per property."""
     intensity = scale * group.strength
-    j, up, low = np.nonzero(intensity >= cuts_cm.min())
+    j, up, low = np.nonzero((intensity > 0) & (intensity >= cuts_cm.min()))
     j_upper, j_lower = group.j_upper[j], group.j_lower[j]
     state, ka = group.upper.state[j_upper, up], group.upper.ka[j_upper, up]
     keep = (intensity[j, up, low] >= cuts_cm[state]) & (ka <= ka_most[state])
@@ -259,15 +259,19 @@ def _columns(group: _Group, scale: float, ka_most: Floats, cuts_cm: Floats) -> d
 
 
 def _merged(column: dict[str, NDArray[Any]], tolerance_per_cm: float) -> dict[str, NDArray[Any]]:
-    """One line for neighbours of equal wavenumber and lower energy: the unresolved doublets of high J."""
-    order = np.argsort(column["wavenumber"], kind="stable")
+    """One line for lines of equal lower energy and wavenumber: the unresolved doublets of high J.
+
+    Energies count as equal in the same cell of the tolerance's width; a doublet astride two cells stays two lines.
+    """
+    if tolerance_per_cm <= 0:
+        return column
+    cell = np.rint(column["energy"] / tolerance_per_cm)
+    order = np.lexsort((column["wavenumber"], cell))
     column = {name: values[order] for name, values in column.items()}
-    apart = np.ones(order.size, dtype=bool)
-    apart[1:] = (np.diff(column["wavenumber"]) >= tolerance_per_cm) | (
-        np.abs(np.diff(column["energy"])) >= tolerance_per_cm
-    )
-    total = np.bincount(np.cumsum(apart) - 1, weights=column["intensity"])
-    return {name: values[apart] for name, values in column.items()} | {"intensity": total}
+    first = np.ones(order.size, dtype=bool)
+    first[1:] = (np.diff(column["wavenumber"]) >= tolerance_per_cm) | (np.diff(cell[order]) > 0)
+    total = np.bincount(np.cumsum(first) - 1, weights=column["intensity"])
+    return {name: values[first] for name, values in column.items()} | {"intensity": total}
 
 
 def _label_index(levels: Levels, j: NDArray[np.int64], level: NDArray[np.int64]) -> NDArray[np.int64]:

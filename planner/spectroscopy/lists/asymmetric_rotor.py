@@ -136,7 +136,7 @@ def rotor_hamiltonian(constants: RotorConstants, block: int, j_max: int, k_max: 
     diagonal = diagonal + h_j * p**3 + h_jk * p**2 * u + h_kj * p * u**2 + h_k * u**3
     if block & ODD:
         sign = -1.0 if block & MINUS else 1.0
-        diagonal[:, 0] += sign * _asymmetry(constants, p, np.array([-1]))[:, 0]
+        diagonal[:, :1] += sign * _asymmetry(constants, p, np.array([-1]))
     matrix = np.zeros((j_max + 1, k.size, k.size))
     index = np.arange(k.size)
     matrix[:, index, index] = diagonal
@@ -215,7 +215,7 @@ def coupled_levels(
 ) -> tuple[Levels, ...]:
     """Levels of a set of coupled vibrational states, one `Levels` per symmetry block.
 
-    The blocks are numbered by the block that the first state contributes.
+    The blocks are numbered by the block that the first state contributes; ``k_max`` is at least 2.
 
     Raises
     ------
