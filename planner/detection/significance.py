@@ -14,6 +14,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -90,7 +91,7 @@ class Measurement:
 
     def snr(self, transits: float) -> float:
         """Expected significance after a number of transits (may be fractional); 0 for an empty template."""
-        return self._distance(np.diag(self.white_ppm**2 / transits) + self.floor_ppm2)
+        return self._distance(1.0 / transits)
 
     def snr_limit(self) -> float:
         """Best attainable significance, after infinitely many transits; infinite where no floor bounds it."""
@@ -98,17 +99,31 @@ class Measurement:
             return 0.0
         if np.any(np.diag(self.floor_ppm2) == 0):
             return np.inf  # bins without a floor average down for ever
-        return self._distance(self.floor_ppm2)
+        return self._distance(0.0)
 
-    def _distance(self, covariance_ppm2: NDArray[np.float64]) -> float:
+    @cached_property
+    def _modes(self) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+        """Independent modes of the noise: floor over white variance ``(mode,)``, and template and directions in them.
+
+        In units of the white noise of one transit the covariance after N transits is ``1/N + F``; rotated to the
+        eigenvectors of F it is diagonal for every N.
+        """
+        columns = np.vstack([self.template_ppm, self.directions_ppm]) / self.white_ppm
+        floor = self.floor_ppm2 / np.outer(self.white_ppm, self.white_ppm)
+        variances = np.diag(floor)
+        if np.count_nonzero(floor) == np.count_nonzero(variances):
+            return variances, columns.T
+        variances, vectors = linalg.eigh(floor)
+        return np.maximum(variances, 0.0), vectors.T @ columns.T
+
+    def _distance(self, white_share: float) -> float:
         """Distance of the template from what the nuisances can imitate, in standard deviations.
 
         ``t'(C + B B')^-1 t`` is the minimum over ``c`` of ``|L^-1 (t - B c)|^2 + |c|^2`` with ``C = L L'``; as a
         least-squares problem it stays accurate when the nuisances are much wider than the noise.
         """
-        factor = linalg.cholesky(covariance_ppm2, lower=True)
-        columns = np.vstack([self.template_ppm, self.directions_ppm]).T
-        whitened = linalg.solve_triangular(factor, columns, lower=True)
+        variances, columns = self._modes
+        whitened = columns / np.sqrt(white_share + variances)[:, None]
         count = len(self.nuisances)
         design = np.vstack([whitened[:, 1:], np.eye(count)])
         target = np.concatenate([whitened[:, 0], np.zeros(count)])

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from math import ceil, floor, log
 
 import numpy as np
@@ -50,10 +51,12 @@ class LogGrid:
         last = ceil(log(1e4 / from_um) * samples_per_unit_ln)
         return cls(first=first, count=last - first + 1, samples_per_unit_ln=samples_per_unit_ln)
 
-    @property
+    @cached_property
     def wavenumber_per_cm(self) -> NDArray[np.float64]:
         """Samples in ascending wavenumber, shape ``(wavenumber,)``."""
-        return np.exp(np.arange(self.first, self.first + self.count) / self.samples_per_unit_ln)
+        samples = np.exp(np.arange(self.first, self.first + self.count) / self.samples_per_unit_ln)
+        samples.flags.writeable = False
+        return samples
 
     @property
     def wavelength_um(self) -> NDArray[np.float64]:

@@ -90,28 +90,16 @@ class Opacities:
         self._water_continuum = water_continuum
         self._progress = progress or (lambda text, share: None)
         self._node = lru_cache(maxsize=64)(self._build_node)
+        self._gas = lru_cache(maxsize=64)(self._build_gas)
+        self._pairs = lru_cache(maxsize=16)(self._build_pairs)
 
     def gas(self, formula: str, temperature_k: float, mixing_ratio: float = 0.0) -> GasOpacity:
         """What one gas absorbs and scatters by itself at a temperature.
 
-        The mixing ratio enters through self-broadening alone.
+        The mixing ratio enters through self-broadening alone, in steps of a tenth.
         """
-        wavenumber = self.grid.wavenumber_per_cm
-        flat = rayleigh_cross_section(formula, wavenumber)
-        source = self._library.gas(formula) if self.has_data(formula) else None
-        table = None
-        if source is not None:
-            if source.constants is not None:
-                smooth = smooth_cross_section(source.constants, wavenumber, temperature_k)
-                flat = flat if smooth is None else flat + smooth
-            if source.lines is not None and len(source.lines):
-                table = self._interpolated(source, temperature_k, mixing_ratio)
-        return GasOpacity(
-            formula=formula,
-            pressures_bar=PRESSURES_BAR,
-            log10_cross_section=table,
-            flat_cross_section_cm2=flat if np.any(flat) else None,
-        )
+        share = round(mixing_ratio, 1) if mixing_ratio >= _LEAST_SELF_FRACTION else 0.0
+        return self._gas(formula, temperature_k, share)
 
     def has_data(self, formula: str) -> bool:
         """Whether the gas has lines or bands at all (noble gases and homonuclear ones may have none)."""
@@ -123,8 +111,36 @@ class Opacities:
 
     def pairs(self, formulas: Sequence[str], temperature_k: float) -> list[PairOpacity]:
         """Collision-induced absorption of every known pair among the gases, and the water continuum."""
+        return self._pairs(frozenset(formulas), temperature_k)
+
+    def covered(self, formula: str) -> NDArray[np.bool_]:
+        """Where the gas's data can be trusted, shape ``(wavenumber,)``."""
         wavenumber = self.grid.wavenumber_per_cm
-        present = set(formulas)
+        mask = np.zeros(wavenumber.size, dtype=bool)
+        for low, high in self._library.gas(formula).covers_per_cm:
+            mask |= (wavenumber >= low) & (wavenumber <= high)
+        return mask
+
+    def _build_gas(self, formula: str, temperature_k: float, self_fraction: float) -> GasOpacity:
+        wavenumber = self.grid.wavenumber_per_cm
+        flat = rayleigh_cross_section(formula, wavenumber)
+        source = self._library.gas(formula) if self.has_data(formula) else None
+        table = None
+        if source is not None:
+            if source.constants is not None:
+                smooth = smooth_cross_section(source.constants, wavenumber, temperature_k)
+                flat = flat if smooth is None else flat + smooth
+            if source.lines is not None and len(source.lines):
+                table = self._interpolated(source, temperature_k, self_fraction)
+        return GasOpacity(
+            formula=formula,
+            pressures_bar=PRESSURES_BAR,
+            log10_cross_section=table,
+            flat_cross_section_cm2=flat if np.any(flat) else None,
+        )
+
+    def _build_pairs(self, present: frozenset[str], temperature_k: float) -> list[PairOpacity]:
+        wavenumber = self.grid.wavenumber_per_cm
         found = [
             PairOpacity(first=a, second=b, coefficient_cm5=collision_coefficient((a, b), wavenumber, temperature_k))
             for a, b in collision_pairs()
@@ -138,16 +154,7 @@ class Opacities:
             ]
         return [pair for pair in found if np.any(pair.coefficient_cm5)]
 
-    def covered(self, formula: str) -> NDArray[np.bool_]:
-        """Where the gas's data can be trusted, shape ``(wavenumber,)``."""
-        wavenumber = self.grid.wavenumber_per_cm
-        mask = np.zeros(wavenumber.size, dtype=bool)
-        for low, high in self._library.gas(formula).covers_per_cm:
-            mask |= (wavenumber >= low) & (wavenumber <= high)
-        return mask
-
-    def _interpolated(self, source: GasSource, temperature_k: float, mixing_ratio: float) -> NDArray[np.float32]:
-        share = round(mixing_ratio, 1) if mixing_ratio >= _LEAST_SELF_FRACTION else 0.0
+    def _interpolated(self, source: GasSource, temperature_k: float, share: float) -> NDArray[np.float32]:
         low_k, high_k = temperature_nodes(temperature_k)
         low = self._node(source.molecule.formula, low_k, share)
         if high_k == low_k:
@@ -178,7 +185,6 @@ class Opacities:
         first, last = np.searchsorted(lines.wavenumber_per_cm, [wavenumber[0] - reach, wavenumber[-1] + reach])
         if first == last:
             return None
-        nearby = lines.where(np.arange(first, last))
         lowered = self._lowered(source, wavenumber)
         key: dict[str, Any] = {
             "source": source.digest,
@@ -196,7 +202,7 @@ class Opacities:
             from planner.spectroscopy.crosssections import cross_sections
 
             return cross_sections(
-                nearby,
+                lines.where(np.arange(first, last)),
                 wavenumber,
                 temperature_k=temperature_k,
                 pressures_bar=PRESSURES_BAR,

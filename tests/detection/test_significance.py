@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
 from planner.detection.significance import Measurement, one_sided_probability, one_sided_sigma, target_snr
 
 
@@ -22,6 +23,19 @@ def measurement(bins=40, floor=0.0, nuisances=0, seed=1, amplitude=30.0, white=4
         nuisances=tuple(f"n{i}" for i in range(nuisances)),
         directions_ppm=np.array([200.0 * x**i for i in range(nuisances)]).reshape(nuisances, bins),
     )
+
+
+def correlated(m, length=0.1, floor=8.0):
+    x = np.linspace(-1, 1, m.template_ppm.size)
+    return replace(m, floor_ppm2=floor**2 * np.exp(-np.abs(x[:, None] - x) / length))
+
+
+@pytest.mark.parametrize("transits", [1, 30, 1e4])
+def test_correlated_floor_equals_a_joint_fit(transits):
+    """A floor that is correlated between bins is treated exactly, at every number of transits."""
+    m = correlated(measurement(nuisances=3))
+    assert m.snr(transits) == pytest.approx(slow_snr(m, transits), rel=1e-9)
+    assert m.snr(1e12) == pytest.approx(m.snr_limit(), rel=1e-4)
 
 
 def slow_snr(m, transits):
