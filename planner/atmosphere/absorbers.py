@@ -83,9 +83,7 @@ def check_opacities(
     for gas in gases:
         for array in (gas.log10_cross_section, gas.flat_cross_section_cm2):
             if array is not None and array.shape[-1] != size:
-                raise ValueError(
-                    f"GasOpacity {gas.formula}: expected {size} wavenumbers, got {array.shape[-1]}"
-                )
+                raise ValueError(f"GasOpacity {gas.formula}: expected {size} wavenumbers, got {array.shape[-1]}")
     for pair in pairs:
         if pair.coefficient_cm5.shape != (size,):
             raise ValueError(

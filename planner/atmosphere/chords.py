@@ -102,9 +102,7 @@ def chords_through(air: Air, *, bottom: float, top: float) -> Chords:
     `top` is moved up if need be to leave a panel above the cloud top.
     """
     covered = air.cloud_fraction if air.cloud_top_bar is not None else 0.0
-    deck = (
-        max(bottom, air.e_folds_at_pressure(air.cloud_top_bar)) if air.cloud_top_bar is not None else bottom
-    )
+    deck = max(bottom, air.e_folds_at_pressure(air.cloud_top_bar)) if air.cloud_top_bar is not None else bottom
     if covered == 1.0:
         bottom = deck
     top = max(top, deck + _PANEL_E_FOLDS)

@@ -29,9 +29,7 @@ def bottom_e_folds(air: Air, gases: Sequence[GasOpacity]) -> float:
     RangeError
         If a table ends above that.
     """
-    reach_bar = {
-        gas.formula: float(gas.pressures_bar[-1]) for gas in gases if gas.log10_cross_section is not None
-    }
+    reach_bar = {gas.formula: float(gas.pressures_bar[-1]) for gas in gases if gas.log10_cross_section is not None}
     bottom = 0.0
     if not air.surface:
         deepest = min(reach_bar.values(), default=_BOTTOM_WITHOUT_TABLES_BAR)

@@ -16,7 +16,6 @@ from numba import njit, types
 
 __all__ = ["exp2_single", "integrate_chords", "slant_depths"]
 
-_vector = types.Array(types.float32, 1, "C", readonly=True)
 _matrix = types.Array(types.float32, 2, "C", readonly=True)
 _counts = types.Array(types.int64, 1, "C", readonly=True)
 _options = {"nogil": True, "cache": True, "fastmath": {"contract"}, "error_model": "numpy"}
@@ -50,9 +49,7 @@ def exp2_single(x):  # type: ignore[no-untyped-def]
 
 
 @njit(
-    types.void(
-        _matrix, types.int64, types.int64, _matrix, _counts, types.float32[:, ::1], types.float32[:, ::1]
-    ),
+    types.void(_matrix, types.int64, types.int64, _matrix, _counts, types.float32[:, ::1], types.float32[:, ::1]),
     **_options,
 )
 def slant_depths(log10_cross_section, start, count, weights, rows_seen, cross_section, depths):  # type: ignore[no-untyped-def]
@@ -60,7 +57,7 @@ def slant_depths(log10_cross_section, start, count, weights, rows_seen, cross_se
 
     log10_cross_section (pressure, wavenumber); the block is ``start`` to ``start + count``.
     weights (chord, pressure) from `row_weights` times the mixing ratio, padded with zeros to a multiple of four rows.
-    rows_seen (chord,): rows with a weight, rounded up to a multiple of four.
+    rows_seen (chord,): rows with a weight, rounded up to a multiple of four; the first chord sees most.
     cross_section (padded pressure, block): scratch; rows past the table must be 0. depths (chord, block): added to.
     """
     for row in range(min(log10_cross_section.shape[0], rows_seen[0])):

@@ -100,9 +100,7 @@ class Air:
             if value is not None and not (math.isfinite(value) and value > 0):
                 raise ValueError(f"Air.{name}: expected a positive finite number, got {value!r}")
         if not 0 <= self.cloud_fraction <= 1:
-            raise ValueError(
-                f"Air.cloud_fraction: expected a number from 0 to 1, got {self.cloud_fraction!r}"
-            )
+            raise ValueError(f"Air.cloud_fraction: expected a number from 0 to 1, got {self.cloud_fraction!r}")
         if not (math.isfinite(self.haze_factor) and self.haze_factor >= 0):
             raise ValueError(f"Air.haze_factor: expected a finite number >= 0, got {self.haze_factor!r}")
         if not math.isfinite(self.haze_slope):

@@ -38,9 +38,7 @@ def reference_transit_depth(
     """
     if not air.surface:
         raise NotImplementedError("the reference wants air that ends at its base")
-    bottom = (
-        0.0 if air.critical_radius_km is None else max(0.0, air.e_folds_at_radius(air.critical_radius_km))
-    )
+    bottom = 0.0 if air.critical_radius_km is None else max(0.0, air.e_folds_at_radius(air.critical_radius_km))
     parts = [(1.0, bottom)]
     if air.cloud_top_bar is not None:
         deck = max(bottom, air.e_folds_at_pressure(air.cloud_top_bar))

@@ -82,9 +82,7 @@ def refraction_boundary(
     r = air.base_radius_km
     for _ in range(100):
         # r / H(r) = R0^2 / (H0 r)
-        bending_at_base_density = at_base * math.sqrt(
-            2 * math.pi * air.e_folds_to_infinity * air.base_radius_km / r
-        )
+        bending_at_base_density = at_base * math.sqrt(2 * math.pi * air.e_folds_to_infinity * air.base_radius_km / r)
         e_folds = math.log(bending_at_base_density * orbital_distance_km / (star_radius_km + r))
         if air.surface and e_folds <= 0:
             return None

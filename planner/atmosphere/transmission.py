@@ -165,17 +165,13 @@ def _one_pass(
     from planner.atmosphere.kernels import integrate_chords, slant_depths
 
     columns, squared = chords.columns_per_cm2(), chords.squared_columns_per_cm5()
-    profile = np.stack([columns / columns[0], squared / squared[0], chords.area_weight_km2]).astype(
-        np.float32
-    )
+    profile = np.stack([columns / columns[0], squared / squared[0], chords.area_weight_km2]).astype(np.float32)
     smooth_depth, pair_depth = (
         (columns[0] * smooth).astype(np.float32),
         (squared[0] * paired).astype(np.float32),
     )
     # gases mostly share their pressures, and the weights are the dearest part when the wavenumbers are few
-    rows = {
-        gas.pressures_bar.tobytes(): gas.pressures_bar for gas in gases if gas.log10_cross_section is not None
-    }
+    rows = {gas.pressures_bar.tobytes(): gas.pressures_bar for gas in gases if gas.log10_cross_section is not None}
     weights = {key: row_weights(chords, pressures) for key, pressures in rows.items()}
     tables = [
         (_row(gas, shares), gas.log10_cross_section, *_padded(ratio * weights[gas.pressures_bar.tobytes()]))

@@ -39,9 +39,7 @@ def test_column_against_adaptive_quadrature(make_air):
                 assert found == pytest.approx(expected, rel=tolerance)
 
 
-@pytest.mark.parametrize(
-    "rows", [ROWS, ROWS[::4], np.r_[1e-9, ROWS], ROWS[[0, 5, 6, 7, 21]], ROWS[-2:], ROWS[-1:]]
-)
+@pytest.mark.parametrize("rows", [ROWS, ROWS[::4], np.r_[1e-9, ROWS], ROWS[[0, 5, 6, 7, 21]], ROWS[-2:], ROWS[-1:]])
 def test_row_weights_add_to_the_column(make_air, rows):
     """A cross-section that does not vary gets the whole column, however the rows lie."""
     chords = chords_through(make_air(), bottom=0.0, top=24.0)

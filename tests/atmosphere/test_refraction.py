@@ -35,12 +35,8 @@ def test_surface_above_the_boundary(make_air):
 
 def test_denser_air_and_farther_stars_raise_the_boundary(make_air):
     """The boundary keeps its density: ten times the pressure raises it by H ln 10."""
-    one, ten = (
-        make_air(base_pressure_bar=p, base_radius_km=1e6, mixing_ratios={"N2": 1.0}) for p in (10.0, 100.0)
-    )
-    low, high = (
-        refraction_boundary(a, star_radius_km=SUN_KM, orbital_distance_km=10 * AU_KM) for a in (one, ten)
-    )
+    one, ten = (make_air(base_pressure_bar=p, base_radius_km=1e6, mixing_ratios={"N2": 1.0}) for p in (10.0, 100.0))
+    low, high = (refraction_boundary(a, star_radius_km=SUN_KM, orbital_distance_km=10 * AU_KM) for a in (one, ten))
     assert high - low == pytest.approx(one.scale_height_km * np.log(10), rel=1e-3)
     far = refraction_boundary(one, star_radius_km=SUN_KM, orbital_distance_km=20 * AU_KM)
     assert far > low

@@ -54,9 +54,7 @@ def air() -> Air:
 
 def model(air, gases, pairs, size):
     wavenumber = np.linspace(1000, 2000, size)
-    return transit_depth(
-        air, gases, pairs, wavenumber_per_cm=wavenumber, star_radius_km=STAR_KM, shares_of=["X"]
-    )
+    return transit_depth(air, gases, pairs, wavenumber_per_cm=wavenumber, star_radius_km=STAR_KM, shares_of=["X"])
 
 
 def height(air, depth):
@@ -136,9 +134,7 @@ def test_falling_gravity_and_true_chords(sigma):
         return n0 * np.exp(-r0 / h0 * (1 - r0 / r))
 
     def slant(b):
-        path = quad(
-            lambda s: density(np.hypot(b, s)), 0, 12 * np.sqrt(b * h0) * (b / r0), epsrel=1e-9, limit=200
-        )[0]
+        path = quad(lambda s: density(np.hypot(b, s)), 0, 12 * np.sqrt(b * h0) * (b / r0), epsrel=1e-9, limit=200)[0]
         return 2e5 * path * sigma
 
     top = r0 / (1 - 34 * h0 / r0)

@@ -43,9 +43,7 @@ def earth(scale_height_km: float) -> Air:
 def boundary_km(air: Air, star_km: float, distance_km: float) -> float | None:
     """Height of the boundary, the refractivity at the surface being that of the published figures."""
     at_stp = SURFACE_REFRACTIVITY * LOSCHMIDT_PER_CM3 / air.base_density_per_cm3
-    r = refraction_boundary(
-        air, star_radius_km=star_km, orbital_distance_km=distance_km, refractivity_at_stp=at_stp
-    )
+    r = refraction_boundary(air, star_radius_km=star_km, orbital_distance_km=distance_km, refractivity_at_stp=at_stp)
     return None if r is None else r - EARTH_KM
 
 

@@ -97,9 +97,7 @@ WORKED = [
 def test_height_by_quadrature(air, sigma, ratio, tau0, height_km, ppm):
     """With gravity held constant, as the worked figures were made, the rule across the chords gives them all."""
     r0, h = air.base_radius_km, air.scale_height_km
-    assert ratio * sigma * air.base_density_per_cm3 * np.sqrt(2 * np.pi * r0 * h) * 1e5 == pytest.approx(
-        tau0, rel=1e-5
-    )
+    assert ratio * sigma * air.base_density_per_cm3 * np.sqrt(2 * np.pi * r0 * h) * 1e5 == pytest.approx(tau0, rel=1e-5)
     u, weight = height_rule(0.0, 30.0)
     area = (2 * (r0 + h * u) * h * weight) @ -np.expm1(-tau0 * np.exp(-u))
     assert np.sqrt(r0**2 + area) - r0 == pytest.approx(height_km, abs=2e-4)
@@ -115,9 +113,7 @@ def test_falling_gravity_lifts_the_air(air, sigma, ratio, tau0, height_km, ppm):
         log10_cross_section=None,
         flat_cross_section_cm2=np.array([sigma * ratio]),
     )
-    depth = transit_depth(
-        air, [flat], [], wavenumber_per_cm=np.array([2000.0]), star_radius_km=STAR_KM
-    ).depth[0]
+    depth = transit_depth(air, [flat], [], wavenumber_per_cm=np.array([2000.0]), star_radius_km=STAR_KM).depth[0]
     lift = np.sqrt(depth) * STAR_KM - air.base_radius_km - height_km
     # z^2/R0; the chord at that height is longer by 3/2 z/R0; the rings spread by pi^2/6 H^2 about z; and a chord
     # through air whose gravity falls is longer than the thin limit by 9/8 H/R0. Next come terms like z^3/R0^2.
@@ -134,8 +130,6 @@ def test_nitrogen_pairs(air):
     squared = chords_through(air, bottom=0.0, top=5.0).squared_columns_per_cm5()[0]
     assert squared * coefficient == pytest.approx(41.32, rel=2 * air.scale_height_km / air.base_radius_km)
     pair = PairOpacity(first="N2", second="N2", coefficient_cm5=np.array([coefficient]))
-    depth = transit_depth(
-        air, [], [pair], wavenumber_per_cm=np.array([2331.0]), star_radius_km=STAR_KM
-    ).depth[0]
+    depth = transit_depth(air, [], [pair], wavenumber_per_cm=np.array([2331.0]), star_radius_km=STAR_KM).depth[0]
     # falling gravity and the longer chord lift it by z^2/R0 + 3/4 (z/R0) H = 0.09 km
     assert np.sqrt(depth) * STAR_KM - air.base_radius_km == pytest.approx(19.91 + 0.09, abs=0.03)
