@@ -17,7 +17,7 @@ from planner.report.files import write_text
 from planner.report.words import bands_text
 from planner.studies.results import BinnedSpectrum, Counts, PlanResult
 
-__all__ = ["plan_table", "sigma_table", "spectra_table", "write_table"]
+__all__ = ["check_table_name", "plan_meta", "plan_table", "sigma_table", "spectra_table", "write_table"]
 
 _FORMATS = {".ecsv": "ascii.ecsv", ".csv": "ascii.csv"}
 _COUNTS = {
@@ -39,11 +39,22 @@ def write_table(table: Table, path: str | Path) -> None:
         If the name ends in neither ``.ecsv`` nor ``.csv``, or the file cannot be written.
     """
     path = Path(path)
-    if path.suffix.lower() not in _FORMATS:
-        raise OutputError(f'{path}: expected a name that ends in .ecsv or .csv, got "{path.suffix or path.name}"')
+    check_table_name(path)
     text = io.StringIO()
     table.write(text, format=_FORMATS[path.suffix.lower()])
     write_text(path, text.getvalue())
+
+
+def check_table_name(path: Path) -> None:
+    """Refuse a name whose ending is not that of a table.
+
+    Raises
+    ------
+    OutputError
+        Naming the endings that are known.
+    """
+    if path.suffix.lower() not in _FORMATS:
+        raise OutputError(f'{path}: expected a name that ends in .ecsv or .csv, got "{path.suffix or path.name}"')
 
 
 def plan_table(result: PlanResult) -> Table:
@@ -53,7 +64,7 @@ def plan_table(result: PlanResult) -> Table:
     `planner.report.jsonio`; ``best_bands_um`` and ``costs_most`` are text.
     """
     rows = result.rows
-    table = Table(meta=_meta(result))
+    table = Table(meta=plan_meta(result))
     table["gas"] = [row.gas for row in rows]
     table["mixing_ratio"] = [row.mixing_ratio for row in rows]
     table["mode"] = [row.mode for row in rows]
@@ -99,7 +110,7 @@ def sigma_table(
     return table
 
 
-def _meta(result: PlanResult) -> dict[str, Any]:
+def plan_meta(result: PlanResult) -> dict[str, Any]:
     """What a reader of the table must know beside the rows."""
     return {
         "title": result.title,

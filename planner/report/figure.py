@@ -28,7 +28,7 @@ from planner.report.points import Points, simulated_points
 from planner.report.words import count_text, gas_text, hours_text, ratio_text
 from planner.studies.results import BandShare, BinnedSpectrum, PlanResult, PlanRow, Verdict
 
-__all__ = ["choose_rows", "plan_figure", "spectra_figure", "write_figure"]
+__all__ = ["check_figure_name", "choose_rows", "plan_figure", "spectra_figure", "write_figure"]
 
 Array = NDArray[np.float64]
 
@@ -130,14 +130,26 @@ def write_figure(figure: Figure, path: str | Path) -> None:
         If the ending is another one, or the file cannot be written.
     """
     path = Path(path)
+    check_figure_name(path)
     kind = path.suffix.lower()
-    if kind not in SUFFIXES:
-        raise OutputError(f"{path}: expected a name that ends in {', '.join(SUFFIXES)}, got {kind or path.name!r}")
     dates = {".pdf": {"CreationDate": None}, ".svg": {"Date": None}, ".png": None}  # no clock in the file
     data = io.BytesIO()
     with matplotlib.rc_context(_STYLE):
         figure.savefig(data, format=kind[1:], dpi=300, metadata=dates[kind])
     write_bytes(path, data.getvalue())
+
+
+def check_figure_name(path: Path) -> None:
+    """Refuse a name whose ending is not that of a figure.
+
+    Raises
+    ------
+    OutputError
+        Naming the endings that are known.
+    """
+    if path.suffix.lower() not in SUFFIXES:
+        ending = path.suffix or path.name
+        raise OutputError(f'{path}: expected a name that ends in {", ".join(SUFFIXES)}, got "{ending}"')
 
 
 def choose_rows(result: PlanResult) -> list[int]:
@@ -282,7 +294,10 @@ def _mark_unusable(axes: Axes, spectrum: BinnedSpectrum) -> None:
 
 
 def _scale_axes(axes: Axes, spectrum: BinnedSpectrum, points: Points) -> None:
-    """Wavelength in logarithm with plain ticks; depth on the left, scale heights above the lowest bin on the right."""
+    """Wavelength in logarithm with plain ticks; depth on the left, scale heights above the lowest bin on the right.
+
+    The depths leave room for three typical errors: a few points that tell next to nothing must not flatten the rest.
+    """
     low_um, high_um = spectrum.from_um.min(), spectrum.to_um.max()
     axes.set_xscale("log")
     axes.set_xlim(low_um / 1.005, high_um * 1.005)
@@ -291,9 +306,8 @@ def _scale_axes(axes: Axes, spectrum: BinnedSpectrum, points: Points) -> None:
     axes.xaxis.set_minor_locator(FixedLocator(_MINOR_TICKS_UM))
     axes.xaxis.set_minor_formatter(NullFormatter())
     base, height = float(spectrum.depth_ppm.min()), spectrum.scale_height_ppm
-    bottom = min(base, float(np.min(points.depth_ppm - points.error_ppm, initial=base)))
-    top = max(float(spectrum.depth_ppm.max()), float(np.max(points.depth_ppm + points.error_ppm, initial=base)))
-    axes.set_ylim(bottom - 0.06 * (top - bottom), top + 0.06 * (top - bottom))
+    spread = 3 * float(np.median(points.error_ppm)) if points.error_ppm.size else height
+    axes.set_ylim(base - spread, float(spectrum.depth_ppm.max()) + spread)
     axes.set_xlabel("Wavelength (µm)", labelpad=1.5)
     axes.set_ylabel("Transit depth (ppm)")
     axes.tick_params(which="both", top=True)

@@ -8,7 +8,24 @@ from uuid import uuid4
 
 from planner.errors import OutputError
 
-__all__ = ["make_folder", "write_bytes", "write_text"]
+__all__ = ["check_writable", "make_folder", "write_bytes", "write_text"]
+
+
+def check_writable(path: str | Path) -> None:
+    """Refuse a file that could not be written, before the work that fills it.
+
+    Raises
+    ------
+    OutputError
+        As `write_bytes`.
+    """
+    path = Path(path)
+    if path.is_dir():
+        raise OutputError(f"{path}: expected the name of a file, got a folder")
+    if not path.parent.is_dir():
+        raise OutputError(f"{path}: the folder {path.parent} does not exist; make it first")
+    if not os.access(path.parent, os.W_OK | os.X_OK):
+        raise OutputError(f"{path}: the folder {path.parent} cannot be written to")
 
 
 def write_bytes(path: str | Path, data: bytes) -> None:
@@ -20,10 +37,7 @@ def write_bytes(path: str | Path, data: bytes) -> None:
         If the folder is missing or cannot be written, or ``path`` is a folder.
     """
     path = Path(path)
-    if path.is_dir():
-        raise OutputError(f"{path}: expected the name of a file, got a folder")
-    if not path.parent.is_dir():
-        raise OutputError(f"{path}: the folder {path.parent} does not exist; make it first")
+    check_writable(path)
     temporary = path.with_name(f".{path.name}.{uuid4().hex}")
     try:
         with temporary.open("xb") as file:

@@ -36,7 +36,8 @@ Each row:
 ``hours_required``                      as charged, or null
 ``in_transit_hours_required``           or null
 the six above with ``_all_known``       the same with everything but the gas known
-``confusion``                           list of ``nuisance``, ``snr_one_transit_if_known``; the costliest first
+``confusion``                           list of ``nuisance``, ``snr_left``: what is left of the S/N when this alone is
+                                        unknown, after as many transits as would do were all known; dearest first
 ``uncovered``                           list of ``gas``, ``from_um``, ``to_um``: stretches without data
 ``saturated``                           list of ``from_um``, ``to_um``
 ``cautions``                            list of sentences
@@ -99,7 +100,7 @@ def _row(row: PlanRow) -> dict[str, Any]:
         "best_bands": [{"from_um": b.from_um, "to_um": b.to_um, "share": b.share} for b in row.best_bands],
         **_counts(row.marginalised, ""),
         **_counts(row.all_known, "_all_known"),
-        "confusion": [{"nuisance": name, "snr_one_transit_if_known": snr} for name, snr in row.confusion],
+        "confusion": [{"nuisance": name, "snr_left": snr} for name, snr in row.confusion],
         "uncovered": [{"gas": gas, "from_um": a, "to_um": b} for gas, a, b in row.uncovered_um],
         "saturated": [{"from_um": a, "to_um": b} for a, b in row.saturated_um],
         "cautions": list(row.cautions),

@@ -77,13 +77,14 @@ def _cell(value: Any) -> Text:
 
 def _headline(result: PlanResult) -> Text:
     available = f"; {result.transits_available} transits available" if result.transits_available else ""
+    at_most = " at most" if len({row.mode for row in result.rows}) > 1 else ""
     text = Text()
     text.append(f"{result.title}\n", style="bold")
     if result.invented:
         text.append("The target is invented.\n", style="italic")
     text.append(
         f"Goal: {result.threshold_sigma:g} sigma, one-sided, with a chance of {100 * result.power:g} %{available}.\n"
-        f"A transit of {result.transit_duration_h:.2f} h is charged {result.charged_hours_per_transit:.2f} h. "
+        f"A transit of {result.transit_duration_h:.2f} h is charged{at_most} {result.charged_hours_per_transit:.2f} h. "
         f"Scale height {result.scale_height_km:.3g} km, {result.scale_height_ppm:.3g} ppm.\n"
         "Numbers allow for all that is held unknown; the last two columns take everything but the gas as known."
     )
@@ -91,7 +92,7 @@ def _headline(result: PlanResult) -> Text:
 
 
 def _mode_block(mode: str, rows: Sequence[PlanRow], width: int) -> list[RenderableType]:
-    """Numbers, then where they come from, then what is wrong with single rows."""
+    """Numbers, then where they come from, then what is left out of single rows."""
     block: list[RenderableType] = [Text(), Text(mode, style="bold underline"), _numbers(rows, width)]
     if any(row.best_bands or row.confusion for row in rows):
         block += [Text(), _reasons(rows)]
@@ -105,7 +106,7 @@ def _numbers(rows: Sequence[PlanRow], width: int) -> Table:
     table.add_column("\ngas", min_width=7)
     table.add_column("mixing\nratio", justify="right", no_wrap=True, min_width=7)
     table.add_column("\nverdict", width=max(map(len, Verdict)) if wide else 18)
-    for heading, least in (("\ntransits", 8), ("\nhours", 6), ("S/N\nof one", 6), ("best\nS/N", 5)):
+    for heading, least in (("\ntransits", 8), ("\nhours", 6), ("S/N per\ntransit", 7), ("best\nS/N", 5)):
         table.add_column(heading, justify="right", no_wrap=True, min_width=least)
     for heading, least in (("known:\ntransits", 8), ("known:\nhours", 6)):
         table.add_column(heading, justify="right", no_wrap=True, style="dim", min_width=least)
@@ -130,7 +131,7 @@ def _reasons(rows: Sequence[PlanRow]) -> Table:
     table.add_column("gas", min_width=7)
     table.add_column("mixing\nratio", justify="right", no_wrap=True, min_width=7)
     table.add_column("best bands, um\n(share of the information)", ratio=1)
-    table.add_column("what costs most\n(S/N of one, were it known)", ratio=1)
+    table.add_column("what costs most\n(S/N left by it alone)", ratio=1)
     for row in rows:
         bands = bands_text(band for band in row.best_bands if band.share >= _LEAST_SHARE)
         costs = ", ".join(f"{name} ({snr_text(snr)})" for name, snr in row.confusion[:_NUISANCES_SHOWN])
@@ -139,11 +140,13 @@ def _reasons(rows: Sequence[PlanRow]) -> Table:
 
 
 def _notes(row: PlanRow) -> list[str]:
-    head = f"{gas_text(row.gas)} {ratio_text(row.mixing_ratio)}"
-    notes = [
-        f"no data of {gas_text(gas)} at {band_text(low, high)} um: left out" for gas, low, high in row.uncovered_um
-    ]
+    """What is left out, and what to mind with this row."""
+    missing: dict[str, list[str]] = {}
+    for gas, low, high in sorted(row.uncovered_um, key=lambda stretch: stretch[1]):
+        missing.setdefault(gas, []).append(band_text(low, high))
+    notes = [f"no data of {gas_text(gas)} at {', '.join(bands)} um: left out" for gas, bands in missing.items()]
     notes += [f"saturated at {band_text(low, high)} um: left out" for low, high in row.saturated_um]
+    head = f"{gas_text(row.gas)} {ratio_text(row.mixing_ratio)}"
     return notes + [f"{head}: {caution}" for caution in row.cautions]
 
 

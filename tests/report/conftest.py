@@ -109,21 +109,21 @@ def make_plan():
     methane = ((3.15, 3.55, 0.61), (2.20, 2.45, 0.22), (1.62, 1.72, 0.05))
     cases = [
         (1.0, _row("CH4", 1e-4, PRISM, Verdict.WITHIN_REACH, (1.21, 38.0), (1.84, math.inf), methane,
-                   (("temperature", 1.43), ("offset 0.6 to 5.3 um", 1.36), ("H2O ratio", 1.25)),
+                   (("temperature", 3.43), ("offset of near-infrared-prism: 0.6 to 5.3 um", 3.96), ("H2O", 4.55)),
                    saturated=((1.02, 1.20),))),
         (1.0, _row("CH4", 1e-4, SLITLESS, Verdict.TOO_MANY, (0.42, 6.1), (0.75, 22.0), ((7.3, 8.1, 0.9),),
-                   (("offset 5 to 12 um", 0.66), ("H2O ratio", 0.51)))),
+                   (("offset of mid-infrared-slitless: 5 to 12 um", 2.66), ("H2O", 4.51)))),
         (0.5, _row("CCl2F2", 5e-10, PRISM, Verdict.NO_BAND, (0.0001, 0.01), (0.0001, 0.01))),
         (0.5, _row("CCl2F2", 5e-10, SLITLESS, Verdict.FLOOR, (0.16, 2.2), (0.23, 3.4),
-                   ((10.7, 11.1, 0.48), (8.9, 9.3, 0.31)), (("CO2 ratio", 0.19), ("offset 5 to 12 um", 0.18)))),
+                   ((10.7, 11.1, 0.48), (8.9, 9.3, 0.31)), (("CO2", 1.19), ("radius", 1.98)))),
         (1.0, _row("CCl2F2", 2.5e-9, PRISM, Verdict.NO_BAND, (0.0004, 0.03), (0.0004, 0.03))),
         (1.0, _row("CCl2F2", 2.5e-9, SLITLESS, Verdict.WITHIN_REACH, (0.61, 9.4), (0.88, 14.0),
-                   ((10.7, 11.1, 0.46), (8.9, 9.3, 0.33)), (("CO2 ratio", 0.74), ("offset 5 to 12 um", 0.70)),
+                   ((10.7, 11.1, 0.46), (8.9, 9.3, 0.33)), (("CO2", 3.74), ("radius", 4.70)),
                    cautions=("rests on one tabulated temperature, 296 K",))),
         (1.0, _row("O3", 1e-6, PRISM, Verdict.CONFUSION, (0.21, 3.1), (0.49, 17.0), ((4.6, 4.9, 0.93),),
-                   (("CO2 ratio", 0.45), ("temperature", 0.24)), uncovered=(("O3", 0.6, 1.9),))),
+                   (("CO2", 1.45), ("temperature", 4.24)), uncovered=(("O3", 3.03, 3.04), ("O3", 0.6, 1.9)))),
         (1.0, _row("O3", 1e-6, SLITLESS, Verdict.WITHIN_REACH, (1.02, 15.5), (1.38, 25.0), ((9.3, 10.0, 0.97),),
-                   (("CO2 ratio", 1.22), ("offset 5 to 12 um", 1.15)))),
+                   (("CO2", 4.22), ("radius", 4.85)))),
     ]  # fmt: skip
     return PlanResult(
         title="Temperate rocky planet of a cool star (invented)",

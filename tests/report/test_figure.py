@@ -143,5 +143,5 @@ def test_files(tmp_path):
         assert once.startswith(start)
         write_figure(Figure(figsize=(1, 1)), path)
         assert path.read_bytes() == once
-    with pytest.raises(OutputError, match=r"ends in .png, .pdf, .svg, got '.jpg'"):
+    with pytest.raises(OutputError, match=r"ends in .png, .pdf, .svg, got \".jpg\""):
         write_figure(Figure(), tmp_path / "plan.jpg")

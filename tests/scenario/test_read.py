@@ -8,7 +8,22 @@ import pytest
 
 from planner.errors import ScenarioError
 from planner.resources import data_folder
-from planner.scenario import parse_scenario, read_scenario, starting_scenario
+from planner.scenario import (
+    Atmosphere,
+    Bins,
+    Candidate,
+    Cloud,
+    Goal,
+    Haze,
+    Noise,
+    Nuisances,
+    Planet,
+    Scenario,
+    Star,
+    parse_scenario,
+    read_scenario,
+    starting_scenario,
+)
 
 DEMO = (data_folder("configs") / "scenarios" / "demo.toml").read_text()
 
@@ -186,3 +201,16 @@ def test_paths_are_relative_to_the_scenario(tmp_path):
     scenario = read_scenario(path)
     assert scenario.star.spectrum == tmp_path / "star.ecsv"
     assert scenario.modes == ("near-infrared-prism", tmp_path / "mine.toml")
+
+
+def test_every_key_is_documented():
+    """The README beside the scenarios has a line for every key, and names no key that is not read."""
+    text = (data_folder("configs") / "README.md").read_text().split("## Scenario files")[1]
+    documented = {
+        key for row in re.findall(r"^\| (`.*?`) \|", text, re.MULTILINE) for key in re.findall(r"`(\w+)`", row)
+    }
+    records = [Scenario, Star, Planet, Atmosphere, Cloud, Haze, Candidate, Goal, Noise, Nuisances, Bins]
+    keys = {field.alias or name for record in records for name, field in record.model_fields.items()}
+    # "haze" is a table of the atmosphere and a key of the nuisances
+    tables = {"star", "planet", "atmosphere", "cloud", "candidates", "goal", "noise", "nuisances", "bins"}
+    assert documented == keys - tables
