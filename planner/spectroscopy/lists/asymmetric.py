@@ -33,6 +33,7 @@ from planner.spectroscopy.lists.asymmetric_rotor import (
     block_k,
     coupled_levels,
     direction_cosine,
+    spin_rotation,
 )
 
 __all__ = ["asymmetric_lines"]
@@ -70,6 +71,8 @@ def asymmetric_lines(part: Mapping[str, Any], hitran_number: int) -> Lines:
         ``air_width``, ``self_width`` (1/cm/atm) and ``air_exponent``, four numbers c each, meaning
         ``c0 + c1 e + c2 k + c3 e k`` with ``e = exp(-J/width_j_scale)``, J the larger of both, ``k = K_a'/10``;
 
+        ``spin_rotation_per_cm``: e_aa, e_bb, e_cc of a molecule with one unpaired electron, whose lines then come
+        as doublets (default: none);
         ``distortion``: name -> row of softening, Delta_J, Delta_JK, Delta_K, delta_J, delta_K, Phi_J, Phi_JK, Phi_KJ,
         Phi_K, phi_J, phi_JK, phi_K (zeros at the end may be left out);
         ``states``: name -> row of origin, A, B, C (1/cm), name of a distortion row, source;
@@ -123,10 +126,16 @@ def _set_lines(band: BandSet, solver: _Solver, part: Mapping[str, Any], hitran_n
     if total <= 0:
         raise LineDataError(f"{where}: {band.name}: no line has a positive wavenumber and strength")
     ka_most, cuts = np.array(band.ka_most), np.array(band.cuts_cm)
-    pieces = [_columns(group, band.sum_cm / total, ka_most, cuts) for group in groups]
+    spin = part.get("spin_rotation_per_cm")
+    pieces = [_columns(group, band.sum_cm / total, ka_most, cuts, spin) for group in groups]
     column = {name: np.concatenate([piece[name] for piece in pieces]) for name in pieces[0]}
     column = _merged(column, float(part.get("merge_per_cm", 0.0)))
-    decay, ka = np.exp(-column["j_max"] / float(part["width_j_scale"])), column["ka"] / 10.0
+    if spin is not None:
+        column = _spin_doublets(column)
+    decay, ka = (
+        np.exp(-np.maximum(column["j_upper"], column["j_lower"]) / float(part["width_j_scale"])),
+        column["ka"] / 10.0,
+    )
     self_width, air_width = (
         np.maximum(_LEAST_WIDTH_PER_CM_ATM, _four_terms(part[key], decay, ka)) for key in ("self_width", "air_width")
     )
@@ -238,7 +247,9 @@ def _factor(
     return in_j + (m2 + m5 * m) * (upper - lower) + m4 * (upper + lower)
 
 
-def _columns(group: _Group, scale: float, ka_most: Floats, cuts_cm: Floats) -> dict[str, NDArray[Any]]:
+def _columns(
+    group: _Group, scale: float, ka_most: Floats, cuts_cm: Floats, spin: Sequence[float] | None
+) -> dict[str, NDArray[Any]]:
     """The lines of a group that are strong enough, one array per property."""
     intensity = scale * group.strength
     j, up, low = np.nonzero((intensity > 0) & (intensity >= cuts_cm.min()))
@@ -246,16 +257,21 @@ def _columns(group: _Group, scale: float, ka_most: Floats, cuts_cm: Floats) -> d
     state, ka = group.upper.state[j_upper, up], group.upper.ka[j_upper, up]
     keep = (intensity[j, up, low] >= cuts_cm[state]) & (ka <= ka_most[state])
     j, up, low, j_upper, j_lower = (index[keep] for index in (j, up, low, j_upper, j_lower))
-    return {
+    column = {
         "wavenumber": group.wavenumber_per_cm[j, up, low],
         "intensity": intensity[j, up, low],
         "energy": group.lower.energy_per_cm[j_lower, low],
-        "j_max": np.maximum(j_upper, j_lower),
+        "j_upper": j_upper,
+        "j_lower": j_lower,
         "ka": ka[keep],
         "state": state[keep],
         "upper": _label_index(group.upper, j_upper, up),
         "lower": _label_index(group.lower, j_lower, low),
     }
+    if spin is not None:
+        column["spin_upper"] = spin_rotation(group.upper, spin)[j_upper, up]
+        column["spin_lower"] = spin_rotation(group.lower, spin)[j_lower, low]
+    return column
 
 
 def _merged(column: dict[str, NDArray[Any]], tolerance_per_cm: float) -> dict[str, NDArray[Any]]:
@@ -272,6 +288,24 @@ def _merged(column: dict[str, NDArray[Any]], tolerance_per_cm: float) -> dict[st
     first[1:] = (np.diff(column["wavenumber"]) >= tolerance_per_cm) | (np.diff(cell[order]) > 0)
     total = np.bincount(np.cumsum(first) - 1, weights=column["intensity"])
     return {name: values[first] for name, values in column.items()} | {"intensity": total}
+
+
+def _spin_doublets(column: dict[str, NDArray[Any]]) -> dict[str, NDArray[Any]]:
+    """Each line as two, J - N = +1/2 and -1/2 in both levels; the weak lines that change J - N are left out."""
+    both = []
+    for half in (0.5, -0.5):
+        n_upper, n_lower = column["j_upper"], column["j_lower"]
+        upper, lower = (
+            column[f"spin_{level}"] * half / np.maximum(n + 0.5 + half, 0.5)
+            for level, n in (("upper", n_upper), ("lower", n_lower))
+        )
+        changed = {
+            "wavenumber": column["wavenumber"] + upper - lower,
+            "energy": column["energy"] + lower,
+            "intensity": column["intensity"] * (n_lower + 0.5 + half) / (2 * n_lower + 1),
+        }
+        both.append(column | changed)
+    return {name: np.concatenate([one[name] for one in both]) for name in column}
 
 
 def _label_index(levels: Levels, j: NDArray[np.int64], level: NDArray[np.int64]) -> NDArray[np.int64]:

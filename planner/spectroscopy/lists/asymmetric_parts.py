@@ -23,6 +23,7 @@ _OPTIONAL = {
     "source",
     "k_max",
     "merge_per_cm",
+    "spin_rotation_per_cm",
     "antisymmetric_states",
     "spin_weights_antisymmetric",
     "bands",

@@ -30,6 +30,7 @@ __all__ = [
     "coupled_levels",
     "direction_cosine",
     "rotor_hamiltonian",
+    "spin_rotation",
 ]
 
 Floats = NDArray[np.float64]
@@ -224,6 +225,23 @@ def coupled_levels(
     """
     shifts = _block_shifts(len(states), couplings)
     return tuple(_solve(states, couplings, tuple(block ^ shift for shift in shifts), j_max, k_max) for block in BLOCKS)
+
+
+def spin_rotation(levels: Levels, constants_per_cm: Sequence[float]) -> Floats:
+    """Expectation value of ``e_aa N_a^2 + e_bb N_b^2 + e_cc N_c^2`` in 1/cm, shape ``(N, level)``.
+
+    A level N of a molecule with one unpaired electron splits by this value E: the component J = N + 1/2 lies at
+    E/(2(N+1)), J = N - 1/2 at -E/(2N) (Townes and Schawlow 1955, section 7-3, first order).
+    """
+    e_aa, e_bb, e_cc = constants_per_cm
+    rotor = RotorConstants(a_per_cm=e_aa, b_per_cm=e_bb, c_per_cm=e_cc)
+    j_max = levels.energy_per_cm.shape[0] - 1
+    total = np.zeros(levels.energy_per_cm.shape)
+    for block, vectors in zip(levels.blocks, levels.vectors, strict=True):
+        k_max = int(block_k(block, 2 * vectors.shape[1] + 2)[vectors.shape[1] - 1])
+        operator = rotor_hamiltonian(rotor, block, j_max, k_max)
+        total += (vectors * (operator @ vectors)).sum(axis=1)
+    return total
 
 
 def _block_shifts(count: int, couplings: Sequence[Coupling]) -> list[int]:
