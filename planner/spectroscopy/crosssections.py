@@ -80,9 +80,9 @@ def cross_sections(
     -----
     Voigt profile with the Doppler 1/e half width ``nu sqrt(2RT/M)/c`` and the Lorentz half width
     ``P (296/T)**n (width_factor * gamma_air * (1 - x) + gamma_self * x)``, x the self fraction, centred at
-    ``nu + delta P`` (Rothman et al. 2005, JQSRT 96, 139; P in atm). The one temperature exponent, that of air, serves
-    both widths; the shift is taken as independent of temperature, as in the list. `line_intensities` gives the
-    strengths.
+    ``nu + delta P`` (Rothman et al. 2005, JQSRT 96, 139; P in atm). A list has one temperature
+    exponent, that of air, which serves both widths, and one shift, which serves every mixture and temperature.
+    `line_intensities` gives the strengths.
 
     A line's relative error is below 1e-4 wherever it exceeds 1e-11 of its Doppler peak: 9e-5 from the approximation
     of the Voigt function near a centre, 5e-5 farther out, 2e-5 from the interpolation. What is subtracted has an
@@ -189,7 +189,7 @@ def _checked(
     ):
         if not (right and math.isfinite(value)):
             raise RangeError(f"{name}: expected {expected}, got {value!r}")
-    return np.ascontiguousarray(grid), pressures / BAR_PER_ATM
+    return np.ascontiguousarray(grid), np.ascontiguousarray(pressures / BAR_PER_ATM)
 
 
 def _line_shapes(lines: Lines, temperature_k: float, self_fraction: float, width_factor: float) -> Floats:
@@ -211,8 +211,11 @@ def _line_shapes(lines: Lines, temperature_k: float, self_fraction: float, width
 
 def _per_species(lines: Lines, value_of: Callable[[int, int], float]) -> Floats:
     """A number of each line's isotopologue, shape (line,)."""
-    species, member = np.unique(lines.molecule * np.int64(100) + lines.isotopologue, return_inverse=True)
-    return np.array([value_of(int(code) // 100, int(code) % 100) for code in species])[member]
+    code = lines.molecule * np.int64(100) + lines.isotopologue
+    species = np.flatnonzero(np.bincount(code))
+    value = np.zeros(species[-1] + 1)
+    value[species] = [value_of(int(c) // 100, int(c) % 100) for c in species]
+    return value[code]
 
 
 # ---------------------------------------------------------------- one stretch of the grid
@@ -259,7 +262,7 @@ def _cells(points: Floats, wing: float, slack: float, doppler: float) -> _Cells:
     ``slack``, and the ends of the wing must lie beyond the neighbours; where no width does all this and saves
     anything, every line is summed on the points alone and the cells only help to find them.
     """
-    from planner.spectroscopy.voigt import ASYMPTOTE_FROM
+    from planner.spectroscopy._kernels import ASYMPTOTE_FROM
 
     spacing = (points[-1] - points[0]) / max(points.size - 1, 1)
     width = max(math.sqrt(_NODES * wing * spacing / 2.0), ASYMPTOTE_FROM * doppler + 4.0 * slack)

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import gzip
-import time
 from dataclasses import fields
 
 import numpy as np
@@ -338,15 +337,3 @@ def test_fast_equals_slow(column, byte):
         except LineDataError as error:
             outcomes.append(str(error))
     assert outcomes[0] == outcomes[1]
-
-
-@pytest.mark.benchmark
-def test_reading_rate():
-    """Print how many records a second are read and written."""
-    data = ((RECORD + "\n") * 200_000).encode()
-    parse_par(data[:161], "warm")
-    start = time.perf_counter()
-    lines = parse_par(data, "here")
-    read = time.perf_counter()
-    format_par(lines)
-    print(f"\nread {2e5 / (read - start):,.0f} records/s, wrote {2e5 / (time.perf_counter() - read):,.0f} records/s")
