@@ -246,7 +246,9 @@ def build(gases: tuple[str, ...]) -> None:
     from planner.studies.linedata import build as study
 
     with _progress() as progress:
-        study(gases, progress)
+        sentences = study(gases, progress)
+    for sentence in sentences:
+        click.echo(sentence)
 
 
 @lines.command()

@@ -57,6 +57,7 @@ def calls(result, monkeypatch):
 
     def build(formulas, progress):
         asked.append(("build", formulas))
+        return ["CO2: 7 lines"]
 
     def check(against):
         asked.append(("check", against))
@@ -192,7 +193,7 @@ def test_sigma(folder, calls, stretch, ends):
 def test_lines(folder, calls):
     """The three line-data commands."""
     assert run("lines", "list").stdout.split() == ["formula", "lines", "CO2", "5"]
-    assert run("lines", "build", "CO2", "CFC-12").exit_code == 0
+    assert run("lines", "build", "CO2", "CFC-12").stdout == "CO2: 7 lines\n"
     assert run("lines", "check").exit_code == 0
     assert run("lines", "check", "--against", "mine").stdout.split()[-1] == "7"
     assert calls == [("build", ("CO2", "CFC-12")), ("check", None), ("check", Path("mine"))]

@@ -84,7 +84,7 @@ class _Panel:
 def plan_figure(result: PlanResult, rows: Sequence[int] | None = None, *, seed: int = 1) -> Figure:
     """The figure of a plan, with points for the transits that each search requires.
 
-    Where no number of transits is enough, the points are for those available, else for a hundred.
+    Where the search is out of reach, the points are for the transits available, or for a hundred when that is not said.
 
     Parameters
     ----------
@@ -99,7 +99,7 @@ def plan_figure(result: PlanResult, rows: Sequence[int] | None = None, *, seed: 
     panels = []
     for index in chosen:
         row = result.rows[index]
-        transits = row.marginalised.transits_required or result.transits_available or 100
+        transits = _transits_shown(row, result.transits_available)
         title = _plan_title(row, transits)
         panels.append(_Panel(spectrum=result.spectra[index], title=title, bands=row.best_bands, transits=transits))
     return _figure(panels, result.title, _made(result.version, result.invented), seed)
@@ -181,7 +181,7 @@ def _figure(panels: Sequence[_Panel], title: str, made: str, seed: int) -> Figur
         figure, axes = _frame(len(panels))
         for index, (one, panel) in enumerate(zip(axes, panels, strict=True)):
             _draw_panel(one, panel, others, np.random.default_rng([seed, index]))
-        _add_legend(figure, others)
+        _add_legend(figure, others, unusable=not all(panel.spectrum.usable.all() for panel in panels))
         _add_heading(figure, title, made)
     return figure
 
@@ -191,8 +191,11 @@ def _other_gases(panels: Iterable[_Panel]) -> dict[str, tuple[tuple[float, ...],
     gases: dict[str, None] = {}
     for panel in panels:
         spectrum = panel.spectrum
-        for gas in list(spectrum.shares_ppm)[1:]:
-            if np.max(spectrum.shares_ppm[gas]) > _VISIBLE_SHARE * spectrum.scale_height_ppm:
+        for gas in spectrum.shares_ppm:
+            if (
+                gas not in _searched(spectrum)
+                and np.max(spectrum.shares_ppm[gas]) > _VISIBLE_SHARE * spectrum.scale_height_ppm
+            ):
                 gases[gas] = None
     return {gas: _OTHERS[i % len(_OTHERS)] for i, gas in enumerate(gases)}
 
@@ -227,15 +230,16 @@ def _draw_panel(
 ) -> None:
     spectrum = panel.spectrum
     edges, base = _edges(spectrum), float(spectrum.depth_ppm.min())
-    searched, *rest = spectrum.shares_ppm
-    for gas in rest:
-        if gas in others:
+    for gas in spectrum.shares_ppm:
+        if gas in others and gas not in _searched(spectrum):
             dashes, colour = others[gas]
-            axes.plot(edges, _stairs(spectrum, base + spectrum.shares_ppm[gas]), color=colour, dashes=dashes, lw=0.9)
+            axes.plot(
+                edges, _stairs(spectrum, base + spectrum.shares_ppm[gas]), color=colour, dashes=dashes, lw=0.9, zorder=3
+            )
     with_gas = _stairs(spectrum, spectrum.depth_ppm)
-    without = _stairs(spectrum, spectrum.depth_ppm - spectrum.shares_ppm[searched])
+    without = _stairs(spectrum, spectrum.depth_ppm - sum(spectrum.shares_ppm[gas] for gas in _searched(spectrum)))
     axes.fill_between(edges, without, with_gas, color=_SEARCHED, alpha=0.45, lw=0, zorder=1)
-    axes.plot(edges, with_gas, color="black", lw=0.9, zorder=3)
+    axes.plot(edges, with_gas, color="black", lw=1.1, zorder=2)
     points = simulated_points(spectrum, panel.transits, _GROUPS, rng)
     _draw_points(axes, points)
     _mark_unusable(axes, spectrum)
@@ -243,6 +247,11 @@ def _draw_panel(
     axes.set_title(panel.title, loc="left", pad=3)
     for band in panel.bands:
         axes.axvspan(band.from_um, band.to_um, ymin=0, ymax=0.03, color="black", lw=0, zorder=5)
+
+
+def _searched(spectrum: BinnedSpectrum) -> list[str]:
+    """The searched gas, or the gases of a set; what a set adds is drawn as the sum of their shares."""
+    return spectrum.gas.split(" + ")
 
 
 def _draw_points(axes: Axes, points: Points) -> None:
@@ -254,10 +263,17 @@ def _draw_points(axes: Axes, points: Points) -> None:
     )  # fmt: skip
 
 
+def _transits_shown(row: PlanRow, available: int | None) -> int:
+    required = row.marginalised.transits_required
+    return required if required is not None and row.verdict is Verdict.WITHIN_REACH else available or 100
+
+
 def _plan_title(row: PlanRow, transits: int) -> str:
-    head = f"{_search(row)}: {row.verdict.value}; points for {_transits(transits)}"
-    hours = row.marginalised.hours_required
-    return head if hours is None else f"{head}, {hours_text(hours)} h"
+    head = f"{_search(row)}: {row.verdict.value}"
+    if row.verdict is Verdict.WITHIN_REACH:
+        return f"{head}; points for {_transits(transits)}, {hours_text(row.marginalised.hours_required)} h"
+    required = f" ({count_text(row.marginalised.transits_required)})" if row.verdict is Verdict.TOO_MANY else ""
+    return f"{head}{required}; points for {_transits(transits)}"
 
 
 def _search(row: PlanRow | BinnedSpectrum) -> str:
@@ -296,7 +312,8 @@ def _mark_unusable(axes: Axes, spectrum: BinnedSpectrum) -> None:
 def _scale_axes(axes: Axes, spectrum: BinnedSpectrum, points: Points) -> None:
     """Wavelength in logarithm with plain ticks; depth on the left, scale heights above the lowest bin on the right.
 
-    The depths leave room for three typical errors: a few points that tell next to nothing must not flatten the rest.
+    A few points that tell next to nothing must not flatten the rest: those with more than three times the usual error
+    may lie outside.
     """
     low_um, high_um = spectrum.from_um.min(), spectrum.to_um.max()
     axes.set_xscale("log")
@@ -306,8 +323,10 @@ def _scale_axes(axes: Axes, spectrum: BinnedSpectrum, points: Points) -> None:
     axes.xaxis.set_minor_locator(FixedLocator(_MINOR_TICKS_UM))
     axes.xaxis.set_minor_formatter(NullFormatter())
     base, height = float(spectrum.depth_ppm.min()), spectrum.scale_height_ppm
-    spread = 3 * float(np.median(points.error_ppm)) if points.error_ppm.size else height
-    axes.set_ylim(base - spread, float(spectrum.depth_ppm.max()) + spread)
+    telling = points.error_ppm <= 3 * np.median(points.error_ppm) if points.error_ppm.size else np.zeros(0, bool)
+    bottom = float(np.min((points.depth_ppm - points.error_ppm)[telling], initial=base))
+    top = float(np.max((points.depth_ppm + points.error_ppm)[telling], initial=spectrum.depth_ppm.max()))
+    axes.set_ylim(bottom - 0.06 * (top - bottom), top + 0.06 * (top - bottom))
     axes.set_xlabel("Wavelength (µm)", labelpad=1.5)
     axes.set_ylabel("Transit depth (ppm)")
     axes.tick_params(which="both", top=True)
@@ -331,19 +350,19 @@ def _add_heading(figure: Figure, title: str, made: str) -> None:
 
 
 def _math(gas: str) -> str:
-    """The name of a gas with the numbers of a formula lowered."""
-    name = gas_text(gas)
-    return re.sub(r"(\d+)", r"$_{\1}$", name) if name == gas else name
+    """The name of a gas, or of each gas of a set, with the numbers of a formula lowered."""
+    names = [(formula, gas_text(formula)) for formula in gas.split(" + ")]
+    return " + ".join(re.sub(r"(\d+)", r"$_{\1}$", name) if name == formula else name for formula, name in names)
 
 
-def _add_legend(figure: Figure, others: dict[str, tuple[tuple[float, ...], str]]) -> None:
+def _add_legend(figure: Figure, others: dict[str, tuple[tuple[float, ...], str]], *, unusable: bool) -> None:
     handles: list[Line2D | Patch] = [
-        Line2D([], [], color="black", lw=0.9, label="all gases"),
+        Line2D([], [], color="black", lw=1.1, label="all gases"),
         Patch(facecolor=_SEARCHED, alpha=0.45, label="share of the searched gas"),
         *(Line2D([], [], color=c, dashes=d, lw=0.9, label=f"share of {_math(g)}") for g, (d, c) in others.items()),
         Line2D([], [], color="black", marker="o", ms=2.4, mfc="white", mew=0.6, lw=0.6, label="simulated observation"),
         Patch(facecolor="black", label="best bands"),
-        Patch(**_UNUSABLE, label="not usable"),
+        *([Patch(**_UNUSABLE, label="not usable")] if unusable else []),
     ]
     figure.legend(
         handles=handles, loc="lower center", ncols=4, frameon=False, handlelength=3.0, columnspacing=1.5,

@@ -14,6 +14,8 @@ __all__ = ["band_text", "bands_text", "count_text", "gas_text", "hours_text", "r
 _SCALES = ((1e-2, "%"), (1e-6, "ppm"), (1e-9, "ppb"), (0.0, "ppt"))
 NEVER = "never"
 UNBOUNDED = "none"
+_MOST = 9999
+"""Decades of telescope time; beyond it digits only hide the point."""
 
 
 def ratio_text(mixing_ratio: float) -> str:
@@ -40,15 +42,23 @@ def _one_gas_text(formula: str) -> str:
 
 
 def count_text(transits: int | None) -> str:
-    """A number of transits; ``never`` when no number is enough."""
-    return NEVER if transits is None else f"{transits:,d}".replace(",", " ")
+    """A number of transits; ``never`` when no number is enough, ``>9999`` when it might as well be."""
+    if transits is None:
+        return NEVER
+    return _grouped(transits) if transits <= _MOST else f">{_MOST}"
 
 
 def hours_text(hours: float | None) -> str:
-    """Hours, with a decimal below 100."""
+    """Hours, with a decimal below 100; ``never`` and ``>9999`` as for counts."""
     if hours is None:
         return NEVER
-    return f"{hours:.1f}" if hours < 99.95 else f"{hours:,.0f}".replace(",", " ")
+    if hours < 99.95:
+        return f"{hours:.1f}"
+    return _grouped(round(hours)) if round(hours) <= _MOST else f">{_MOST}"
+
+
+def _grouped(number: int) -> str:
+    return f"{number:,d}".replace(",", " ")
 
 
 def snr_text(snr: float) -> str:

@@ -97,6 +97,19 @@ def test_searched_gas_is_what_it_adds(figure, fake_plan):
         assert inside == [False, True, False]
 
 
+def test_sets_are_filled_with_all_their_gases(fake_plan):
+    """The gases of a set are all searched: none of them has a line of its own."""
+    spectrum = replace(fake_plan.spectra[0], gas="CH4 + CO2")
+    figure = spectra_figure([spectrum], title="t", version="0", invented=False)
+    axes = figure.axes[0]
+    bin_ = int(np.argmax(spectrum.shares_ppm["CO2"]))
+    middle = np.sqrt(spectrum.from_um[bin_] * spectrum.to_um[bin_])
+    inside = spectrum.depth_ppm[bin_] - 0.9 * spectrum.shares_ppm["CO2"][bin_]
+    assert axes.collections[0].get_paths()[0].contains_point((middle, inside))
+    assert axes.get_title(loc="left").startswith("CH$_{4}$ + CO$_{2}$, 100 ppm")
+    assert "share of CO$_{2}$" not in [text.get_text() for text in figure.legends[0].get_texts()]
+
+
 def test_lines_differ_without_colour(figure):
     """Every gas has its own dashes."""
     handles = figure.legends[0].get_lines()
@@ -112,8 +125,10 @@ def test_titles_tell_the_verdict(figure):
     )
 
 
-def test_unreachable_rows_have_points_for_what_is_available(fake_plan):
-    """Where no number of transits is enough the panel says so."""
+def test_rows_out_of_reach_have_points_for_what_is_available(fake_plan):
+    """Where too many transits are needed, or no number is enough, the panel says so."""
+    title = plan_figure(fake_plan, [1]).axes[0].get_title(loc="left")
+    assert title.endswith("more than the transits available (432); points for 100 transits")
     title = plan_figure(fake_plan, [3]).axes[0].get_title(loc="left")
     assert title == "CFC-12, 500 ppt, mid-infrared-slitless: unreachable (floor); points for 100 transits"
 

@@ -29,9 +29,10 @@ def test_ratio_text(ratio, text):
 
 
 def test_counts_and_hours():
-    """Thousands are set apart; what is never reached says so."""
-    assert [count_text(n) for n in (1, 12345, None)] == ["1", "12 345", "never"]
-    assert [hours_text(h) for h in (3.92, 99.9, 99.96, 12345.6, None)] == ["3.9", "99.9", "100", "12 346", "never"]
+    """Thousands are set apart; what is never reached says so, and so does what nobody would grant."""
+    assert [count_text(n) for n in (1, 1234, 12345, None)] == ["1", "1 234", ">9999", "never"]
+    hours = (3.92, 99.9, 99.96, 1234.5, 9999.4, 9999.6, None)
+    assert [hours_text(h) for h in hours] == ["3.9", "99.9", "100", "1 234", "9 999", ">9999", "never"]
 
 
 def test_snr_text():
