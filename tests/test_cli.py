@@ -16,6 +16,7 @@ import numpy as np
 import pytest
 from astropy.table import Table
 from click.testing import CliRunner
+from matplotlib.figure import Figure
 
 from planner import __version__
 from planner.cli import cli
@@ -154,8 +155,9 @@ def test_plan_json_on_stdout(folder, calls, result):
     assert json.loads(outcome.stdout)["title"] == result.title
 
 
-def test_demo(folder, calls):
+def test_demo(folder, calls, monkeypatch):
     """The demonstration plans the shipped scenario and writes into its folder."""
+    monkeypatch.setattr("planner.report.figure.plan_figure", lambda result: Figure(figsize=(1, 1)))  # to be quick
     assert run("demo").exit_code == 0
     assert calls == [("plan", "Temperate rocky planet of a cool star (invented)", None)]
     assert sorted(os.listdir("limbcast-demo")) == ["plan.ecsv", "plan.json", "plan.pdf", "plan.png", "spectra.ecsv"]
