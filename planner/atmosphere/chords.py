@@ -99,13 +99,20 @@ def chords_through(air: Air, *, bottom: float, top: float) -> Chords:
     """Rays that touch the column between two heights, given in e-folds above the base.
 
     The part of the limb under a cloud deck starts at the cloud top; the two parts share the rays above it.
-    `top` is moved up if need be to leave a panel above the cloud top.
+    `top` is moved up to a whole number of panels above the cloud top.
+
+    Raises
+    ------
+    RangeError
+        If that is too high for air that a planet could hold.
     """
     covered = air.cloud_fraction if air.cloud_top_bar is not None else 0.0
     deck = max(bottom, air.e_folds_at_pressure(air.cloud_top_bar)) if air.cloud_top_bar is not None else bottom
     if covered == 1.0:
         bottom = deck
-    top = max(top, deck + _PANEL_E_FOLDS)
+    # whole panels, so that the rays, and with them the errors, stay where they are when only an amount changes
+    top = deck + _PANEL_E_FOLDS * max(1, math.ceil((top - deck) / _PANEL_E_FOLDS))
+    air.check_held(top)
     pieces = [(np.array([bottom]), np.array([0.0]))]
     if bottom < deck:
         nodes, weights = height_rule(bottom, deck)

@@ -9,15 +9,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.atmosphere.absorbers import GasOpacity
-from planner.atmosphere.layers import Air
+from planner.atmosphere.layers import HIGHEST_TOP, Air
 from planner.errors import RangeError
 
 __all__ = ["bottom_e_folds", "top_e_folds"]
 
 _BOTTOM_WITHOUT_TABLES_BAR = 10.0
 _THIN = 1e-3
-# The highest admissible top as a part of the way to infinity; the radius there is four times that of the base.
-_HIGHEST_TOP = 0.75
 _MOST_E_FOLDS = 100.0
 
 
@@ -67,7 +65,8 @@ def top_e_folds(
     RangeError
         If that happens nowhere below four times the base radius.
     """
-    ceiling = max(min(_HIGHEST_TOP * air.e_folds_to_infinity, _MOST_E_FOLDS), bottom)
+    air.check_held(bottom)
+    ceiling = max(min(HIGHEST_TOP * air.e_folds_to_infinity, _MOST_E_FOLDS), bottom)
     u = np.linspace(bottom, ceiling, 2 + math.ceil(4 * (ceiling - bottom)))
     density = air.base_density_per_cm3 * np.exp(-u)
     opacity = flat_cross_section_cm2 + density * pair_coefficient_cm5
@@ -77,11 +76,7 @@ def top_e_folds(
     path_cm = np.sqrt(2 * np.pi * air.scale_height_km * air.radius_km(u) ** 3) / air.base_radius_km * 1e5
     thick = np.flatnonzero(density * path_cm * opacity > _THIN)
     if thick.size and thick[-1] == u.size - 1:
-        raise RangeError(
-            f"air of {air.temperature_k:g} K and {air.molar_mass_g:g} g/mol under {air.base_gravity_m_per_s2:.4g} m/s2 "
-            "still absorbs at four times the base radius: expected air that the planet can hold; choose a lower "
-            "temperature, a heavier gas or a larger mass"
-        )
+        air.check_held(math.inf)
     return float(u[thick[-1] + 1]) if thick.size else bottom
 
 

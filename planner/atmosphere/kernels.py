@@ -58,7 +58,7 @@ def slant_depths(log10_cross_section, start, count, weights, rows_seen, cross_se
     log10_cross_section (pressure, wavenumber); the block is ``start`` to ``start + count``.
     weights (chord, pressure) from `row_weights` times the mixing ratio, padded with zeros to a multiple of four rows.
     rows_seen (chord,): rows with a weight, rounded up to a multiple of four; the first chord sees most.
-    cross_section (padded pressure, block): scratch; rows past the table must be 0. depths (chord, block): added to.
+    cross_section (padded pressure, block): scratch of finite numbers. depths (chord, block): added to.
     """
     for row in range(min(log10_cross_section.shape[0], rows_seen[0])):
         source, target = log10_cross_section[row, start : start + count], cross_section[row]

@@ -18,6 +18,8 @@ from types import MappingProxyType
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from planner.errors import RangeError
+
 __all__ = ["Air", "gravity_m_per_s2", "scale_height_km"]
 
 # CODATA 2018 (the first two are exact)
@@ -28,6 +30,9 @@ GRAVITATION_SI = 6.67430e-11
 N2_RAYLEIGH_AT_1_UM_CM2 = 4.133e-28
 """Rayleigh cross-section of N2 at 1 um, from the refractive index and King factor of Sneep & Ubachs 2005
 (JQSRT 92, 293); the constants were recalled from memory, the value agrees with Bodhaine et al. 1999 for air."""
+
+# The highest column as a part of the way to infinity; the radius there is four times that of the base.
+HIGHEST_TOP = 0.75
 
 _POSITIVE = (
     "temperature_k",
@@ -130,6 +135,20 @@ class Air:
     def radius_km(self, e_folds: ArrayLike) -> NDArray[np.float64]:
         """Radius at which the pressure is ``exp(-e_folds)`` of that at the base; any shape."""
         return self.base_radius_km / (1 - np.asarray(e_folds) / self.e_folds_to_infinity)
+
+    def check_held(self, e_folds: float) -> None:
+        """Refuse a column that matters as high as this, if that is beyond four times the base radius.
+
+        Raises
+        ------
+        RangeError
+        """
+        if e_folds > HIGHEST_TOP * self.e_folds_to_infinity:
+            raise RangeError(
+                f"air of {self.temperature_k:g} K and {self.molar_mass_g:g} g/mol under "
+                f"{self.base_gravity_m_per_s2:.4g} m/s2: expected air that the planet can hold, got a column that "
+                "reaches beyond four times the base radius; choose a lower temperature, a heavier gas or a larger mass"
+            )
 
     def e_folds_at_pressure(self, pressure_bar: float) -> float:
         """E-folds of pressure between the base and this pressure; negative below the base."""

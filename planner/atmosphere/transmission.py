@@ -190,7 +190,6 @@ def _one_pass(
             count = min(_BLOCK, size - start)
             depths[:] = 0
             for row, table, padded, rows_seen in tables:
-                cross_section[table.shape[0] :] = 0
                 slant_depths(table, start, count, padded, rows_seen, cross_section, depths[row])
             integrate_chords(depths, smooth_depth, pair_depth, profile, start, count, sums, result)
 

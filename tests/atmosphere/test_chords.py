@@ -61,6 +61,13 @@ def test_row_weights_exact_for_cores_and_wings(make_air, rows):
         np.testing.assert_allclose(weights @ shape(rows), direct, rtol=1e-8)
 
 
+def test_no_overshoot_across_a_gap(make_air):
+    """Between rows decades apart each is weighted as a share, not against the other."""
+    chords = chords_through(make_air(), bottom=np.log(1e8), top=np.log(1e9))
+    weights = row_weights(chords, np.r_[1e-9, ROWS])
+    assert np.all(weights >= -1e-12 * chords.columns_per_cm2()[:, None])
+
+
 def test_added_rows_change_nothing(make_air):
     """Splitting the tabulated intervals of a table that follows 1 and P leaves every chord as it was."""
     chords = chords_through(make_air(), bottom=0.0, top=24.0)

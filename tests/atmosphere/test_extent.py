@@ -48,6 +48,18 @@ def test_every_kind_of_absorber_raises_the_top(make_air):
     assert top(absent, [gas(1e-15)]) == 0.0
 
 
+def test_top_within_a_wide_cell(make_air):
+    """Between two rows the larger counts: thin at both ends, thick in between."""
+    rows = np.array([1e-6, 1.0])
+    table = np.array([[-24.5], [-32.0]])
+    wide = GasOpacity(formula="X", pressures_bar=rows, log10_cross_section=table, flat_cross_section_cm2=None)
+    air = make_air(mixing_ratios={"X": 1.0})
+    column = chords_through(air, bottom=0.0, top=2.0).columns_per_cm2()[0]
+    assert column * 10.0**-32 < 1e-3
+    assert column * 10.0**-24.5 * 1e-6 < 1e-3
+    assert top(air, [wide]) == pytest.approx(np.log(column * 10.0**-24.5 / 1e-3), abs=0.5)
+
+
 def test_bottom(make_air):
     """Surface, refraction boundary, closed deck: the highest of them; patchy clouds do not close the column."""
     assert bottom_e_folds(make_air(), [gas(1e-20)]) == 0.0

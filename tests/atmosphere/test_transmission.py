@@ -161,7 +161,7 @@ def test_slope_against_finite_differences(make_air, formula):
 
 def test_order_of_gases_and_samples_is_free(make_air):
     """Gases, pairs and wavenumbers in another order give the same numbers; so do samples in several blocks."""
-    size = 1500
+    size = 1025  # two blocks and one wavenumber
     air = make_air()
     gases = [line_like("X", ROWS, seed=13, size=size), line_like("N2", ROWS, seed=14, size=size)]
     pairs = some_pairs(15, size)
@@ -368,6 +368,17 @@ def test_absent_and_transparent_gases(make_air, flat_gas):
         np.testing.assert_array_equal(depth.derivative[formula], 0.0)
 
 
+def test_tables_of_different_pressures(make_air):
+    """Gases keep their own rows: one on 22 pressures and one on 9 are the same as each added by itself."""
+    long, short = line_like("X", ROWS, seed=24), line_like("N2", ROWS[-9:], seed=25)
+    air = make_air()
+    together = depth_of(air, [long, short], shares_of=["X", "N2"])
+    tolerance = 1e-4 * scale_height_of_depth(air)
+    np.testing.assert_allclose(together.depth_without["N2"], depth_of(air, [long]).depth, rtol=0, atol=tolerance)
+    np.testing.assert_allclose(together.depth_without["X"], depth_of(air, [short]).depth, rtol=0, atol=tolerance)
+    np.testing.assert_allclose(depth_of(air, [short, long]).depth, together.depth, rtol=0, atol=tolerance)
+
+
 def test_no_absorption_at_all(make_air):
     """A transparent column shows its surface."""
     depth = transit_depth(make_air(), [], [], wavenumber_per_cm=wavenumbers(3), star_radius_km=STAR_KM)
@@ -390,6 +401,9 @@ def test_unbound_air_is_refused(make_air, flat_gas):
     air = make_air(temperature_k=600.0, molar_mass_g=2.3, base_gravity_m_per_s2=2.0)
     with pytest.raises(RangeError, match="air that the planet can hold"):
         depth_of(air, [flat_gas("X", 1e-18)])
+    for loose in (replace(air, cloud_top_bar=1e-12), replace(air, base_gravity_m_per_s2=0.1)):
+        with pytest.raises(RangeError, match="choose a lower temperature"):
+            depth_of(loose, [flat_gas("X", 0.0)])
 
 
 def test_short_table_is_refused(make_air):
