@@ -10,8 +10,8 @@ from planner.errors import LineDataError
 
 __all__ = ["REFRACTIVITY_AT_STP", "refraction_boundary", "refractivity"]
 
-LOSCHMIDT_PER_CM3 = 2.6867811e19
-"""Molecules per cm3 at 273.15 K and 1 atm (CODATA 2014 and later, exact to the digits shown)."""
+LOSCHMIDT_PER_CM3 = 2.686780111e19
+"""Molecules per cm3 at 273.15 K and 1 atm (CODATA 2018, to the digits shown)."""
 
 REFRACTIVITY_AT_STP: Mapping[str, float] = {
     # n - 1 at 273.15 K, 1 atm and 589.3 nm. First group: dispersion formulas, recalled from memory:
