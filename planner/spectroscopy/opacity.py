@@ -8,6 +8,7 @@ linear. Pressures are three per decade from 1e-6 to 10 bar and one Doppler-limit
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
+from copy import copy
 from functools import lru_cache
 from math import floor, log
 from pathlib import Path
@@ -51,7 +52,7 @@ def temperature_nodes(temperature_k: float) -> tuple[float, float]:
 
 
 class Opacities:
-    """Cross-sections of gases and pairs on one grid.
+    """Cross-sections of gases and pairs on one grid, or on a selection of its samples.
 
     Parameters
     ----------
@@ -83,6 +84,7 @@ class Opacities:
         progress: Progress | None = None,
     ) -> None:
         self.grid = grid
+        self.wavenumber_per_cm = grid.wavenumber_per_cm
         self.broadening, self.broadening_note = width_factor(air)
         self._library = library
         self._store = store
@@ -90,8 +92,28 @@ class Opacities:
         self._water_continuum = water_continuum
         self._progress = progress or (lambda text, share: None)
         self._node = lru_cache(maxsize=64)(self._build_node)
+        self._remember()
+
+    def _remember(self) -> None:
         self._gas = lru_cache(maxsize=64)(self._build_gas)
         self._pairs = lru_cache(maxsize=16)(self._build_pairs)
+
+    def selection(self, index: NDArray[np.intp]) -> Opacities:
+        """The same opacities on some samples of the grid only; tables are shared, not built again.
+
+        Parameters
+        ----------
+        index : (selected,)
+            Positions on the grid.
+        """
+        chosen = copy(self)
+        chosen.wavenumber_per_cm = self.wavenumber_per_cm[index]
+        whole = self._node
+        chosen._node = lru_cache(maxsize=64)(
+            lambda formula, temperature_k, share: np.ascontiguousarray(whole(formula, temperature_k, share)[:, index])
+        )
+        chosen._remember()
+        return chosen
 
     def gas(self, formula: str, temperature_k: float, mixing_ratio: float = 0.0) -> GasOpacity:
         """What one gas absorbs and scatters by itself at a temperature.
@@ -115,14 +137,14 @@ class Opacities:
 
     def covered(self, formula: str) -> NDArray[np.bool_]:
         """Where the gas's data can be trusted, shape ``(wavenumber,)``."""
-        wavenumber = self.grid.wavenumber_per_cm
+        wavenumber = self.wavenumber_per_cm
         mask = np.zeros(wavenumber.size, dtype=bool)
         for low, high in self._library.gas(formula).covers_per_cm:
             mask |= (wavenumber >= low) & (wavenumber <= high)
         return mask
 
     def _build_gas(self, formula: str, temperature_k: float, self_fraction: float) -> GasOpacity:
-        wavenumber = self.grid.wavenumber_per_cm
+        wavenumber = self.wavenumber_per_cm
         flat = rayleigh_cross_section(formula, wavenumber)
         source = self._library.gas(formula) if self.has_data(formula) else None
         table = None
@@ -140,7 +162,7 @@ class Opacities:
         )
 
     def _build_pairs(self, present: frozenset[str], temperature_k: float) -> list[PairOpacity]:
-        wavenumber = self.grid.wavenumber_per_cm
+        wavenumber = self.wavenumber_per_cm
         found = [
             PairOpacity(first=a, second=b, coefficient_cm5=collision_coefficient((a, b), wavenumber, temperature_k))
             for a, b in collision_pairs()

@@ -1,8 +1,8 @@
-"""The forward model of a scenario: from its air, changed or not, to transit depth on the grid."""
+"""The forward model of a scenario: from its air, changed or not, to transit depth in the bins of its modes."""
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -10,13 +10,15 @@ from numpy.typing import NDArray
 
 from planner.atmosphere.layers import Air
 from planner.atmosphere.refraction import refraction_boundary
-from planner.atmosphere.transmission import GasOpacity, PairOpacity, TransitDepth, transit_depth
+from planner.atmosphere.transmission import TransitDepth, transit_depth
 from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.opacity import Opacities
 
-__all__ = ["NO_CHANGE", "Change", "ForwardModel"]
+__all__ = ["NO_CHANGE", "BinnedDepth", "Change", "ForwardModel"]
 
 Array = NDArray[np.float64]
+
+_PPM = 1e6
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -38,19 +40,35 @@ class Change:
 NO_CHANGE = Change()
 
 
+@dataclass(frozen=True, kw_only=True, eq=False)
+class BinnedDepth:
+    """Transit depth in the bins of one mode, in ppm; all arrays ``(bin,)``.
+
+    Shares (depth with a gas less depth without its absorption) and slopes (change of depth per unit of ln(mixing
+    ratio)) are zero where the gas's data do not cover.
+    """
+
+    depth_ppm: Array
+    shares_ppm: Mapping[str, Array]
+    slopes_ppm: Mapping[str, Array]
+
+
 class ForwardModel:
-    """Transit depths of a scenario's planet.
+    """Transit depths of a scenario's planet in the bins of its modes, from one set of samples.
 
     Parameters
     ----------
     scenario : Scenario
     opacities : Opacities
-        On the grid of the modes.
+        On the samples.
+    means : sequence of callables
+        One per mode: from samples ``(..., wavenumber)`` to bins ``(..., bin)``.
     """
 
-    def __init__(self, scenario: Scenario, opacities: Opacities) -> None:
+    def __init__(self, scenario: Scenario, opacities: Opacities, means: Sequence[Callable[[Array], Array]]) -> None:
         self.scenario = scenario
         self.opacities = opacities
+        self._means = means
 
     def air(self, case: Case, change: Change = NO_CHANGE) -> Air:
         """The column of air of one case."""
@@ -84,42 +102,36 @@ class ForwardModel:
         return replace(air, critical_radius_km=boundary)
 
     def depth(
-        self,
-        case: Case,
-        change: Change = NO_CHANGE,
-        *,
-        shares_of: Sequence[str] = (),
-        transparent: Sequence[str] = (),
-        stride: int = 1,
+        self, case: Case, change: Change = NO_CHANGE, *, shares_of: Sequence[str] = (), transparent: Sequence[str] = ()
     ) -> TransitDepth:
-        """Transit depth of one case on every ``stride``-th sample of the grid, some gases made transparent."""
+        """Transit depth of one case on the samples, some gases made transparent."""
         air = self.air(case, change)
-        gases, pairs = self._opacities(air, stride)
-        gases = [gas for gas in gases if gas.formula not in transparent]
-        pairs = [pair for pair in pairs if pair.first not in transparent and pair.second not in transparent]
+        gases = [self.opacities.gas(gas, air.temperature_k, ratio) for gas, ratio in air.mixing_ratios.items()]
+        pairs = self.opacities.pairs(list(air.mixing_ratios), air.temperature_k)
         return transit_depth(
             air,
-            gases,
-            pairs,
-            wavenumber_per_cm=self.opacities.grid.wavenumber_per_cm[::stride],
+            [gas for gas in gases if gas.formula not in transparent],
+            [pair for pair in pairs if pair.first not in transparent and pair.second not in transparent],
+            wavenumber_per_cm=self.opacities.wavenumber_per_cm,
             star_radius_km=self.scenario.star.radius_m * 1e-3,
             shares_of=shares_of,
         )
 
-    def _opacities(self, air: Air, stride: int) -> tuple[list[GasOpacity], list[PairOpacity]]:
-        ratios: Mapping[str, float] = air.mixing_ratios
-        gases = [self.opacities.gas(gas, air.temperature_k, ratio) for gas, ratio in ratios.items()]
-        pairs = self.opacities.pairs(list(ratios), air.temperature_k)
-        if stride == 1:
-            return gases, pairs
-        thin = [
-            replace(
-                gas,
-                log10_cross_section=None if gas.log10_cross_section is None else gas.log10_cross_section[:, ::stride],
-                flat_cross_section_cm2=(
-                    None if gas.flat_cross_section_cm2 is None else gas.flat_cross_section_cm2[::stride]
-                ),
+    def binned(
+        self, case: Case, change: Change = NO_CHANGE, *, shares_of: Sequence[str] = (), transparent: Sequence[str] = ()
+    ) -> tuple[BinnedDepth, ...]:
+        """Transit depth of one case in the bins of every mode."""
+        spectrum = self.depth(case, change, shares_of=shares_of, transparent=transparent)
+        shares = {gas: self._where_covered(gas, spectrum.depth - spectrum.depth_without[gas]) for gas in shares_of}
+        slopes = {gas: self._where_covered(gas, spectrum.derivative[gas]) for gas in shares_of}
+        return tuple(
+            BinnedDepth(
+                depth_ppm=mean(spectrum.depth) * _PPM,
+                shares_ppm={gas: mean(share) * _PPM for gas, share in shares.items()},
+                slopes_ppm={gas: mean(slope) * _PPM for gas, slope in slopes.items()},
             )
-            for gas in gases
-        ]
-        return thin, [replace(pair, coefficient_cm5=pair.coefficient_cm5[::stride]) for pair in pairs]
+            for mean in self._means
+        )
+
+    def _where_covered(self, gas: str, samples: Array) -> Array:
+        return np.where(self.opacities.covered(gas), samples, 0.0) if self.opacities.has_data(gas) else samples

@@ -1,35 +1,32 @@
 """What else could make the same shape: directions of depth for one prior width of everything not known exactly.
 
 Directions are derivatives of the forward model at the scenario, times the prior width. Those of other absorbers come
-with the spectrum itself; the others are differences over a small step, taken on a thinned grid: the sampling noise of
-the two spectra is the same and cancels. Under a clear sky, where a cloud has no derivative, one finite step stands
-for it: a deck at 0.1 bar.
+with the spectrum itself; the others are differences over a small step, for which a thinned grid is enough: the
+sampling noise of the two spectra is the same and cancels. Under a clear sky, where a cloud has no derivative, one
+finite step stands for it: a deck at 0.1 bar.
 """
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from math import log
 
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.atmosphere.transmission import TransitDepth
 from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.molecules import find_molecule
 from planner.spectroscopy.opacity import temperature_nodes
-from planner.studies.forward import NO_CHANGE, Change, ForwardModel
+from planner.studies.forward import NO_CHANGE, BinnedDepth, Change, ForwardModel
 from planner.studies.observe import ModeView
 
 __all__ = ["Direction", "directions", "prior_widths"]
 
 Array = NDArray[np.float64]
 
-STRIDE = 4
-"""Differences use every fourth sample."""
 CLEAR_SKY_DECK_BAR = 0.1
 _STEP = 0.02
-_PPM = 1e6
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -40,28 +37,29 @@ class Direction:
     per_mode_ppm: tuple[Array, ...]
 
 
-def directions(model: ForwardModel, case: Case, spectrum: TransitDepth, views: list[ModeView]) -> list[Direction]:
+def directions(
+    model: ForwardModel, case: Case, spectrum: Sequence[BinnedDepth], views: Sequence[ModeView]
+) -> list[Direction]:
     """All nuisance directions of one case.
 
     Parameters
     ----------
-    spectrum : TransitDepth
-        Of this case on the full grid, with the slopes of all absorbers.
+    model : ForwardModel
+        For the differences; thinned samples are enough.
+    spectrum : sequence of BinnedDepth
+        Of this case, per mode, with the slopes of all absorbers.
     """
     scenario = model.scenario
     found = [_offset(scenario, views, i, d) for i, view in enumerate(views) for d in range(len(view.mode.detectors))]
-    full = [view.means() for view in views]
     for gas in scenario.atmosphere.absorbers:
         if gas not in case.gases:
             width = scenario.nuisances.absorbers_dex * log(10)
-            slope = spectrum.derivative[gas] * width * _PPM
-            found.append(Direction(name=gas, per_mode_ppm=tuple(means(slope) for means in full)))
-    thin = [view.means(STRIDE) for view in views]
-    base = model.depth(case, stride=STRIDE).depth
+            found.append(Direction(name=gas, per_mode_ppm=tuple(part.slopes_ppm[gas] * width for part in spectrum)))
+    base = model.binned(case)
     for name, change, factor in _steps(scenario):
-        moved = model.depth(case, change, stride=STRIDE).depth
-        difference = (moved - base) * factor * _PPM
-        found.append(Direction(name=name, per_mode_ppm=tuple(means(difference) for means in thin)))
+        moved = model.binned(case, change)
+        parts = ((new.depth_ppm - old.depth_ppm) * factor for new, old in zip(moved, base, strict=True))
+        found.append(Direction(name=name, per_mode_ppm=tuple(parts)))
     return [d for d in found if any(np.any(part) for part in d.per_mode_ppm)]
 
 
@@ -88,7 +86,7 @@ def prior_widths(scenario: Scenario) -> tuple[tuple[str, str], ...]:
     return tuple(rows)
 
 
-def _offset(scenario: Scenario, views: list[ModeView], mode: int, detector: int) -> Direction:
+def _offset(scenario: Scenario, views: Sequence[ModeView], mode: int, detector: int) -> Direction:
     parts = [np.zeros(len(view.bins)) for view in views]
     parts[mode][views[mode].bins.detector == detector] = scenario.nuisances.offset_ppm
     return Direction(name=f"offset of {views[mode].detectors[detector]}", per_mode_ppm=tuple(parts))

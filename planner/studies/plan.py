@@ -11,14 +11,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner import __version__
-from planner.atmosphere.transmission import TransitDepth
 from planner.detection.significance import Measurement, target_snr
 from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.opacity import Opacities
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
 from planner.star.flux import star_cautions
-from planner.studies.forward import ForwardModel
+from planner.studies.forward import BinnedDepth, ForwardModel
 from planner.studies.nuisances import Direction, directions, prior_widths
 from planner.studies.observe import ModeView, observing_grid, source_of_light, view_modes
 from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, Verdict
@@ -39,7 +38,8 @@ _MISSION_YEARS = 5.0
 _BAND_INFORMATION = 0.8
 _CONFUSION_TRANSITS = 100.0
 """Transits at which confusion is quoted where even perfect knowledge does not suffice."""
-_PPM = 1e6
+_STRIDE = 4
+"""Differences for nuisance directions use every fourth sample."""
 
 
 class Workshop:
@@ -76,7 +76,14 @@ class Workshop:
             water_continuum=scenario.atmosphere.water_continuum,
             progress=progress,
         )
-        self.model = ForwardModel(scenario, self.opacities)
+        self.model = self._on_every(1)
+        self.thin = self._on_every(_STRIDE)
+
+    def _on_every(self, stride: int) -> ForwardModel:
+        """The forward model on every ``stride``-th sample."""
+        index = np.arange(0, self.opacities.grid.count, stride)
+        opacities = self.opacities if stride == 1 else self.opacities.selection(index)
+        return ForwardModel(self.scenario, opacities, [view.means(stride) for view in self.views])
 
     def line_data(self) -> tuple[str, ...]:
         """One sentence per source used and per stretch not used, for every gas of the scenario."""
@@ -101,8 +108,7 @@ class Sight:
     usable: tuple[NDArray[np.bool_], ...]
     templates_ppm: tuple[Array, ...]
     """Per mode, all bins; zero where the gas's data do not cover."""
-    depth_ppm: tuple[Array, ...]
-    shares_ppm: tuple[dict[str, Array], ...]
+    spectrum: tuple[BinnedDepth, ...]
 
 
 def plan(scenario: Scenario, *, lines_folder: Path | None = None, progress: Progress | None = None) -> PlanResult:
@@ -145,40 +151,20 @@ def see(workshop: Workshop, case: Case) -> Sight:
     """The spectrum of a case, its template and nuisances, in the bins of every mode."""
     model, views = workshop.model, workshop.views
     gases = [*case.gases, *(g for g in workshop.scenario.air(case) if g not in case.gases)]
-    spectrum = _covered(model.depth(case, shares_of=gases), workshop.opacities)
+    spectrum = model.binned(case, shares_of=gases)
     if len(case.gases) == 1:
-        template = spectrum.depth - spectrum.depth_without[case.gases[0]]
+        templates = [part.shares_ppm[case.gases[0]] for part in spectrum]
     else:
-        template = spectrum.depth - model.depth(case, transparent=case.gases).depth
-    nuisances = directions(model, case, spectrum, views)
-    means = [view.means() for view in views]
-    templates = [mean(template) * _PPM for mean in means]
+        without = model.binned(case, transparent=case.gases)
+        templates = [a.depth_ppm - b.depth_ppm for a, b in zip(spectrum, without, strict=True)]
+    nuisances = directions(workshop.thin, case, spectrum, views)
     usable = [np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views]
     return Sight(
         case=case,
         measurements=tuple(_measurement(view, templates[i], usable[i], nuisances, i) for i, view in enumerate(views)),
         usable=tuple(usable),
         templates_ppm=tuple(templates),
-        depth_ppm=tuple(mean(spectrum.depth) * _PPM for mean in means),
-        shares_ppm=tuple(
-            {gas: mean(spectrum.depth - spectrum.depth_without[gas]) * _PPM for gas in gases} for mean in means
-        ),
-    )
-
-
-def _covered(spectrum: TransitDepth, opacities: Opacities) -> TransitDepth:
-    """The same with every gas's share and slope zero where its data do not cover."""
-    without, slopes = dict(spectrum.depth_without), dict(spectrum.derivative)
-    for gas in without:
-        if opacities.has_data(gas):
-            mask = opacities.covered(gas)
-            without[gas] = np.where(mask, without[gas], spectrum.depth)
-            slopes[gas] = np.where(mask, slopes[gas], 0.0)
-    return TransitDepth(
-        depth=spectrum.depth,
-        depth_without=without,
-        derivative=slopes,
-        bottom_transmission=spectrum.bottom_transmission,
+        spectrum=spectrum,
     )
 
 
@@ -307,8 +293,8 @@ def binned_spectrum(workshop: Workshop, sight: Sight, index: int) -> BinnedSpect
         detector=view.bins.detector,
         from_um=view.bins.from_um,
         to_um=view.bins.to_um,
-        depth_ppm=sight.depth_ppm[index],
-        shares_ppm=sight.shares_ppm[index],
+        depth_ppm=sight.spectrum[index].depth_ppm,
+        shares_ppm=sight.spectrum[index].shares_ppm,
         noise_one_transit_ppm=view.noise.depth_error_ppm,
         floor_ppm=np.sqrt(np.diag(view.floor_ppm2)),
         usable=sight.usable[index],
