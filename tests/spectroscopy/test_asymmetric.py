@@ -222,6 +222,22 @@ def test_merge():
     assert len(merged) - k_zero == (len(full) - k_zero) / 2
 
 
+def test_spin_doublets():
+    """Each line becomes two that keep its intensity and its centre; they lie apart as the levels of N +- 1/2 do."""
+    states = {name: [g, 8.0, 0.43, 0.43 - 1e-9, "none", ""] for name, g in (("000", 0.0), ("010", 1600.0))}
+    changes = {"states": states, "bands": [["010", "000", "a", 1e-18, 9, [], ""]], "coupled": []}
+    single = lines_of(**changes)
+    double = lines_of(**changes, spin_rotation_per_cm=[0.18, -0.003, -0.003])
+    assert double.intensity_cm.sum() == pytest.approx(single.intensity_cm.sum())
+    quantum = columns(double)
+    pick = np.all(quantum == [5, 2, 4, 4, 2, 3], axis=1)
+    split = [0.5 * (0.18 * 4 - 0.003 * (n * (n + 1) - 4)) * (1 / (n + 1) + 1 / n) for n in (5, 4)]
+    assert pick.sum() == 2
+    assert np.ptp(double.wavenumber_per_cm[pick]) == pytest.approx(abs(split[0] - split[1]), rel=1e-6)
+    assert np.ptp(double.lower_energy_per_cm[pick]) == pytest.approx(split[1], rel=1e-6)
+    assert np.sort(double.intensity_cm[pick] / double.intensity_cm[pick].sum()) == pytest.approx([4 / 9, 5 / 9])
+
+
 def test_widths():
     """Widths follow the four numbers, J being the larger of both and K_a the upper one."""
     lines = lines_of(coupled=[])

@@ -19,6 +19,7 @@ from planner.spectroscopy.lists.asymmetric_rotor import (
     block_k,
     coupled_levels,
     direction_cosine,
+    spin_rotation,
 )
 
 QUARTIC = (1.2e-3, -5.7e-3, 2.0e-2, 5.1e-4, 1.3e-3)
@@ -201,6 +202,27 @@ def test_rotor_vectors_orthonormal():
             v = block.vectors[0][j][:, block.exists[j]]
             np.testing.assert_allclose(v.T @ v, np.eye(v.shape[1]), atol=1e-12)
             assert not v[block_k(block.blocks[0], 8) > j].any()
+
+
+def test_spin_rotation():
+    """In the symmetric limit it is e_aa K^2 + e (N(N+1) - K^2), and in general the derivative of a rotor's energy."""
+    top = RotorConstants(a_per_cm=8.0, b_per_cm=0.43, c_per_cm=0.43)
+    for block in coupled_levels([top], [], 9, 9):
+        n = np.arange(10)[:, np.newaxis]
+        expected = np.where(block.exists, 0.18 * block.ka**2 - 0.003 * (n * (n + 1) - block.ka**2), 0.0)
+        np.testing.assert_allclose(spin_rotation(block, (0.18, -0.003, -0.003)), expected, atol=1e-12)
+    step = 1e-5
+    e = (0.18, 0.02, -0.03)
+    below, above = (
+        coupled_levels(
+            [RotorConstants(a_per_cm=27.9 + s * e[0], b_per_cm=14.5 + s * e[1], c_per_cm=9.3 + s * e[2])], [], 6, 6
+        )
+        for s in (-step, step)
+    )
+    middle = coupled_levels([RotorConstants(a_per_cm=27.9, b_per_cm=14.5, c_per_cm=9.3)], [], 6, 6)
+    for low, block, high in zip(below, middle, above, strict=True):
+        slope = (high.energy_per_cm - low.energy_per_cm) / (2 * step)
+        np.testing.assert_allclose(spin_rotation(block, e), slope, atol=1e-6)
 
 
 # ---- coupled sets --------------------------------------------------------------------------------------------------
