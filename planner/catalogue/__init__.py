@@ -1,0 +1,1 @@
+"""The gas catalogue: what a planner must know beside the spectrum."""
