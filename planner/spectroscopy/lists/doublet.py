@@ -136,7 +136,7 @@ def _branches(lower: Sequence[float], upper: Sequence[float], slope: float, larg
                         _Branch(
                             position=position[keep],
                             energy=energies[low][keep],
-                            strength=(strength * relative_intensity(position, energies[low]))[keep],
+                            strength=strength[keep] * relative_intensity(position[keep], energies[low][keep]),
                             j=j[keep],
                             labels=("PQR"[step + 1], "e" if parity > 0 else "f", "31"[low], "31"[up]),
                             step=step,
