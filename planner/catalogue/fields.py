@@ -7,7 +7,7 @@ from typing import Annotated
 import astropy.units as u
 from pydantic import BeforeValidator
 
-from planner.catalogue.readings import AmountSpan, BandRows, OneOf, Span
+from planner.catalogue.readings import AmountSpan, BandRows, OneOf, PerPpb, Span
 from planner.scenario.readings import Gas, Measure, MixingRatio, Number, Text
 
 __all__ = [
@@ -37,7 +37,7 @@ __all__ = [
 Pair = tuple[float, float]
 
 _FLAGS = ("read", "from memory", "computed", "judgement")
-_EFFICIENCY = u.W / u.m**2 / (1e-9 * u.one)
+_EFFICIENCY = Measure(kind="a radiative efficiency", unit=u.W / u.m**2, example="0.291 W m-2")
 _CHANCE = Number(kind="a probability", low=0, high=1, open_low=True, open_high=True)
 
 Words = Annotated[str, BeforeValidator(Text())]
@@ -79,8 +79,6 @@ Amounts = Annotated[Pair, BeforeValidator(AmountSpan())]
 AmountRange = Annotated[Pair, BeforeValidator(Span(value=MixingRatio(), kind="mixing ratios", example="1 ppm"))]
 Chance = Annotated[float, BeforeValidator(_CHANCE)]
 ChanceRange = Annotated[Pair, BeforeValidator(Span(value=_CHANCE, kind="probabilities", example="0.1"))]
-Efficiency = Annotated[
-    float, BeforeValidator(Measure(kind="a radiative efficiency", unit=_EFFICIENCY, example="0.291 W m-2 ppb-1"))
-]
+Efficiency = Annotated[float, BeforeValidator(PerPpb(value=_EFFICIENCY))]
 OptionalWarming = Annotated[float | None, BeforeValidator(Number(kind="a warming potential", low=0, open_low=True))]
 Rows = Annotated[tuple[tuple[float, float, float, str], ...], BeforeValidator(BandRows())]

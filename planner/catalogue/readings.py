@@ -7,9 +7,9 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
-from planner.scenario.readings import MixingRatio, nearest, shown
+from planner.scenario.readings import Measure, MixingRatio, nearest, shown
 
-__all__ = ["AmountSpan", "BandRows", "OneOf", "Span"]
+__all__ = ["AmountSpan", "BandRows", "OneOf", "PerPpb", "Span"]
 
 Pair = tuple[float, float]
 
@@ -69,6 +69,23 @@ class AmountSpan:
         if value == 0 and isinstance(value, int | float) and not isinstance(value, bool):
             return 0.0, 0.0
         return Span(value=MixingRatio(), kind="a mixing ratio", example="226 ppt", single_allowed=True)(value)
+
+
+@dataclass(frozen=True, kw_only=True)
+class PerPpb:
+    """A value per ppb. The ppb must be written out: to the unit library it is a plain number that may be left off."""
+
+    value: Measure
+
+    @property
+    def expected(self) -> str:
+        return f'{self.value.kind} such as "{self.value.example} ppb-1"'
+
+    def __call__(self, value: Any) -> float:
+        number, mark, rest = str(value).partition("ppb-1")
+        if not isinstance(value, str) or not mark or rest.strip():
+            raise ValueError(f"expected {self.expected}, got {shown(value)}")
+        return self.value(number)
 
 
 @dataclass(frozen=True, kw_only=True)

@@ -8,7 +8,6 @@ Keys in the files are singular words, ``[[loss]]``; field names carry units and,
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import cached_property
 from typing import Annotated, Self
 
 from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, model_validator
@@ -250,7 +249,7 @@ class GasRecord(_Record):
     life: Hypothesis
     industry: Hypothesis
 
-    @cached_property
+    @property
     def bands(self) -> tuple[Band, ...]:
         """All bands, by wavelength."""
         return tuple(sorted((b for group in self.band_groups for b in group.bands), key=lambda band: band.from_um))

@@ -9,10 +9,11 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from functools import lru_cache
 from math import log, log10, sqrt
 
 from planner.catalogue.read import find_gas, has_gas, read_catalogue
-from planner.catalogue.records import Band, GasRecord
+from planner.catalogue.records import Band, BandGroup, GasRecord
 
 __all__ = ["SharedBand", "likeness", "rivals_among", "shared_bands", "sharing_bands"]
 
@@ -109,9 +110,16 @@ def likeness(gas: GasRecord, other: GasRecord) -> float:
     return common / sqrt(_power(own) * _power(theirs))
 
 
-def _weights(gas: GasRecord) -> dict[Band, float]:
-    seen = [band.mean_cross_section_cm2 for band in gas.bands if band.from_um >= _SHORT_UM]
-    weights = {band: 1 - log10(max(seen) / band.mean_cross_section_cm2) / _DECADES for band in gas.bands}
+def _weights(gas: GasRecord) -> Mapping[Band, float]:
+    return _weights_of(gas.band_groups)
+
+
+@lru_cache(maxsize=256)
+def _weights_of(groups: tuple[BandGroup, ...]) -> Mapping[Band, float]:
+    bands = sorted((band for group in groups for band in group.bands), key=lambda band: band.from_um)
+    mean = {band: band.mean_cross_section_cm2 for band in bands}
+    seen = [mean[band] for band in bands if band.from_um >= _SHORT_UM] or list(mean.values())
+    weights = {band: 1 - log10(max(seen) / mean[band]) / _DECADES for band in bands}
     return {band: min(weight, 1.0) for band, weight in weights.items() if weight > 0}
 
 

@@ -19,7 +19,7 @@ from planner.spectroscopy.molecules import find_molecule
 __all__ = ["amount_text", "catalogue_view", "gas_page", "lifetime_text", "view_text"]
 
 _CLASS_STYLES = {"biogenic": "green", "industrial": "magenta", "either": "yellow", "abiotic": "dim"}
-_WIDE = 100
+_WIDE = 110
 """Columns from which the list has room for common names and more rivals."""
 _BANDS_SHOWN = 3
 _HOURS_PER_YEAR = 365.25 * 24
