@@ -4,9 +4,11 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from planner.spectroscopy.accuracy import WindowScore, alike, compare, effective_heights
-from planner.spectroscopy.lines import Lines
 from scipy.special import exp1
+
+from planner.spectroscopy.accuracy import WindowScore, alike, compare
+from planner.spectroscopy.heights import effective_heights
+from planner.spectroscopy.lines import Lines
 
 EULER = 0.5772156649015329
 SURFACE_DENSITY_PER_CM3 = 1.0e6 / (1.380649e-16 * 250.0)
