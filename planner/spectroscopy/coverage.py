@@ -2,8 +2,10 @@
 
 Coverage is never a file's first and last line. It is declared (``coverage.toml`` beside the files), or it is measured:
 within each stretch of an isotopologue's lines that has no gap over 5 per cm, the file must hold at least 0.9 of the
-intensity that the embedded list puts there. What falls short is reported as partial and not used, so that a fragment
-never stands for a band.
+intensity that the embedded list puts there. A gap of up to 50 per cm in which the embedded list has less than 0.001 of
+the intensity around is one of the spectrum, not of the file, and ends no stretch. At any other gap of that size, what
+the embedded list has within 5 per cm of the ends of a stretch counts as missing: a file that skips lines is not
+complete between them. What falls short is reported as partial and not used, so that a fragment never stands for a band.
 """
 
 from __future__ import annotations
@@ -11,6 +13,7 @@ from __future__ import annotations
 import tomllib
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -37,6 +40,9 @@ Interval = tuple[float, float]
 COVERAGE_FILE = "coverage.toml"
 _GAP_PER_CM = 5.0
 _COMPLETE_SHARE = 0.9
+_NEARBY_PER_CM = 50.0
+_NEXT_TO_NOTHING = 1e-3
+_EDGE_PER_CM = 0.1  # how far the same line may stand apart in the two lists
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -103,23 +109,19 @@ def measured_coverage(lines: Lines, embedded: Lines | None) -> tuple[tuple[Inter
     Returns
     -------
     intervals : tuple of (from, to)
-        Stretches without a gap over 5 per cm that hold at least 0.9 of the embedded intensity.
+        Stretches without a gap that hold at least 0.9 of the embedded intensity.
     reasons : list of str
         One per stretch that is not used.
     """
     good: list[Interval] = []
     reasons: list[str] = []
-    nu = lines.wavenumber_per_cm
-    breaks = np.flatnonzero(np.diff(nu) > _GAP_PER_CM) + 1
     short = 0
-    for piece in np.split(np.arange(nu.size), breaks):
-        low, high = float(nu[piece[0]]), float(nu[piece[-1]])
+    for low, high, count, judged in _stretches(lines.wavenumber_per_cm, embedded):
+        yardstick = _sum_within(embedded, *judged)
+        here = _sum_within(lines, low, high)
         if high - low < _GAP_PER_CM:
-            short += piece.size
-            continue
-        here = float(lines.intensity_cm[piece].sum())
-        yardstick = _sum_within(embedded, low, high)
-        if embedded is None or not len(embedded):
+            short += count
+        elif embedded is None or not len(embedded):
             reasons.append(
                 f"{low:.2f}-{high:.2f} per cm: no embedded list to judge it by; declare it in {COVERAGE_FILE} to use it"
             )
@@ -163,6 +165,32 @@ def subtract(intervals: Sequence[Interval], taken: Sequence[Interval]) -> tuple[
             pieces += [(x, y) for x, y in ((a, min(b, low)), (max(a, high), b)) if y > x]
         free = pieces
     return tuple(free)
+
+
+def _stretches(
+    wavenumber_per_cm: NDArray[np.float64], embedded: Lines | None
+) -> list[tuple[float, float, int, Interval]]:
+    """Stretches of a file's lines between its gaps: from, to, number of lines, and the interval to judge it in."""
+    if not wavenumber_per_cm.size:
+        return []
+    widths = np.diff(wavenumber_per_cm)
+    wide = np.flatnonzero(widths > _GAP_PER_CM).tolist()
+    gaps: list[int] = [k for k in wide if not _bridged(wavenumber_per_cm[k : k + 2], embedded)]
+    beyond = [0.0, *(_GAP_PER_CM if widths[k] <= _NEARBY_PER_CM else 0.0 for k in gaps), 0.0]
+    result = []
+    for number, (before, last) in enumerate(pairwise([-1, *gaps, wavenumber_per_cm.size - 1])):
+        low, high = float(wavenumber_per_cm[before + 1]), float(wavenumber_per_cm[last])
+        result.append((low, high, last - before, (low - beyond[number], high + beyond[number + 1])))
+    return result
+
+
+def _bridged(ends_per_cm: NDArray[np.float64], embedded: Lines | None) -> bool:
+    """Whether a gap is one of the spectrum and not of the file: the embedded list has next to nothing in it."""
+    low, high = ends_per_cm
+    if embedded is None or not len(embedded) or high - low > _NEARBY_PER_CM:
+        return False
+    around = _sum_within(embedded, low - _NEARBY_PER_CM, high + _NEARBY_PER_CM)
+    return around > 0.0 and _sum_within(embedded, low + _EDGE_PER_CM, high - _EDGE_PER_CM) < _NEXT_TO_NOTHING * around
 
 
 def _sum_within(lines: Lines | None, low: float, high: float) -> float:

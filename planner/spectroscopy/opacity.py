@@ -19,11 +19,8 @@ from numpy.typing import NDArray
 
 from planner.atmosphere.transmission import GasOpacity, PairOpacity
 from planner.errors import LineDataError
-from planner.spectroscopy.broadening import width_factor
-from planner.spectroscopy.collisions import collision_coefficient, collision_pairs
+from planner.spectroscopy.broadening import Broadened, broadened
 from planner.spectroscopy.grid import LogGrid
-from planner.spectroscopy.lines import Lines
-from planner.spectroscopy.lists.build import smooth_cross_section
 from planner.spectroscopy.rayleigh import rayleigh_cross_section
 from planner.spectroscopy.sources import GasSource, LineLibrary
 from planner.spectroscopy.store import Store, digest
@@ -85,13 +82,14 @@ class Opacities:
     ) -> None:
         self.grid = grid
         self.wavenumber_per_cm = grid.wavenumber_per_cm
-        self.broadening, self.broadening_note = width_factor(air)
+        self._air = dict(air)
         self._library = library
         self._store = store
         self._wing_per_cm = wing_per_cm
         self._water_continuum = water_continuum
         self._progress = progress or (lambda text, share: None)
         self._node = lru_cache(maxsize=64)(self._build_node)
+        self._broadened: dict[str, Broadened] = {}
         self._remember()
 
     def _remember(self) -> None:
@@ -123,6 +121,11 @@ class Opacities:
         share = round(mixing_ratio, 1) if mixing_ratio >= _LEAST_SELF_FRACTION else 0.0
         return self._gas(formula, temperature_k, share)
 
+    @property
+    def broadening_notes(self) -> tuple[str, ...]:
+        """How the lines of the gases used so far are broadened, one sentence for each."""
+        return tuple(self._broadened[formula].sentence for formula in sorted(self._broadened))
+
     def has_data(self, formula: str) -> bool:
         """Whether the gas has lines or bands at all (noble gases and homonuclear ones may have none)."""
         try:
@@ -149,11 +152,15 @@ class Opacities:
         source = self._library.gas(formula) if self.has_data(formula) else None
         table = None
         if source is not None:
-            if source.constants is not None:
-                smooth = smooth_cross_section(source.constants, wavenumber, temperature_k)
-                flat = flat if smooth is None else flat + smooth
             if source.lines is not None and len(source.lines):
                 table = self._interpolated(source, temperature_k, self_fraction)
+                if source.measured is not None:
+                    table = np.where(source.measured_at(wavenumber), _NOTHING, table)
+            smooth = source.smooth_cross_section(wavenumber, temperature_k, PRESSURES_BAR)
+            if smooth is not None and len(smooth) == 1:
+                flat = flat + smooth[0]
+            elif smooth is not None:
+                table = _log10(smooth if table is None else smooth + 10.0**table)
         return GasOpacity(
             formula=formula,
             pressures_bar=PRESSURES_BAR,
@@ -164,8 +171,12 @@ class Opacities:
     def _build_pairs(self, present: frozenset[str], temperature_k: float) -> list[PairOpacity]:
         wavenumber = self.wavenumber_per_cm
         found = [
-            PairOpacity(first=a, second=b, coefficient_cm5=collision_coefficient((a, b), wavenumber, temperature_k))
-            for a, b in collision_pairs()
+            PairOpacity(
+                first=a,
+                second=b,
+                coefficient_cm5=self._library.collision_coefficient((a, b), wavenumber, temperature_k),
+            )
+            for a, b in self._library.collision_pairs()
             if a in present and b in present
         ]
         if self._water_continuum and "H2O" in present:
@@ -189,19 +200,22 @@ class Opacities:
         """Table on the whole grid at a temperature node, shape ``(pressure, wavenumber)``."""
         source = self._library.gas(formula)
         assert source.lines is not None
+        if formula not in self._broadened:
+            self._broadened[formula] = broadened(formula, source.lines, source.widths, self._air)
         table = np.full((PRESSURES_BAR.size, self.grid.count), _NOTHING, dtype=np.float32)
         blocks = self.grid.blocks()
         for number, block in enumerate(blocks):
             self._progress(f"{formula} at {temperature_k:.0f} K", number / len(blocks))
-            values = self._block(source, source.lines, block, temperature_k, self_fraction)
+            values = self._block(source, self._broadened[formula], block, temperature_k, self_fraction)
             if values is not None:
                 mine, theirs = self.grid.part_of(block)
                 table[:, mine] = values[:, theirs]
         return table
 
     def _block(
-        self, source: GasSource, lines: Lines, block: LogGrid, temperature_k: float, self_fraction: float
+        self, source: GasSource, mixed: Broadened, block: LogGrid, temperature_k: float, self_fraction: float
     ) -> NDArray[np.float32] | None:
+        lines = mixed.lines
         wavenumber = block.wavenumber_per_cm
         reach = self._wing_per_cm + 1.0
         first, last = np.searchsorted(lines.wavenumber_per_cm, [wavenumber[0] - reach, wavenumber[-1] + reach])
@@ -213,7 +227,7 @@ class Opacities:
             "kernel": _kernel_digest(),
             "temperature_k": round(temperature_k, 6),
             "self_fraction": self_fraction,
-            "broadening": round(self.broadening, 3),
+            "broadening": mixed.key,
             "wing_per_cm": self._wing_per_cm,
             "lowered_at_the_cut": int(lowered.sum()),
             "block": [block.first, block.count, block.samples_per_unit_ln],
@@ -229,7 +243,6 @@ class Opacities:
                 temperature_k=temperature_k,
                 pressures_bar=PRESSURES_BAR,
                 self_fraction=self_fraction,
-                width_factor=key["broadening"],
                 wing_per_cm=self._wing_per_cm,
                 subtract_at_wing=subtract_at_wing,
             )
@@ -238,8 +251,7 @@ class Opacities:
             values = sums(False)
             if lowered.any():
                 values[:, lowered] = sums(True)[:, lowered]
-            with np.errstate(divide="ignore"):
-                return np.maximum(np.log10(values), _NOTHING).astype(np.float32)
+            return _log10(values)
 
         return self._store.fetch(source.molecule.formula, key, build)
 
@@ -250,6 +262,11 @@ class Opacities:
             for low, high in WINDOWS_PER_CM:
                 mask |= (wavenumber_per_cm >= low) & (wavenumber_per_cm <= high)
         return mask
+
+
+def _log10(cross_section_cm2: NDArray[np.float64]) -> NDArray[np.float32]:
+    with np.errstate(divide="ignore"):
+        return np.maximum(np.log10(cross_section_cm2), _NOTHING).astype(np.float32)
 
 
 @lru_cache(maxsize=1)

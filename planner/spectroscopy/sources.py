@@ -1,14 +1,14 @@
-"""Which line data stand for a gas: the embedded list, or real files laid over it where they are complete.
+"""Which data stand for a gas: the embedded list, or real files laid over it where they are complete.
 
-Each isotopologue and interval has one source: the newest real file that is complete there
-(`planner.spectroscopy.coverage`), else the embedded list.
+Each isotopologue and interval has one source: the newest line file that is complete there
+(`planner.spectroscopy.coverage`), else measured cross-sections, which stand for all isotopologues at once, else the
+embedded list. Collision pairs from files are laid over the embedded ones in the same spirit.
 """
 
 from __future__ import annotations
 
-import re
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
 from functools import lru_cache
 from pathlib import Path
 
@@ -16,25 +16,21 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.errors import LineDataError
-from planner.spectroscopy.coverage import (
-    COVERAGE_FILE,
-    Declaration,
-    Interval,
-    inside,
-    measured_coverage,
-    read_declarations,
-    subtract,
-    union,
-)
-from planner.spectroscopy.hitran import read_par
+from planner.spectroscopy.broadening import ForeignWidths
+from planner.spectroscopy.collisions import collision_coefficient, collision_pairs
+from planner.spectroscopy.coverage import Interval, inside, subtract, union
+from planner.spectroscopy.files.cia import Pair
+from planner.spectroscopy.files.folder import DataFiles, read_folder
+from planner.spectroscopy.files.measured import MeasuredBands
+from planner.spectroscopy.files.pairs import MeasuredPair
+from planner.spectroscopy.files.segments import Segment, laid_over, segments_of
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.lists.build import (
     Constants,
     build_lines,
     embedded_formulas,
-    lines_from_table,
     read_constants,
-    table_from_lines,
+    smooth_cross_section,
 )
 from planner.spectroscopy.molecules import Molecule, find_molecule
 from planner.spectroscopy.store import Store, digest
@@ -50,9 +46,13 @@ class GasSource:
     ----------
     molecule : Molecule
     lines : Lines or None
-        All lines, one source per isotopologue and interval.
+        All lines, one source per isotopologue and interval. Inside the measured intervals they do not count.
+    widths : ForeignWidths or None
+        Widths of these lines in other gases than air, in the same order.
     constants : Constants or None
         The embedded constants with their smooth parts; None for a gas known from files alone.
+    measured : MeasuredBands or None
+        Measured cross-sections; inside their intervals nothing else of the gas counts.
     covers_per_cm : tuple of (from, to)
         Where the data can be trusted to hold what matters, ascending and disjoint.
     provenance : tuple of str
@@ -65,80 +65,127 @@ class GasSource:
 
     molecule: Molecule
     lines: Lines | None
+    widths: ForeignWidths | None
     constants: Constants | None
+    measured: MeasuredBands | None
     covers_per_cm: tuple[Interval, ...]
     provenance: tuple[str, ...]
     partial: tuple[str, ...]
     digest: str
 
+    def measured_at(self, wavenumber_per_cm: NDArray[np.float64]) -> NDArray[np.bool_]:
+        """Where measured cross-sections stand for the gas and its lines do not count, shape ``(wavenumber,)``."""
+        return inside(wavenumber_per_cm, self.measured.intervals if self.measured else ())
 
-@dataclass(frozen=True, kw_only=True, eq=False)
-class _Segment:
-    """Lines of one isotopologue from one file, complete over some intervals."""
+    def smooth_cross_section(
+        self, wavenumber_per_cm: NDArray[np.float64], temperature_k: float, pressures_bar: NDArray[np.float64]
+    ) -> NDArray[np.float64] | None:
+        """What the gas absorbs apart from its lines: measured cross-sections where they stand, else smooth bands.
 
-    path: Path
-    edition: int
-    file_digest: str
-    isotopologue: int
-    lines: Lines
-    intervals: tuple[Interval, ...]
+        Parameters
+        ----------
+        wavenumber_per_cm : (wavenumber,) ndarray
+            Ascending.
+        temperature_k : float
+        pressures_bar : (pressure,) ndarray
 
-
-@dataclass(kw_only=True, eq=False)
-class _Folder:
-    """All line files of a folder, read once."""
-
-    files: dict[Path, tuple[Lines, str]] = field(default_factory=dict)
-    declared: dict[str, list[Declaration]] = field(default_factory=dict)
+        Returns
+        -------
+        (pressure, wavenumber) ndarray or None
+            cm2 per molecule; one row alone where the pressure does not matter, None where there is nothing.
+        """
+        smooth = None
+        if self.constants is not None:
+            smooth = smooth_cross_section(self.constants, wavenumber_per_cm, temperature_k)
+        if self.measured is None:
+            return None if smooth is None else smooth[np.newaxis]
+        total = self.measured.cross_section_cm2(wavenumber_per_cm, temperature_k, pressures_bar)
+        if smooth is not None:
+            total += np.where(self.measured_at(wavenumber_per_cm), 0.0, smooth)
+        return total
 
 
 class LineLibrary:
-    """Finds the data of each gas.
+    """Finds the data of each gas and pair.
 
     Parameters
     ----------
     store : Store
         Keeps built lists and parsed files.
     folder : Path, optional
-        A folder of HITRAN-format ``.par`` files, plain or gzip, that replace embedded data where they are complete.
+        A folder of HITRAN-format ``.par``, ``.xsc`` and ``.cia`` files, plain or gzip, that replace embedded data
+        where they are complete.
+    files : DataFiles, optional
+        Files read already, in place of a folder.
 
     Raises
     ------
     LineDataError
-        If the folder does not exist, holds no line files, or a file breaks its format.
+        If the folder does not exist, holds no such file, a file breaks its format, or two files of a pair conflict.
     """
 
-    def __init__(self, store: Store, folder: Path | None = None) -> None:
+    def __init__(self, store: Store, folder: Path | None = None, *, files: DataFiles | None = None) -> None:
         self._store = store
-        self._folder = _Folder() if folder is None else _read_folder(folder, store)
+        self._files = files or (DataFiles() if folder is None else read_folder(folder, store))
+        pairs = {block.pair for block in self._files.blocks if block.usable}
+        self._pairs = {pair: MeasuredPair([b for b in self._files.blocks if b.pair == pair]) for pair in sorted(pairs)}
         self.gas = lru_cache(maxsize=None)(self._gas)
+
+    def collision_pairs(self) -> list[Pair]:
+        """All pairs with coefficients, embedded or from files, each in alphabetical order, sorted."""
+        return sorted({*collision_pairs(), *self._pairs})
+
+    def collision_coefficient(
+        self, pair: Pair, wavenumber_per_cm: NDArray[np.float64], temperature_k: float
+    ) -> NDArray[np.float64]:
+        """Coefficient of a pair in cm5 per molecule squared, shape ``(wavenumber,)``; wavenumbers ascending.
+
+        Raises
+        ------
+        LineDataError
+            If the pair is not known.
+        """
+        first, second = sorted(pair)
+        files = self._pairs.get((first, second))
+        if files is not None and (first, second) not in collision_pairs():
+            return files.coefficient_cm5(wavenumber_per_cm, temperature_k, np.zeros(wavenumber_per_cm.size))
+        embedded = collision_coefficient(pair, wavenumber_per_cm, temperature_k)
+        return embedded if files is None else files.coefficient_cm5(wavenumber_per_cm, temperature_k, embedded)
+
+    def pair_provenance(self, formulas: Iterable[str]) -> tuple[str, ...]:
+        """One sentence per collision file that is used among these gases."""
+        present = set(formulas)
+        return tuple(s for pair, files in self._pairs.items() if present.issuperset(pair) for s in files.sentences)
 
     def _gas(self, name: str) -> GasSource:
         """The data of one gas, by formula or common name."""
         molecule = find_molecule(name)
         constants = read_constants(molecule.formula) if molecule.formula in embedded_formulas() else None
         embedded = build_lines(constants, self._store) if constants else None
-        segments, partial = self._segments(molecule, embedded)
-        if constants is None and not segments:
+        segments, partial = segments_of(molecule, self._files, embedded)
+        measured, unused = self._measured(molecule, segments)
+        partial += unused
+        if constants is None and not segments and measured is None:
             reasons = f" ({'; '.join(partial)})" if partial else ""
             raise LineDataError(
                 f"{name}: no embedded data and none in the line folder{reasons}; embedded gases are "
                 + ", ".join(embedded_formulas())
             )
-        lines, provenance = _laid_over(embedded, segments)
-        if constants is not None:
-            provenance = (
-                f"{molecule.formula}: embedded, constants file {constants.digest[:8]}, "
-                f"covers {_ranges(constants.covers_per_cm)} per cm" + (" where no file is named" if segments else ""),
-                *provenance,
-            )
-        covers = union([*(constants.covers_per_cm if constants else ()), *(i for s in segments for i in s.intervals)])
+        lines, widths = laid_over(embedded, segments)
         return GasSource(
             molecule=molecule,
             lines=lines,
+            widths=widths,
             constants=constants,
-            covers_per_cm=covers,
-            provenance=provenance,
+            measured=measured,
+            covers_per_cm=union(
+                [
+                    *(constants.covers_per_cm if constants else ()),
+                    *(interval for segment in segments for interval in segment.intervals),
+                    *(measured.intervals if measured else ()),
+                ]
+            ),
+            provenance=_provenance(molecule, constants, segments, measured),
             partial=partial,
             digest=digest(
                 constants.digest if constants else "",
@@ -146,123 +193,35 @@ class LineLibrary:
             ),
         )
 
-    def _segments(self, molecule: Molecule, embedded: Lines | None) -> tuple[list[_Segment], tuple[str, ...]]:
-        """Segments in order of precedence with disjoint intervals, and what was left out."""
-        found: list[_Segment] = []
-        partial: list[str] = []
-        for path, (lines, file_digest) in self._folder.files.items():
-            for isotopologue in np.unique(lines.isotopologue[lines.molecule == molecule.hitran_number]):
-                mask = (lines.molecule == molecule.hitran_number) & (lines.isotopologue == isotopologue)
-                chosen = lines.where(mask)
-                declared = self._declared(path, molecule, int(isotopologue))
-                good = declared or ()
-                if declared is None:
-                    mine = None if embedded is None else embedded.where(embedded.isotopologue == isotopologue)
-                    good, why = measured_coverage(chosen, mine)
-                    partial += [f"{path.name}: {molecule.formula} isotopologue {isotopologue}: {text}" for text in why]
-                if good:
-                    found.append(
-                        _Segment(
-                            path=path,
-                            edition=_edition(path, self._folder.declared.get(path.name, [])),
-                            file_digest=file_digest,
-                            isotopologue=int(isotopologue),
-                            lines=chosen,
-                            intervals=good,
-                        )
-                    )
-        found.sort(key=lambda s: (s.isotopologue, -s.edition, s.path.name))
-        return _without_overlap(found), tuple(partial)
-
-    def _declared(self, path: Path, molecule: Molecule, isotopologue: int) -> tuple[Interval, ...] | None:
-        """Declared coverage of one file, or None if it says nothing about this gas."""
-        rows = [row for row in self._folder.declared.get(path.name, []) if row.covers(molecule.formula, isotopologue)]
-        return union([row.interval_per_cm for row in rows]) or None
-
-
-def _without_overlap(segments: list[_Segment]) -> list[_Segment]:
-    """Each interval of an isotopologue goes to the first segment in order; a line twice in one edition is an error."""
-    kept: list[_Segment] = []
-    for segment in segments:
-        taken = [s for s in kept if s.isotopologue == segment.isotopologue]
-        for other in taken:
-            if other.edition == segment.edition:
-                _refuse_repeated_lines(segment, other)
-        free = subtract(segment.intervals, [i for s in taken for i in s.intervals])
-        if free:
-            kept.append(
-                _Segment(
-                    path=segment.path, edition=segment.edition, file_digest=segment.file_digest,
-                    isotopologue=segment.isotopologue, lines=segment.lines, intervals=free,
-                )
-            )  # fmt: skip
-    return kept
-
-
-def _refuse_repeated_lines(one: _Segment, other: _Segment) -> None:
-    def labels(segment: _Segment) -> set[tuple[float, str, str]]:
-        lines = segment.lines
-        return set(zip(lines.wavenumber_per_cm.tolist(), lines.upper_local, lines.lower_local, strict=True))
-
-    repeated = labels(one) & labels(other)
-    if repeated:
-        raise LineDataError(
-            f"{one.path} and {other.path}: the line at {min(repeated)[0]:.6f} per cm stands in both; "
-            "keep one of the files, or name their editions in coverage.toml so that the newer one is used"
+    def _measured(
+        self, molecule: Molecule, segments: Sequence[Segment]
+    ) -> tuple[MeasuredBands | None, tuple[str, ...]]:
+        """Measured cross-sections where no line file stands, and sentences on what is left out."""
+        tables = [table for table in self._files.tables if table.formula == molecule.formula]
+        if not tables:
+            return None, ()
+        bands = MeasuredBands(tables, taken=[interval for s in segments for interval in s.intervals])
+        reach = union([(table.from_per_cm, table.to_per_cm) for table in tables])
+        left_out = subtract(reach, bands.intervals)
+        unused = (
+            f"{molecule.formula}: measured cross-sections over {_ranges(left_out)} per cm not used: line records stand "
+            "there, which follow temperature and pressure",
         )
+        return bands if bands.intervals else None, unused if left_out else ()
 
 
-def _laid_over(embedded: Lines | None, segments: Sequence[_Segment]) -> tuple[Lines | None, tuple[str, ...]]:
-    if not segments:
-        return embedded, ()
-    parts: list[Lines] = []
-    sentences: list[str] = []
-    if embedded is not None:
-        keep = np.ones(len(embedded), dtype=bool)
-        for segment in segments:
-            same = embedded.isotopologue == segment.isotopologue
-            keep &= ~(same & inside(embedded.wavenumber_per_cm, segment.intervals))
-        parts.append(embedded.where(keep))
-    for segment in segments:
-        parts.append(segment.lines.where(inside(segment.lines.wavenumber_per_cm, segment.intervals)))
-        edition = f"HITRAN{segment.edition}" if segment.edition else "edition not named"
-        sentences.append(
-            f"{find_molecule(str(_formula(segment))).formula}: isotopologue {segment.isotopologue} over "
-            f"{_ranges(segment.intervals)} per cm from {segment.path.name} ({edition}, {segment.file_digest[:8]})"
-        )
-    return Lines.join(parts), tuple(sentences)
-
-
-def _formula(segment: _Segment) -> str:
-    from planner.spectroscopy.molecules import MOLECULES
-
-    number = int(segment.lines.molecule[0])
-    return next(m.formula for m in MOLECULES if m.hitran_number == number)
+def _provenance(
+    molecule: Molecule, constants: Constants | None, segments: Sequence[Segment], measured: MeasuredBands | None
+) -> tuple[str, ...]:
+    from_files = (*(segment.sentence for segment in segments), *(measured.sentences if measured else ()))
+    if constants is None:
+        return from_files
+    return (
+        f"{molecule.formula}: embedded, constants file {constants.digest[:8]}, "
+        f"covers {_ranges(constants.covers_per_cm)} per cm" + (" where no file is named" if from_files else ""),
+        *from_files,
+    )
 
 
 def _ranges(intervals: Sequence[Interval]) -> str:
     return ", ".join(f"{low:.6g}-{high:.6g}" for low, high in intervals)
-
-
-def _edition(path: Path, declared: Sequence[Declaration]) -> int:
-    named = next((row.edition for row in declared if row.edition is not None), path.name)
-    found = re.search(r"hitran[_-]?(\d{4})", named, re.IGNORECASE)
-    return int(found.group(1)) if found else 0
-
-
-def _read_folder(folder: Path, store: Store) -> _Folder:
-    if not folder.is_dir():
-        raise LineDataError(f"{folder}: expected a folder of HITRAN-format line files, found none")
-    paths = sorted(p for p in folder.iterdir() if re.search(r"\.par(\.gz)?$", p.name, re.IGNORECASE))
-    if not paths:
-        raise LineDataError(f"{folder}: holds no .par or .par.gz file")
-    result = _Folder(declared=read_declarations(folder / COVERAGE_FILE))
-    for path in paths:
-        file_digest = digest(path.read_bytes())
-        table = store.fetch("files", {"par": file_digest}, _reader(path))
-        result.files[path] = (lines_from_table(table), file_digest)
-    return result
-
-
-def _reader(path: Path) -> Callable[[], NDArray[np.void]]:
-    return lambda: table_from_lines(read_par(path))

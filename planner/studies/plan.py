@@ -95,7 +95,7 @@ class Workshop:
             if self.opacities.has_data(gas):
                 source = self.library.gas(gas)
                 sentences += [*source.provenance, *source.partial]
-        return (*sentences, self.opacities.broadening_note)
+        return (*sentences, *self.library.pair_provenance(gases), *self.opacities.broadening_notes)
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)

@@ -8,7 +8,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.errors import RangeError
-from planner.spectroscopy.lists.build import smooth_cross_section
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
 
@@ -73,16 +72,15 @@ def sigma(
     store = Store()
     source = LineLibrary(store, lines_folder).gas(gas)
     wavenumber = np.asarray(from_per_cm + step_per_cm * np.arange(count), dtype=np.float64)
+    pressure = np.array([pressure_bar])
     total = np.zeros(count)
     if source.lines is not None:
         from planner.spectroscopy.crosssections import cross_sections
 
-        total += cross_sections(
-            source.lines, wavenumber, temperature_k=temperature_k, pressures_bar=np.array([pressure_bar])
-        )[0]
-    if source.constants is not None:
-        smooth = smooth_cross_section(source.constants, wavenumber, temperature_k)
-        total += 0.0 if smooth is None else smooth
+        total += cross_sections(source.lines, wavenumber, temperature_k=temperature_k, pressures_bar=pressure)[0]
+        total[source.measured_at(wavenumber)] = 0.0
+    smooth = source.smooth_cross_section(wavenumber, temperature_k, pressure)
+    total += 0.0 if smooth is None else smooth[0]
     notes = (
         f"lines: Voigt profiles in air, cut {_WING_PER_CM:g} 1/cm from the centre, TIPS partition sums; "
         "no continuum, no scattering",

@@ -10,6 +10,7 @@ from __future__ import annotations
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from pathlib import Path
 
 import numpy as np
@@ -17,7 +18,8 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.files.disk import read_whole
-from planner.spectroscopy.files.rows import fixed_count, fixed_number, numbers_of, printable_rows, shapes_of
+from planner.spectroscopy.files.rows import fixed_count, fixed_number, numbers_of, printable_rows, remarks_on, shapes_of
+from planner.spectroscopy.files.spread import spread_negatives
 from planner.spectroscopy.molecules import find_molecule
 
 __all__ = ["CollisionTable", "Pair", "parse_cia", "read_cia"]
@@ -27,7 +29,6 @@ Pair = tuple[str, str]
 _HEADER = 100
 _ROW = re.compile(rb" *0+\.(0+) +-?0\.(0+)(?:E[+-]00|E?[+-]000)(?: +-?0*\.0+(?:E[+-]00|E?[+-]000)?)? *")
 _ENDS_APART_PER_CM = 1.0  # headers round their range, some to whole numbers
-_MAX_MISMATCH = 0.002  # headers round to three or four digits
 NOT_GASES_HERE = {"air": "Air", "h": "H"}
 """Partners in published pairs that no scenario can name: their files are checked, and not used."""
 
@@ -67,18 +68,14 @@ class CollisionTable:
         """Whether both partners are gases that a scenario can name."""
         return not any(partner in NOT_GASES_HERE.values() for partner in self.pair)
 
+    @cached_property
+    def absorption_cm5(self) -> NDArray[np.float64]:
+        """The coefficients without negative ones, as an opacity needs them; see `spread_negatives`."""
+        return spread_negatives(self.coefficient_cm5, np.gradient(self.wavenumber_per_cm))
+
     def remarks(self) -> tuple[str, ...]:
         """What a reader of the values should know: negative and zero values, a header at odds with them."""
-        found = []
-        negative, zero = np.sum(self.coefficient_cm5 < 0), np.sum(self.coefficient_cm5 == 0)
-        if negative or zero:
-            found.append(f"{negative} negative and {zero} zero values of {self.coefficient_cm5.size}")
-        largest = float(self.coefficient_cm5.max())
-        if abs(largest - self.largest_stated_cm5) > _MAX_MISMATCH * abs(largest):
-            found.append(
-                f"the header gives {self.largest_stated_cm5:.3e} cm5 as the largest value, it is {largest:.3e}"
-            )
-        return tuple(found)
+        return remarks_on(self.coefficient_cm5, self.largest_stated_cm5, "cm5")
 
 
 def read_cia(path: Path) -> tuple[CollisionTable, ...]:
@@ -156,7 +153,8 @@ def _columns(
         )
     if len(rows) < count:
         raise LineDataError(
-            f"{where}:{first_line + len(rows)}: expected {count} rows as the header says, the file ends after {len(rows)}"
+            f"{where}:{first_line + len(rows)}: expected {count} rows as the header says, the file ends after "
+            f"{len(rows)}"
         )
     if len({shape.count(b".") for shape in shapes}) > 1:  # uncertainties are left out here and there
         rows = [b" ".join(row.split()[:2]) for row in rows]

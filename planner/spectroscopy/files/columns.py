@@ -120,8 +120,8 @@ def _check_order(x: NDArray[np.float64], where: str, lines: list[int]) -> None:
     wrong = np.flatnonzero(steps <= 0 if steps[0] > 0 else steps >= 0)
     if wrong.size:
         raise LineDataError(
-            f"{where}:{lines[wrong[0] + 1]}: first column: expected it to {'ascend' if steps[0] > 0 else 'descend'} as it "
-            f"begins, got {x[wrong[0] + 1]:g} after {x[wrong[0]]:g}"
+            f"{where}:{lines[wrong[0] + 1]}: first column: expected it to "
+            f"{'ascend' if steps[0] > 0 else 'descend'} as it begins, got {x[wrong[0] + 1]:g} after {x[wrong[0]]:g}"
         )
 
 

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 
-__all__ = ["fixed_count", "fixed_number", "numbers_of", "printable_rows", "shapes_of"]
+__all__ = ["fixed_count", "fixed_number", "numbers_of", "printable_rows", "remarks_on", "shapes_of"]
 
 _ALL_DIGITS_ALIKE = bytes.maketrans(b"123456789e", b"000000000E")
 _NUMBER = re.compile(r" *[+-]?(?:\d+\.?\d*|\.\d+)(?:[EeDd][+-]?\d{1,3})? *")
@@ -18,6 +18,7 @@ _REPAIRS = (
     (re.compile(rb"(\d)([+-]\d{3})"), rb"\1E\2"),  # an exponent of three digits loses its letter
     (re.compile(rb"(\d)(-\d\.)"), rb"\1 \2"),  # a negative number fills its column and touches its neighbour
 )
+_LARGEST_OFF = 0.002  # headers round their largest value to three or four digits
 
 
 def printable_rows(data: bytes, where: str) -> list[bytes]:
@@ -95,3 +96,15 @@ def fixed_count(row: bytes, start: int, stop: int, place: str) -> int:
             f"got {written!r}"
         )
     return int(written)
+
+
+def remarks_on(values: NDArray[np.float64], largest_stated: float, unit: str) -> tuple[str, ...]:
+    """What a reader of measured values should know: those at or below zero, a header at odds with them."""
+    found = []
+    negative, zero = np.sum(values < 0), np.sum(values == 0)
+    if negative or zero:
+        found.append(f"{negative} negative and {zero} zero values of {values.size}")
+    largest = float(values.max())
+    if abs(largest - largest_stated) > _LARGEST_OFF * abs(largest):
+        found.append(f"the header gives {largest_stated:.3e} {unit} as the largest value, it is {largest:.3e}")
+    return tuple(found)

@@ -9,6 +9,7 @@ from __future__ import annotations
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from pathlib import Path
 
 import numpy as np
@@ -16,7 +17,8 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.files.disk import read_whole
-from planner.spectroscopy.files.rows import fixed_count, fixed_number, numbers_of, printable_rows, shapes_of
+from planner.spectroscopy.files.rows import fixed_count, fixed_number, numbers_of, printable_rows, remarks_on, shapes_of
+from planner.spectroscopy.files.spread import spread_negatives
 from planner.spectroscopy.molecules import find_molecule
 
 __all__ = ["BAR_PER_TORR", "CrossSectionTable", "format_xsc", "parse_xsc", "read_xsc"]
@@ -30,7 +32,6 @@ _SPELLINGS = {"cfh2cf3": "C2H2F4", "ch2fcf3": "C2H2F4", "cf3ch2f": "C2H2F4", "ch
 """Formulas that HITRAN or others write differently."""
 
 _VALUE = re.compile(rb" *-?0\.(0{2,5})(?:E[+-]00|[+-]000)")
-_MAX_MISMATCH = 0.002  # headers round to three or four digits
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -77,18 +78,14 @@ class CrossSectionTable:
         """Distance of the points."""
         return (self.to_per_cm - self.from_per_cm) / (self.cross_section_cm2.size - 1)
 
+    @cached_property
+    def absorption_cm2(self) -> NDArray[np.float64]:
+        """The values without negative ones, as an opacity needs them; see `spread_negatives`."""
+        return spread_negatives(self.cross_section_cm2, np.ones(self.cross_section_cm2.size))
+
     def remarks(self) -> tuple[str, ...]:
         """What a reader of the values should know: negative and zero values, a header at odds with them."""
-        found = []
-        negative, zero = np.sum(self.cross_section_cm2 < 0), np.sum(self.cross_section_cm2 == 0)
-        if negative or zero:
-            found.append(f"{negative} negative and {zero} zero values of {self.cross_section_cm2.size}")
-        largest = float(self.cross_section_cm2.max())
-        if abs(largest - self.largest_stated_cm2) > _MAX_MISMATCH * abs(largest):
-            found.append(
-                f"the header gives {self.largest_stated_cm2:.3e} cm2 as the largest value, it is {largest:.3e}"
-            )
-        return tuple(found)
+        return remarks_on(self.cross_section_cm2, self.largest_stated_cm2, "cm2")
 
 
 def read_xsc(path: Path) -> tuple[CrossSectionTable, ...]:
@@ -126,8 +123,8 @@ def parse_xsc(text_or_bytes: str | bytes, where: str) -> tuple[CrossSectionTable
 def _count(header: bytes, place: str) -> int:
     if len(header) != _HEADER:
         raise LineDataError(
-            f"{place}: header: expected {_HEADER} characters, got {len(header)}; is this a HITRAN .xsc file, and does the "
-            "number of points above agree with its rows?"
+            f"{place}: header: expected {_HEADER} characters, got {len(header)}; is this a HITRAN .xsc file, and "
+            "does the number of points above agree with its rows?"
         )
     return fixed_count(header, 40, 47, place)
 
@@ -137,7 +134,8 @@ def _values(rows: Sequence[bytes], count: int, where: str, first_line: int) -> N
     expected = -(-count // _PER_ROW)
     if len(rows) < expected:
         raise LineDataError(
-            f"{where}:{first_line + len(rows)}: expected {expected} rows for {count} points, the file ends after {len(rows)}"
+            f"{where}:{first_line + len(rows)}: expected {expected} rows for {count} points, the file ends after "
+            f"{len(rows)}"
         )
     last = count - _PER_ROW * (expected - 1)
     rows = [row.rstrip() for row in rows]
@@ -147,8 +145,8 @@ def _values(rows: Sequence[bytes], count: int, where: str, first_line: int) -> N
     shapes, wrong = shapes_of(filled, lambda shape: _fits(shape, decimals))
     if wrong is not None:
         raise LineDataError(
-            f"{where}:{first_line + wrong}: values: expected {_PER_ROW if wrong < expected - 1 else last} numbers such as "
-            f"1.234E-20 in columns of {_COLUMN}, got {rows[wrong].decode()[: _HEADER + 1]!r}"
+            f"{where}:{first_line + wrong}: values: expected {_PER_ROW if wrong < expected - 1 else last} numbers such "
+            f"as 1.234E-20 in columns of {_COLUMN}, got {rows[wrong].decode()[: _HEADER + 1]!r}"
         )
     values = numbers_of(filled, shapes)
     if np.any(values[count:]):

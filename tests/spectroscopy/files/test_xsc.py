@@ -104,7 +104,7 @@ def test_plain_and_gzip(make_xsc, tmp_path):
 @pytest.mark.parametrize(
     ("old", "new", "message"),
     [
-        ("               CCl3F", "               XeF2x", r"here:1: molecule \(columns 1-20\): expected a gas known here"),
+        ("               CCl3F", "               XeF2x", r"here:1: molecule \(columns 1-20\): expected a gas"),
         ("               CCl3F", "                 CF4", r"here:1: molecule: 'CF4' .* different gases"),
         ("  830.0000", "  890.0000", r"here:1: wavenumbers \(columns 21-40\): expected lowest < highest"),
         ("  830.0000", "  8x0.0000", r"here:1: lowest wavenumber \(columns 21-30\): expected a number"),
