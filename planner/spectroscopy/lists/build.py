@@ -60,6 +60,8 @@ class Constants:
         Where the list holds what matters; elsewhere the gas counts as not covered.
     line_parts, smooth_parts : tuple of mappings
         The parts, by whether they make lines or cross-sections.
+    sources : mapping
+        What each source key of the parts stands for.
     digest : str
         Hash of the file, for provenance.
     """
@@ -68,6 +70,7 @@ class Constants:
     covers_per_cm: tuple[tuple[float, float], ...]
     line_parts: tuple[Mapping[str, Any], ...]
     smooth_parts: tuple[Mapping[str, Any], ...]
+    sources: Mapping[str, str]
     digest: str
 
 
@@ -101,8 +104,9 @@ def parse_constants(text: bytes, where: Path) -> Constants:
         table = tomllib.loads(text.decode())
         parts = table["part"]
         covers = tuple((float(a), float(b)) for a, b in table["covers_per_cm"])
+        sources = {str(key): str(text) for key, text in table["sources"].items()}
         molecule = find_molecule(table["formula"])
-    except (tomllib.TOMLDecodeError, KeyError, TypeError, ValueError) as error:
+    except (tomllib.TOMLDecodeError, AttributeError, KeyError, TypeError, ValueError) as error:
         raise LineDataError(f"{where}: not a constants file of this program: {error!r}") from error
     for number, part in enumerate(parts, 1):
         if part.get("kind") not in _LINE_KINDS | _SMOOTH_KINDS:
@@ -113,6 +117,7 @@ def parse_constants(text: bytes, where: Path) -> Constants:
         covers_per_cm=covers,
         line_parts=tuple(part for part in parts if part["kind"] in _LINE_KINDS),
         smooth_parts=tuple(part for part in parts if part["kind"] in _SMOOTH_KINDS),
+        sources=sources,
         digest=digest(text),
     )
 
