@@ -11,10 +11,12 @@ from planner.spectroscopy.lists.eigen_kernel import eigen_stack
 
 
 def solve(matrices, sizes):
-    """Values and vectors of a stack."""
-    values, vectors = np.zeros(matrices.shape[:2]), np.zeros(matrices.shape)
-    eigen_stack(np.ascontiguousarray(matrices), np.asarray(sizes, dtype=np.int64), values, vectors)
-    return values, vectors
+    """Values, ascending, and vectors, in columns, of a stack."""
+    values, rows = np.full(matrices.shape[:2], np.inf), np.zeros(matrices.shape)
+    eigen_stack(np.array(matrices, order="C"), np.asarray(sizes, dtype=np.int64), values, rows)
+    order = np.argsort(values, axis=1, kind="stable")
+    rows = np.take_along_axis(rows, order[:, :, np.newaxis], axis=1)
+    return np.take_along_axis(values, order, axis=1), rows.swapaxes(1, 2)
 
 
 @given(st.integers(1, 24), st.integers(0, 10_000))
@@ -54,15 +56,6 @@ def test_eigen_stack_sizes():
     values, vectors = solve(matrices, [0, 1, 3, 5])
     for matrix, size, value, vector in zip(matrices, (0, 1, 3, 5), values, vectors, strict=True):
         np.testing.assert_allclose(value[:size], np.linalg.eigvalsh(matrix[:size, :size]), atol=1e-13)
-        assert not value[size:].any()
+        assert np.isinf(value[size:]).all()
         assert not vector[size:].any()
         assert not vector[:, size:].any()
-
-
-def test_eigen_stack_keeps_input():
-    """The matrices are not destroyed."""
-    matrix = np.arange(9.0).reshape(1, 3, 3)
-    matrix = matrix + matrix.swapaxes(1, 2)
-    before = matrix.copy()
-    solve(matrix, [3])
-    np.testing.assert_array_equal(matrix, before)

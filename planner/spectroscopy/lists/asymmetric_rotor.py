@@ -325,11 +325,13 @@ def _eigen(matrices: Floats, k: NDArray[np.int64]) -> tuple[NDArray[np.bool_], F
 
     order = np.argsort(k, kind="stable")
     sizes = np.searchsorted(k[order], np.arange(matrices.shape[0]), side="right")
-    energy, ordered = np.zeros(matrices.shape[:2]), np.zeros(matrices.shape)
-    eigen_stack(np.ascontiguousarray(matrices[:, order][:, :, order]), sizes, energy, ordered)
-    vectors = np.empty_like(ordered)
-    vectors[:, order] = ordered
-    return np.arange(k.size)[np.newaxis, :] < sizes[:, np.newaxis], energy, vectors
+    values, rows = np.full(matrices.shape[:2], np.inf), np.zeros(matrices.shape)
+    eigen_stack(np.ascontiguousarray(matrices[:, order[:, np.newaxis], order]), sizes, values, rows)
+    exists = np.arange(k.size)[np.newaxis, :] < sizes[:, np.newaxis]
+    ascending = np.argsort(values, axis=1, kind="stable")
+    vectors = np.empty_like(rows)
+    vectors[:, order] = np.take_along_axis(rows, ascending[:, :, np.newaxis], axis=1).swapaxes(1, 2)
+    return exists, np.where(exists, np.take_along_axis(values, ascending, axis=1), 0.0), vectors
 
 
 def _resemblance(

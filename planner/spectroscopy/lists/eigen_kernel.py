@@ -14,16 +14,13 @@ __all__ = ["eigen_stack"]
 _EPSILON = float(np.finfo(np.float64).eps)
 
 
-# Sums over vectors may be reordered for the vector units: the rounding error stays that of a sum.
-@njit("void(f8[:,::1], f8[::1], f8[::1], f8[:,::1])", cache=True, nogil=True, fastmath={"contract", "reassoc"})
-def _tridiagonalise(a, diagonal, beside, rows):  # type: ignore[no-untyped-def]
+@njit("void(f8[:,::1], i8, f8[::1], f8[::1], f8[:,::1])", cache=True, nogil=True)
+def _tridiagonalise(a, n, diagonal, beside, rows):  # type: ignore[no-untyped-def]
     """Householder's reduction of `a` (destroyed); ``rows`` becomes the transpose of the orthogonal matrix.
 
     Golub and Van Loan, Matrix Computations (1996), algorithm 8.3.1.
     """
-    n = a.shape[0]
-    v, w = np.zeros(n), np.zeros(n)
-    scales = np.zeros(n)
+    v, w, scales = np.zeros(n), np.zeros(n), np.zeros(n)
     for k in range(n - 2):
         norm = 0.0
         for i in range(k + 1, n):
@@ -69,13 +66,12 @@ def _tridiagonalise(a, diagonal, beside, rows):  # type: ignore[no-untyped-def]
                 rows[i, j] -= total * a[k, j]
 
 
-@njit("void(f8[::1], f8[::1], f8[:,::1])", cache=True, nogil=True)
-def _diagonalise(diagonal, beside, rows):  # type: ignore[no-untyped-def]
+@njit("void(i8, f8[::1], f8[::1], f8[:,::1])", cache=True, nogil=True)
+def _diagonalise(n, diagonal, beside, rows):  # type: ignore[no-untyped-def]
     """Implicit QL steps with Wilkinson's shift; rows of ``rows`` end as eigenvectors, ``diagonal`` as eigenvalues.
 
     Dubrulle, Martin and Wilkinson (1968), Numerische Mathematik 12, 377.
     """
-    n = diagonal.size
     for first in range(n):
         while True:
             last = first
@@ -115,20 +111,15 @@ def _diagonalise(diagonal, beside, rows):  # type: ignore[no-untyped-def]
 
 
 @njit("void(f8[:,:,::1], i8[::1], f8[:,::1], f8[:,:,::1])", cache=True, nogil=True)
-def eigen_stack(matrices, sizes, values, vectors):  # type: ignore[no-untyped-def]
-    """Fill ``values`` (stack, n) and ``vectors`` (stack, n, n; columns) from the leading blocks of ``matrices``.
+def eigen_stack(matrices, sizes, values, rows):  # type: ignore[no-untyped-def]
+    """Fill ``values`` (stack, n) and ``rows`` (stack, n, n; eigenvectors as rows), in no particular order.
 
-    Of matrix i only the first ``sizes[i]`` rows and columns count. Values ascend; the rest is left as it was.
+    Of matrix i only the first ``sizes[i]`` rows and columns count, and of the outputs only as many are written;
+    ``matrices`` is destroyed.
     """
     for i in range(sizes.size):
         n = sizes[i]
-        if n == 0:
-            continue
-        diagonal, beside, rows = np.zeros(n), np.zeros(n), np.zeros((n, n))
-        _tridiagonalise(matrices[i, :n, :n].copy(), diagonal, beside, rows)
-        _diagonalise(diagonal, beside, rows)
-        order = np.argsort(diagonal)
-        for level in range(n):
-            values[i, level] = diagonal[order[level]]
-            for j in range(n):
-                vectors[i, j, level] = rows[order[level], j]
+        if n > 0:
+            beside = np.zeros(n)
+            _tridiagonalise(matrices[i], n, values[i], beside, rows[i])
+            _diagonalise(n, values[i], beside, rows[i])
