@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from planner import __version__
+from planner.catalogue.command import gases
 from planner.errors import PlannerError
 
 if TYPE_CHECKING:
@@ -91,6 +92,9 @@ def cli() -> None:
 
     Start with `limbcast demo`, then `limbcast new my.toml` and `limbcast plan my.toml`.
     """
+
+
+cli.add_command(gases)
 
 
 @cli.command()

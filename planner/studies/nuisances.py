@@ -1,9 +1,11 @@
 """What else could make the same shape: directions of depth for one prior width of everything not known exactly.
 
-Directions are derivatives of the forward model at the scenario, times the prior width. Those of other absorbers come
-with the spectrum itself; the others are differences over a small step, for which a thinned grid is enough: the
-sampling noise of the two spectra is the same and cancels. Under a clear sky, where a cloud has no derivative, one
-finite step stands for it: a deck at 0.1 bar.
+The question is whether air without the gas could look like air with it, so directions are derivatives of the forward
+model with the gas transparent, times the prior width. (Taken with the gas present they would hold its own template:
+a temperature known to 15 % would then cap every significance at 6.7, as if cold air could make the gas vanish.)
+Derivatives by other absorbers come with that spectrum itself; the others are differences over a small step, for which
+a thinned grid is enough: the sampling noise of the two spectra is the same and cancels. Under a clear sky, where a
+cloud has no derivative, one finite step stands for it: a deck at 0.1 bar.
 """
 
 from __future__ import annotations
@@ -38,7 +40,7 @@ class Direction:
 
 
 def directions(
-    model: ForwardModel, case: Case, spectrum: Sequence[BinnedDepth], views: Sequence[ModeView]
+    model: ForwardModel, case: Case, null: Sequence[BinnedDepth], views: Sequence[ModeView]
 ) -> list[Direction]:
     """All nuisance directions of one case.
 
@@ -46,18 +48,18 @@ def directions(
     ----------
     model : ForwardModel
         For the differences; thinned samples are enough.
-    spectrum : sequence of BinnedDepth
-        Of this case, per mode, with the slopes of all absorbers.
+    null : sequence of BinnedDepth
+        The case with its gases transparent, per mode, with the slopes of all absorbers.
     """
     scenario = model.scenario
     found = [_offset(scenario, views, i, d) for i, view in enumerate(views) for d in range(len(view.mode.detectors))]
     for gas in scenario.atmosphere.absorbers:
         if gas not in case.gases:
             width = scenario.nuisances.absorbers_dex * log(10)
-            found.append(Direction(name=gas, per_mode_ppm=tuple(part.slopes_ppm[gas] * width for part in spectrum)))
-    base = model.binned(case)
+            found.append(Direction(name=gas, per_mode_ppm=tuple(part.slopes_ppm[gas] * width for part in null)))
+    base = model.binned(case, transparent=case.gases)
     for name, change, factor in _steps(scenario):
-        moved = model.binned(case, change)
+        moved = model.binned(case, change, transparent=case.gases)
         parts = ((new.depth_ppm - old.depth_ppm) * factor for new, old in zip(moved, base, strict=True))
         found.append(Direction(name=name, per_mode_ppm=tuple(parts)))
     return [d for d in found if any(np.any(part) for part in d.per_mode_ppm)]

@@ -150,14 +150,11 @@ def plan(scenario: Scenario, *, lines_folder: Path | None = None, progress: Prog
 def see(workshop: Workshop, case: Case) -> Sight:
     """The spectrum of a case, its template and nuisances, in the bins of every mode."""
     model, views = workshop.model, workshop.views
-    gases = [*case.gases, *(g for g in workshop.scenario.air(case) if g not in case.gases)]
-    spectrum = model.binned(case, shares_of=gases)
-    if len(case.gases) == 1:
-        templates = [part.shares_ppm[case.gases[0]] for part in spectrum]
-    else:
-        without = model.binned(case, transparent=case.gases)
-        templates = [a.depth_ppm - b.depth_ppm for a, b in zip(spectrum, without, strict=True)]
-    nuisances = directions(workshop.thin, case, spectrum, views)
+    others = [gas for gas in workshop.scenario.air(case) if gas not in case.gases]
+    spectrum = model.binned(case, shares_of=[*case.gases, *others])
+    null = model.binned(case, shares_of=others, transparent=case.gases)
+    templates = [_template(case, there, absent) for there, absent in zip(spectrum, null, strict=True)]
+    nuisances = directions(workshop.thin, case, null, views)
     usable = [np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views]
     return Sight(
         case=case,
@@ -166,6 +163,13 @@ def see(workshop: Workshop, case: Case) -> Sight:
         templates_ppm=tuple(templates),
         spectrum=spectrum,
     )
+
+
+def _template(case: Case, spectrum: BinnedDepth, null: BinnedDepth) -> Array:
+    """What the searched gases make: for one, its share where its data cover; for a set, all that goes with it."""
+    if len(case.gases) == 1:
+        return spectrum.shares_ppm[case.gases[0]]
+    return spectrum.depth_ppm - null.depth_ppm
 
 
 def _measurement(

@@ -17,7 +17,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.lines import Lines
-from planner.spectroscopy.lists.emission import C2_CM_K, REFERENCE_TEMPERATURE_K, einstein_a_per_s
+from planner.spectroscopy.lists.intensities import C2_CM_K, REFERENCE_TEMPERATURE_K, einstein_a_per_s
 
 __all__ = ["oxygen_lines", "smooth_table_cross_section"]
 
