@@ -222,7 +222,7 @@ def test_labels_and_weights_as_in_hitran() -> None:
     """Global labels fill 15 columns, local ones hold branch, J and e/f; weights are 2J + 1 times the nuclear part."""
     lines = linear_lines(_part(BENT, BENT_BANDS[:1], nuclear_weights=[6, 6]), 23)
     up, j = _chosen(lines, "0 1 1 0", "0 0 0 0", "R")
-    assert up.lower_local[12] == "     R 12e     "
+    assert up.lower_local[12] == "     R 12e"
     assert up.upper_global[12] == "        0 1 1 0"
     assert np.array_equal(up.lower_weight, 6 * (2 * j + 1))
     assert np.array_equal(up.upper_weight, 6 * (2 * j + 3))

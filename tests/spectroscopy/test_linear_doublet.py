@@ -90,7 +90,7 @@ def test_branches_without_coupling() -> None:
     lines = doublet_lines(part, 8)
     found = {}
     for branch in "PR":
-        mask = lines.lower_local == f"   {branch}  5.5e     "
+        mask = lines.lower_local == f"   {branch}  5.5e"
         mask &= np.char.strip(lines.lower_global) == "X1/2   0"
         mask &= np.char.strip(lines.upper_global) == "X1/2   1"
         assert mask.sum() == 1

@@ -207,7 +207,7 @@ def _branch_lines(
         temperature_exponent=exponent,
         upper_global=f"       X{up}/2{quanta[0]:4d}",
         lower_global=f"       X{low}/2{quanta[1]:4d}",
-        lower_local=np.array([f"   {letter}{value:5.1f}{parity}     " for value in j], dtype="<U15"),
+        lower_local=np.array([f"   {letter}{value:5.1f}{parity}" for value in j], dtype="<U15"),
         upper_weight=upper_weight,
         lower_weight=nuclear * (2 * j + 1),
     )

@@ -91,7 +91,7 @@ def _species_lines(
     numbers = (hitran_number, int(species["isotopologue"]))
     keep = worth_keeping(*numbers, found.wavenumber_per_cm, intensity, found.lower_energy_per_cm, weakest_cm)
     found, weight, intensity = found.where(keep), weight[keep], intensity[keep]
-    names = np.array([name.rjust(15) for name in levels.names])
+    names = np.array([name.rjust(15).rstrip() for name in levels.names])
     order = np.maximum(found.j, found.j + found.branch)
     upper_weight = weight * (2 * (found.j + found.branch) + 1)
     return Lines.make(
@@ -183,6 +183,6 @@ def _intensities(
 def _local_labels(found: _Transitions, *, with_parity: bool) -> NDArray[np.str_]:
     """HITRAN local labels of the lower level: branch, J, and e or f where the molecule bends."""
     branch = np.array(["P", "Q", "R"])[found.branch + 1]
-    parity = np.where(found.parity == E, "e", "f") if with_parity else np.full(branch.size, " ")
-    texts = [f"     {b}{j:3d}{p}     " for b, j, p in zip(branch, found.j, parity, strict=True)]
+    parity = np.where(found.parity == E, "e", "f") if with_parity else np.full(branch.size, "")
+    texts = [f"     {b}{j:3d}{p}" for b, j, p in zip(branch, found.j, parity, strict=True)]
     return np.array(texts, dtype="<U15")
