@@ -135,6 +135,8 @@ def with_satellites(
         air_width_per_cm_atm=repeated(lines.air_width_per_cm_atm),
         self_width_per_cm_atm=repeated(lines.self_width_per_cm_atm),
         temperature_exponent=repeated(lines.temperature_exponent),
+        upper_global=repeated(lines.upper_global),
+        lower_global=repeated(lines.lower_global),
     )
 
 

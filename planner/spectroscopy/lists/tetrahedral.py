@@ -26,6 +26,7 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.lines import Lines
+from planner.spectroscopy.lists.intensities import relative_intensity, worth_keeping
 from planner.spectroscopy.lists.polyads import (
     MODE_DIMENSIONS,
     PARTNERS,
@@ -49,10 +50,6 @@ Factors = Mapping[tuple[int, int], Matrix]
 """Vibrational factors summed over terms, by (degree, power)."""
 Levels = Mapping[str, tuple[Matrix, Matrix]]
 """Energies, ascending, and eigenvectors of each species."""
-
-C2_CM_K = 1.438776877
-"""Second radiation constant, CODATA 2018."""
-REFERENCE_TEMPERATURE_K = 296.0
 
 _SPIN_WEIGHTS = {"A1": 5.0, "A2": 5.0, "E": 2.0, "F1": 3.0, "F2": 3.0}
 _CLASS_OF_SPECIES = {"A1": 0, "A2": 0, "E": 0, "F1": 1, "F2": 1}
@@ -270,12 +267,18 @@ def tetrahedral_band_lines(part: Mapping[str, Any], hitran_number: int) -> Lines
     Parameters
     ----------
     part : mapping
-        ``hamiltonian``, rows as in `read_terms`, in 1/cm; ``isotopologues``, rows ``number, intensity relative to the
-        main one, shifts of the four vibrational quanta (1/cm), largest lower polyad``; ``widths``, rows ``J'', air
-        width of A and F lines, of E lines, self width (1/cm/atm), temperature exponent``, interpolated in J'' and
-        constant beyond; ``cut_cm``, the weakest line kept; and ``system``, tables with ``step`` (polyads climbed),
-        ``largest_j`` of the lower level for each lower polyad, ``sum_cm`` (from the ground state) and ``moments``,
-        rows as in `read_terms` on any scale.
+        ``hamiltonian``, rows as in `read_terms`, in 1/cm;
+
+        ``isotopologues``, rows ``number, intensity relative to the first, [shifts of the four vibrational quanta in
+        1/cm], largest lower polyad, largest step``;
+
+        ``widths``, rows ``J'', air width of A and F lines, of E lines, self width (1/cm/atm), temperature exponent``,
+        interpolated in J'' and constant beyond;
+
+        ``weakest_cm``, the weakest line kept, at 296 or 600 K;
+
+        ``system``, tables with ``step``, the polyads climbed, ``largest_j`` of the lower level for each lower polyad,
+        ``sum_cm`` from the ground state (cm/molecule at 296 K), and ``moments``, rows as in `read_terms` on any scale.
     hitran_number : int
         Molecule number that the lines carry.
 
@@ -288,16 +291,19 @@ def tetrahedral_band_lines(part: Mapping[str, Any], hitran_number: int) -> Lines
     hamiltonian = read_terms(part["hamiltonian"], where=f"{where}, hamiltonian")
     scales: dict[int, float] = {}
     found = []
-    for number, relative, shifts, largest_polyad in part["isotopologues"]:
+    for number, relative, shifts, largest_polyad, largest_step in part["isotopologues"]:
         ladder = _Ladder(hamiltonian, shifts)
         for index, system in enumerate(part["system"]):
+            if system["step"] > largest_step:
+                continue
             moments = read_terms(system["moments"], vector=True, where=f"{where}, moments {index + 1}")
             for polyad, largest_j in enumerate(system["largest_j"][: largest_polyad + 1]):
                 columns = ladder.transitions(moments, polyad + system["step"], polyad, largest_j)
                 # the first isotopologue comes first and its ground state sets the scale
                 scale = scales.setdefault(index, system["sum_cm"] / columns["intensity"].sum())
                 columns["intensity"] *= scale * relative
-                found.append(_as_lines(columns, part, hitran_number, number))
+                names = (f"P{polyad + system['step']}", f"P{polyad}")
+                found.append(_as_lines(columns, part, hitran_number, number, names))
     return Lines.join(found)
 
 
@@ -344,12 +350,11 @@ def _columns(
     wavenumber = energy_up[index_up] - energy_low[index_low]
     keep = wavenumber > 0
     index_up, index_low, wavenumber = index_up[keep], index_low[keep], wavenumber[keep]
-    scale = C2_CM_K / REFERENCE_TEMPERATURE_K
-    population = np.exp(-scale * energy_low[index_low]) * -np.expm1(-scale * wavenumber)
+    radiation = relative_intensity(wavenumber, energy_low[index_low])
     weight = _SPIN_WEIGHTS[species_low] * (2 * lower[1] + 1)
     return {
         "wavenumber": wavenumber,
-        "intensity": weight * wavenumber * population * amplitude.ravel()[keep] ** 2,
+        "intensity": weight * radiation * amplitude.ravel()[keep] ** 2,
         "lower_energy": energy_low[index_low],
         "j": np.full(wavenumber.size, lower[1]),
         "e_species": np.full(wavenumber.size, species_low == "E"),
@@ -366,9 +371,20 @@ def _local_labels(j: int, species: str, count: int) -> NDArray[np.str_]:
 
 
 def _as_lines(
-    columns: Mapping[str, NDArray[Any]], part: Mapping[str, Any], hitran_number: int, isotopologue: int
+    columns: Mapping[str, NDArray[Any]],
+    part: Mapping[str, Any],
+    hitran_number: int,
+    isotopologue: int,
+    names: tuple[str, str],
 ) -> Lines:
-    strong = columns["intensity"] >= float(part["cut_cm"])
+    strong = worth_keeping(
+        hitran_number,
+        isotopologue,
+        columns["wavenumber"],
+        columns["intensity"],
+        columns["lower_energy"],
+        float(part["weakest_cm"]),
+    )
     column = {name: value[strong] for name, value in columns.items()}
     nodes = np.asarray(part["widths"], dtype=np.float64).T
     others, e_lines, own, exponent = (np.interp(column["j"], nodes[0], row) for row in nodes[1:])
@@ -381,6 +397,8 @@ def _as_lines(
         air_width_per_cm_atm=np.where(column["e_species"], e_lines, others),
         self_width_per_cm_atm=own,
         temperature_exponent=exponent,
+        upper_global=names[0].rjust(15),
+        lower_global=names[1].rjust(15),
         upper_local=column["upper_local"],
         lower_local=column["lower_local"],
         upper_weight=column["upper_weight"],
