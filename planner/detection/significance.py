@@ -24,6 +24,8 @@ __all__ = ["Measurement", "one_sided_probability", "one_sided_sigma", "target_sn
 
 _MOST_TRANSITS = 1e7
 """Beyond this many transits a rising curve counts as one that never arrives."""
+_ROUNDING = 1e-13
+"""Variances this small beside the largest are rounding errors of zero."""
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -97,8 +99,8 @@ class Measurement:
         """Best attainable significance, after infinitely many transits; infinite where no floor bounds it."""
         if not self.template_ppm.any():
             return 0.0
-        if np.any(np.diag(self.floor_ppm2) == 0):
-            return np.inf  # bins without a floor average down for ever
+        if np.any(self._modes[0] == 0):
+            return np.inf  # what has no floor averages down for ever
         return self._distance(0.0)
 
     @cached_property
@@ -114,7 +116,8 @@ class Measurement:
         if np.count_nonzero(floor) == np.count_nonzero(variances):
             return variances, columns.T
         variances, vectors = linalg.eigh(floor)
-        return np.maximum(variances, 0.0), vectors.T @ columns.T
+        variances[variances < _ROUNDING * variances[-1]] = 0.0  # a floor common to all bins has a single mode
+        return variances, vectors.T @ columns.T
 
     def _distance(self, white_share: float) -> float:
         """Distance of the template from what the nuisances can imitate, in standard deviations.

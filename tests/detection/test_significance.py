@@ -93,6 +93,13 @@ def test_no_floor_has_no_limit():
     assert measurement(nuisances=2).snr_limit() == np.inf
 
 
+def test_floor_common_to_all_bins_has_no_limit():
+    """A floor that only shifts the whole spectrum leaves differences between bins free of it."""
+    m = replace(measurement(), floor_ppm2=np.full((40, 40), 15.0**2))
+    assert m.snr_limit() == np.inf
+    assert m.snr(1e4) == pytest.approx(slow_snr(m, 1e4), rel=1e-6)
+
+
 @given(st.floats(0.5, 20), st.floats(0, 6))
 @settings(derandomize=True, max_examples=40, deadline=None)
 def test_transits_for_inverts_snr(snr, floor):
