@@ -239,7 +239,7 @@ def test_spin_doublets():
 
 
 def test_widths():
-    """Widths follow the four numbers, J being the larger of both and K_a the upper one."""
+    """Widths follow four numbers, J being the larger of both and K_a the upper one, or six with means of both."""
     lines = lines_of(coupled=[])
     quantum = columns(lines)
     decay = np.exp(-np.maximum(quantum[:, 0], quantum[:, 3]) / 6.0)
@@ -247,6 +247,10 @@ def test_widths():
     np.testing.assert_allclose(lines.air_width_per_cm_atm, 0.07 + 0.02 * decay + 0.01 * k + 0.005 * decay * k)
     np.testing.assert_allclose(lines.self_width_per_cm_atm, 0.3 + 0.1 * decay)
     np.testing.assert_allclose(lines.temperature_exponent, 0.7)
+    j, k = quantum[:, [0, 3]].mean(axis=1), quantum[:, [1, 4]].mean(axis=1)
+    other = lines_of(coupled=[], air_width=[-2.1, -0.06, -0.008, -0.04, -0.04, 0.03])
+    expected = np.exp(-2.1 - 0.06 * j - 0.008 * j**2 - 0.04 * k - 0.04 * k**2 + 0.03 * j * k)
+    np.testing.assert_allclose(other.air_width_per_cm_atm, np.maximum(expected, 0.01))
     assert lines_of(air_width=[-1.0, 0, 0, 0]).air_width_per_cm_atm.max() == pytest.approx(0.01)
 
 

@@ -44,6 +44,7 @@ SECOND_RADIATION_CONSTANT_CM_K = 1.438776877
 """h c / k of the 2019 SI, rounded."""
 _REFERENCE_TEMPERATURE_K = 296.0
 _LEAST_WIDTH_PER_CM_ATM = 0.01
+_LOGARITHMIC_TERMS = 6
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -69,7 +70,9 @@ def asymmetric_lines(part: Mapping[str, Any], hitran_number: int) -> Lines:
         ``spin_weights``, for lower levels whose (K_a, K_c) are even-even, even-odd, odd-even, odd-odd, and
         ``spin_weights_antisymmetric`` for those of the vibrational states in ``antisymmetric_states``;
         ``air_width``, ``self_width`` (1/cm/atm) and ``air_exponent``, four numbers c each, meaning
-        ``c0 + c1 e + c2 k + c3 e k`` with ``e = exp(-J/width_j_scale)``, J the larger of both, ``k = K_a'/10``;
+        ``c0 + c1 e + c2 k + c3 e k`` with ``e = exp(-J/width_j_scale)``, J the larger of both, ``k = K_a'/10``; widths
+        may also be six numbers, ``exp(c0 + c1 J + c2 J^2 + c3 K + c4 K^2 + c5 J K)``, J and K_a then means of both
+        levels; no width is less than 0.01;
 
         ``spin_rotation_per_cm``: e_aa, e_bb, e_cc of a molecule with one unpaired electron, whose lines then come
         as doublets (default: none);
@@ -132,22 +135,16 @@ def _set_lines(band: BandSet, solver: _Solver, part: Mapping[str, Any], hitran_n
     column = _merged(column, float(part.get("merge_per_cm", 0.0)))
     if spin is not None:
         column = _spin_doublets(column)
-    decay, ka = (
-        np.exp(-np.maximum(column["j_upper"], column["j_lower"]) / float(part["width_j_scale"])),
-        column["ka"] / 10.0,
-    )
-    self_width, air_width = (
-        np.maximum(_LEAST_WIDTH_PER_CM_ATM, _four_terms(part[key], decay, ka)) for key in ("self_width", "air_width")
-    )
+    j_scale = float(part["width_j_scale"])
     return Lines.make(
         molecule=hitran_number,
         isotopologue=int(part["isotopologue"]),
         wavenumber_per_cm=column["wavenumber"],
         intensity_cm=column["intensity"],
         lower_energy_per_cm=column["energy"],
-        air_width_per_cm_atm=air_width,
-        self_width_per_cm_atm=self_width,
-        temperature_exponent=_four_terms(part["air_exponent"], decay, ka),
+        air_width_per_cm_atm=_widths(part["air_width"], column, j_scale),
+        self_width_per_cm_atm=_widths(part["self_width"], column, j_scale),
+        temperature_exponent=_four_terms(part["air_exponent"], column, j_scale),
         upper_global=np.array(band.states)[column["state"]],
         lower_global=band.lower,
         upper_local=_labels(band.j_max)[column["upper"]],
@@ -264,6 +261,7 @@ def _columns(
         "j_upper": j_upper,
         "j_lower": j_lower,
         "ka": ka[keep],
+        "ka_lower": group.lower.ka[j_lower, low],
         "state": state[keep],
         "upper": _label_index(group.upper, j_upper, up),
         "lower": _label_index(group.lower, j_lower, low),
@@ -321,9 +319,19 @@ def _labels(j_max: int) -> NDArray[np.str_]:
     return np.array(texts)
 
 
-def _four_terms(numbers: Sequence[float], decay: Floats, ka: Floats) -> Floats:
+def _widths(numbers: Sequence[float], column: Mapping[str, NDArray[Any]], j_scale: float) -> Floats:
+    if len(numbers) == _LOGARITHMIC_TERMS:
+        j, k = 0.5 * (column["j_upper"] + column["j_lower"]), 0.5 * (column["ka"] + column["ka_lower"])
+        widths = np.exp(np.array(numbers) @ np.stack([np.ones_like(j), j, j**2, k, k**2, j * k]))
+    else:
+        widths = _four_terms(numbers, column, j_scale)
+    return np.maximum(_LEAST_WIDTH_PER_CM_ATM, widths)
+
+
+def _four_terms(numbers: Sequence[float], column: Mapping[str, NDArray[Any]], j_scale: float) -> Floats:
     constant, low_j, in_ka, low_j_in_ka = numbers
-    return constant + low_j * decay + in_ka * ka + low_j_in_ka * decay * ka
+    decay, ka = np.exp(-np.maximum(column["j_upper"], column["j_lower"]) / j_scale), column["ka"] / 10.0
+    return np.asarray(constant + low_j * decay + in_ka * ka + low_j_in_ka * decay * ka, dtype=np.float64)
 
 
 def _lower_weights(part: Mapping[str, Any], lower: str) -> Floats:
