@@ -1,0 +1,134 @@
+"""The rooms set up for one scenario, and one case seen through all its modes."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.detection.significance import Measurement
+from planner.scenario.records import Case, Scenario
+from planner.spectroscopy.opacity import Opacities
+from planner.spectroscopy.sources import LineLibrary
+from planner.spectroscopy.store import Store
+from planner.studies.forward import BinnedDepth, ForwardModel
+from planner.studies.nuisances import Direction, directions
+from planner.studies.observe import ModeView, observing_grid, view_modes
+
+__all__ = ["Progress", "Sight", "Workshop", "see"]
+
+Array = NDArray[np.float64]
+Progress = Callable[[str, float], None]
+
+_STRIDE = 4
+"""Differences for nuisance directions use every fourth sample."""
+
+
+class Workshop:
+    """The rooms set up for one scenario: grid, modes, opacities, forward model.
+
+    Parameters
+    ----------
+    scenario : Scenario
+    lines_folder : Path, optional
+        Real line files to lay over the embedded data.
+    samples_per_unit_ln : int, optional
+        Finer sampling than the scenario needs, for tests of convergence.
+    """
+
+    def __init__(
+        self,
+        scenario: Scenario,
+        *,
+        lines_folder: Path | None = None,
+        progress: Progress | None = None,
+        samples_per_unit_ln: int | None = None,
+    ) -> None:
+        self.scenario = scenario
+        self.store = Store()
+        self.library = LineLibrary(self.store, lines_folder)
+        grid = observing_grid(scenario, samples_per_unit_ln)
+        self.views = view_modes(scenario, grid)
+        self.opacities = Opacities(
+            self.library,
+            self.store,
+            grid,
+            air=scenario.air(),
+            wing_per_cm=scenario.atmosphere.line_wing_per_cm,
+            water_continuum=scenario.atmosphere.water_continuum,
+            progress=progress,
+        )
+        self.model = self._on_every(1)
+        self.thin = self._on_every(_STRIDE)
+
+    def _on_every(self, stride: int) -> ForwardModel:
+        """The forward model on every ``stride``-th sample."""
+        index = np.arange(0, self.opacities.grid.count, stride)
+        opacities = self.opacities if stride == 1 else self.opacities.selection(index)
+        return ForwardModel(self.scenario, opacities, [view.means(stride) for view in self.views])
+
+    def line_data(self) -> tuple[str, ...]:
+        """One sentence per source used and per stretch not used, for every gas of the scenario."""
+        atmosphere = self.scenario.atmosphere
+        gases = dict.fromkeys([*(g for c in self.scenario.cases for g in c.gases), *atmosphere.absorbers])
+        gases |= dict.fromkeys(atmosphere.background)
+        sentences: list[str] = []
+        for gas in gases:
+            if self.opacities.has_data(gas):
+                source = self.library.gas(gas)
+                sentences += [*source.provenance, *source.partial]
+        return (*sentences, *self.library.pair_provenance(gases), *self.opacities.broadening_notes)
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Sight:
+    """One case through all modes: the spectrum and everything that judges it."""
+
+    case: Case
+    measurements: tuple[Measurement, ...]
+    """Per mode, usable bins only."""
+    usable: tuple[NDArray[np.bool_], ...]
+    templates_ppm: tuple[Array, ...]
+    """Per mode, all bins; zero where the gas's data do not cover."""
+    spectrum: tuple[BinnedDepth, ...]
+
+
+def see(workshop: Workshop, case: Case) -> Sight:
+    """The spectrum of a case, its template and nuisances, in the bins of every mode."""
+    model, views = workshop.model, workshop.views
+    others = [gas for gas in workshop.scenario.air(case) if gas not in case.gases]
+    spectrum = model.binned(case, shares_of=[*case.gases, *others])
+    null = model.binned(case, shares_of=others, transparent=case.gases)
+    templates = [_template(case, there, absent) for there, absent in zip(spectrum, null, strict=True)]
+    nuisances = directions(workshop.thin, case, null, views)
+    usable = [np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views]
+    return Sight(
+        case=case,
+        measurements=tuple(_measurement(view, templates[i], usable[i], nuisances, i) for i, view in enumerate(views)),
+        usable=tuple(usable),
+        templates_ppm=tuple(templates),
+        spectrum=spectrum,
+    )
+
+
+def _template(case: Case, spectrum: BinnedDepth, null: BinnedDepth) -> Array:
+    """What the searched gases make: for one, its share where its data cover; for a set, all that goes with it."""
+    if len(case.gases) == 1:
+        return spectrum.shares_ppm[case.gases[0]]
+    return spectrum.depth_ppm - null.depth_ppm
+
+
+def _measurement(
+    view: ModeView, template: Array, usable: NDArray[np.bool_], nuisances: list[Direction], mode: int
+) -> Measurement:
+    mine = [d for d in nuisances if np.any(d.per_mode_ppm[mode][usable])]
+    return Measurement(
+        template_ppm=template[usable],
+        white_ppm=view.noise.depth_error_ppm[usable],
+        floor_ppm2=view.floor_ppm2[np.ix_(usable, usable)],
+        nuisances=tuple(d.name for d in mine),
+        directions_ppm=np.array([d.per_mode_ppm[mode][usable] for d in mine]).reshape(len(mine), int(usable.sum())),
+    )
