@@ -10,8 +10,10 @@ complete between them. What falls short is reported as partial and not used, so 
 
 from __future__ import annotations
 
+import difflib
+import json
 import tomllib
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 from pathlib import Path
@@ -28,6 +30,7 @@ __all__ = [
     "COVERAGE_FILE",
     "Declaration",
     "Interval",
+    "format_declarations",
     "inside",
     "measured_coverage",
     "read_declarations",
@@ -38,6 +41,7 @@ __all__ = [
 Interval = tuple[float, float]
 
 COVERAGE_FILE = "coverage.toml"
+_KEYS = ("name", "gas", "range_per_cm", "isotopologues", "edition", "fetched")
 _GAP_PER_CM = 5.0
 _COMPLETE_SHARE = 0.9
 _NEARBY_PER_CM = 50.0
@@ -47,17 +51,33 @@ _EDGE_PER_CM = 0.1  # how far the same line may stand apart in the two lists
 
 @dataclass(frozen=True, kw_only=True)
 class Declaration:
-    """What the user says a file holds completely."""
+    """What a file is said to hold completely, by the user or by the record of a fetch.
+
+    Attributes
+    ----------
+    formula : str
+    isotopologues : tuple of int, or None
+        None for all that the file holds.
+    interval_per_cm : (from, to)
+    edition : str or None
+        Such as ``"HITRAN2020"``; its year decides which of two files is newer.
+    fetched : str or None
+        How the file was fetched: service, day, least abundance. Told to the user, and otherwise not used.
+    """
 
     formula: str
-    isotopologues: tuple[int, ...] | None
-    """None for all that the file holds."""
+    isotopologues: tuple[int, ...] | None = None
     interval_per_cm: Interval
-    edition: str | None
+    edition: str | None = None
+    fetched: str | None = None
 
     @classmethod
     def parse(cls, row: dict[str, Any]) -> Declaration:
         """From one ``[[file]]`` table."""
+        unknown = sorted(set(row) - set(_KEYS))
+        if unknown:
+            near = difflib.get_close_matches(unknown[0], _KEYS, n=1)
+            raise ValueError(f"unknown key {unknown[0]!r}" + (f", did you mean {near[0]!r}?" if near else ""))
         low, high = (float(end) for end in row["range_per_cm"])
         if not 0 <= low < high:
             raise ValueError(f"range_per_cm {low:g} to {high:g} is empty")
@@ -67,6 +87,7 @@ class Declaration:
             isotopologues=None if isotopologues is None else tuple(int(number) for number in isotopologues),
             interval_per_cm=(low, high),
             edition=row.get("edition"),
+            fetched=row.get("fetched"),
         )
 
     def covers(self, formula: str, isotopologue: int) -> bool:
@@ -94,6 +115,20 @@ def read_declarations(path: Path) -> dict[str, list[Declaration]]:
             f'wanted, isotopologues = [1, 2] and edition = "HITRAN2020"; got {error!r}'
         ) from error
     return result
+
+
+def format_declarations(declared: Mapping[str, Sequence[Declaration]]) -> str:
+    """Declarations by file name as `read_declarations` reads them."""
+    text = "# Where the files of this folder are complete.\n"
+    for name, rows in declared.items():
+        for row in rows:
+            low, high = row.interval_per_cm
+            text += f"\n[[file]]\nname = {json.dumps(name)}\ngas = {json.dumps(row.formula)}\n"
+            text += f"range_per_cm = [{low!r}, {high!r}]\n"
+            text += "" if row.isotopologues is None else f"isotopologues = {list(row.isotopologues)}\n"
+            text += "" if row.edition is None else f"edition = {json.dumps(row.edition)}\n"
+            text += "" if row.fetched is None else f"fetched = {json.dumps(row.fetched)}\n"
+    return text
 
 
 def measured_coverage(lines: Lines, embedded: Lines | None) -> tuple[tuple[Interval, ...], list[str]]:

@@ -18,11 +18,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.atmosphere.transmission import GasOpacity, PairOpacity
-from planner.errors import LineDataError
 from planner.spectroscopy.broadening import Broadened, broadened
 from planner.spectroscopy.grid import LogGrid
 from planner.spectroscopy.rayleigh import rayleigh_cross_section
-from planner.spectroscopy.sources import GasSource, LineLibrary
+from planner.spectroscopy.sources import GasSource, LineLibrary, NoDataError
 from planner.spectroscopy.store import Store, digest
 from planner.spectroscopy.watercontinuum import WINDOWS_PER_CM, water_continuum
 
@@ -130,7 +129,7 @@ class Opacities:
         """Whether the gas has lines or bands at all (noble gases and homonuclear ones may have none)."""
         try:
             self._library.gas(formula)
-        except LineDataError:
+        except NoDataError:
             return False
         return True
 

@@ -35,7 +35,11 @@ from planner.spectroscopy.lists.build import (
 from planner.spectroscopy.molecules import Molecule, find_molecule
 from planner.spectroscopy.store import Store, digest
 
-__all__ = ["GasSource", "LineLibrary"]
+__all__ = ["GasSource", "LineLibrary", "NoDataError"]
+
+
+class NoDataError(LineDataError):
+    """A gas for which there are no data at all, neither embedded nor in the folder."""
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -158,7 +162,15 @@ class LineLibrary:
         return tuple(s for pair, files in self._pairs.items() if present.issuperset(pair) for s in files.sentences)
 
     def _gas(self, name: str) -> GasSource:
-        """The data of one gas, by formula or common name."""
+        """The data of one gas, by formula or common name.
+
+        Raises
+        ------
+        NoDataError
+            If there are none.
+        LineDataError
+            If the name is not known or files conflict.
+        """
         molecule = find_molecule(name)
         constants = read_constants(molecule.formula) if molecule.formula in embedded_formulas() else None
         embedded = build_lines(constants, self._store) if constants else None
@@ -167,7 +179,7 @@ class LineLibrary:
         partial += unused
         if constants is None and not segments and measured is None:
             reasons = f" ({'; '.join(partial)})" if partial else ""
-            raise LineDataError(
+            raise NoDataError(
                 f"{name}: no embedded data and none in the line folder{reasons}; embedded gases are "
                 + ", ".join(embedded_formulas())
             )
