@@ -34,13 +34,18 @@ class BinMeans:
     wavelength_um : (wavenumber,)
         Descending, as the wavenumbers ascend.
     bins : Bins
+
+    Attributes
+    ----------
+    start, stop : (bin,)
+        The samples of each bin are ``start`` up to, not including, ``stop``.
     """
 
     def __init__(self, weights: Array, wavelength_um: Array, bins: Bins) -> None:
         ascending = wavelength_um[::-1]
         count = wavelength_um.size
-        self._stop = count - np.searchsorted(ascending, bins.from_um, side="left")
-        self._start = count - np.searchsorted(ascending, bins.to_um, side="left")
+        self.stop = count - np.searchsorted(ascending, bins.from_um, side="left")
+        self.start = count - np.searchsorted(ascending, bins.to_um, side="left")
         self._detector = bins.detector
         self._weights = weights
         self._total = self._sum(np.ones(count))
@@ -55,7 +60,7 @@ class BinMeans:
             mine = self._detector == detector
             running = np.cumsum(samples * self._weights[detector], axis=-1)
             running = np.concatenate([np.zeros((*samples.shape[:-1], 1)), running], axis=-1)
-            result[..., mine] = running[..., self._stop[mine]] - running[..., self._start[mine]]
+            result[..., mine] = running[..., self.stop[mine]] - running[..., self.start[mine]]
         return result
 
 

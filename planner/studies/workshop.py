@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,13 +19,24 @@ from planner.studies.forward import BinnedDepth, ForwardModel
 from planner.studies.nuisances import Direction, directions
 from planner.studies.observe import ModeView, observing_grid, view_modes
 
-__all__ = ["Progress", "Sight", "Workshop", "see"]
+__all__ = ["Progress", "Setting", "Sight", "Workshop", "see"]
 
 Array = NDArray[np.float64]
 Progress = Callable[[str, float], None]
 
 _STRIDE = 4
 """Differences for nuisance directions use every fourth sample."""
+
+
+class Setting(Protocol):
+    """What it takes to see a case: the modes, the forward model, and one of the same bins for differences."""
+
+    @property
+    def views(self) -> Sequence[ModeView]: ...
+    @property
+    def model(self) -> ForwardModel: ...
+    @property
+    def thin(self) -> ForwardModel: ...
 
 
 class Workshop:
@@ -96,14 +108,14 @@ class Sight:
     spectrum: tuple[BinnedDepth, ...]
 
 
-def see(workshop: Workshop, case: Case) -> Sight:
+def see(setting: Setting, case: Case) -> Sight:
     """The spectrum of a case, its template and nuisances, in the bins of every mode."""
-    model, views = workshop.model, workshop.views
-    others = [gas for gas in workshop.scenario.air(case) if gas not in case.gases]
+    model, views = setting.model, setting.views
+    others = [gas for gas in model.scenario.air(case) if gas not in case.gases]
     spectrum = model.binned(case, shares_of=[*case.gases, *others])
     null = model.binned(case, shares_of=others, transparent=case.gases)
     templates = [_template(case, there, absent) for there, absent in zip(spectrum, null, strict=True)]
-    nuisances = directions(workshop.thin, case, null, views)
+    nuisances = directions(setting.thin, case, null, views)
     usable = [np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views]
     return Sight(
         case=case,
