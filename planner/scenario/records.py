@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from pathlib import Path
 from typing import Annotated
@@ -39,6 +40,8 @@ _DISTANCE_TOLERANCE = 0.2
 beyond any published error and below the slip of a unit or a digit."""
 _DURATION_FACTOR = 2.0
 """Largest ratio between a stated transit duration and the circular one; eccentricity 0.6 reaches 2."""
+_YEARS = 5.0
+"""Years of a mission over which transits are counted; visibility is not considered."""
 
 
 class Scenario(Record):
@@ -115,6 +118,13 @@ class Scenario(Record):
         if self.goal.given_out_of_transit_h is not None:
             return self.goal.given_out_of_transit_h
         return max(self.transit_duration_h, 1.0)
+
+    @property
+    def transits_on_offer(self) -> int:
+        """Transits that can be asked for: as stated, else all that the orbit has in five years."""
+        if self.goal.transits_available is not None:
+            return self.goal.transits_available
+        return math.floor(_YEARS * 365.25 / self.planet.period_d)
 
     def equilibrium_temperature_k(self, albedo: float = 0.0) -> float:
         """Temperature in balance with the starlight, heat spread over the whole planet."""

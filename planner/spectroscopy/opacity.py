@@ -25,7 +25,7 @@ from planner.spectroscopy.sources import GasSource, LineLibrary, NoDataError
 from planner.spectroscopy.store import Store, digest
 from planner.spectroscopy.watercontinuum import WINDOWS_PER_CM, water_continuum
 
-__all__ = ["PRESSURES_BAR", "TEMPERATURE_STEP", "Opacities", "temperature_nodes"]
+__all__ = ["LEAST_SELF_FRACTION", "PRESSURES_BAR", "TEMPERATURE_STEP", "Opacities", "temperature_nodes"]
 
 PRESSURES_BAR: NDArray[np.float64] = np.concatenate([[1e-8], np.logspace(-6, 1, 22)])
 TEMPERATURE_STEP = 1.12
@@ -33,7 +33,7 @@ _LOWEST_K = 100.0
 _NOTHING = np.float32(-60.0)
 """log10 of a cross-section that is zero."""
 
-_LEAST_SELF_FRACTION = 0.05
+LEAST_SELF_FRACTION = 0.05
 """Below this mixing ratio self-broadening changes no width by more than a few per cent and is left out."""
 
 Progress = Callable[[str, float], None]
@@ -95,19 +95,24 @@ class Opacities:
         self._gas = lru_cache(maxsize=64)(self._build_gas)
         self._pairs = lru_cache(maxsize=16)(self._build_pairs)
 
-    def selection(self, index: NDArray[np.intp]) -> Opacities:
-        """The same opacities on some samples of the grid only; tables are shared, not built again.
+    def selection(self, index: NDArray[np.intp], *, own_tables: bool = False) -> Opacities:
+        """The same opacities on some samples of the grid only.
 
         Parameters
         ----------
         index : (selected,)
-            Positions on the grid.
+            Positions on the grid, ascending.
+        own_tables : bool
+            Lines are summed on these samples alone, which is the cheaper the fewer they are. Otherwise the tables
+            of the whole grid are built and shared.
         """
         chosen = copy(self)
         chosen.wavenumber_per_cm = self.wavenumber_per_cm[index]
         whole = self._node
         chosen._node = lru_cache(maxsize=64)(
-            lambda formula, temperature_k, share: np.ascontiguousarray(whole(formula, temperature_k, share)[:, index])
+            chosen._sum_node
+            if own_tables
+            else lambda formula, node_k, share: np.ascontiguousarray(whole(formula, node_k, share)[:, index])
         )
         chosen._remember()
         return chosen
@@ -117,7 +122,7 @@ class Opacities:
 
         The mixing ratio enters through self-broadening alone, in steps of a tenth.
         """
-        share = round(mixing_ratio, 1) if mixing_ratio >= _LEAST_SELF_FRACTION else 0.0
+        share = round(mixing_ratio, 1) if mixing_ratio >= LEAST_SELF_FRACTION else 0.0
         return self._gas(formula, temperature_k, share)
 
     @property
@@ -197,25 +202,44 @@ class Opacities:
 
     def _build_node(self, formula: str, temperature_k: float, self_fraction: float) -> NDArray[np.float32]:
         """Table on the whole grid at a temperature node, shape ``(pressure, wavenumber)``."""
-        source = self._library.gas(formula)
-        assert source.lines is not None
-        if formula not in self._broadened:
-            self._broadened[formula] = broadened(formula, source.lines, source.widths, self._air)
+        source, mixed = self._mixed(formula)
         table = np.full((PRESSURES_BAR.size, self.grid.count), _NOTHING, dtype=np.float32)
         blocks = self.grid.blocks()
         for number, block in enumerate(blocks):
             self._progress(f"{formula} at {temperature_k:.0f} K", number / len(blocks))
-            values = self._block(source, self._broadened[formula], block, temperature_k, self_fraction)
+            place = [block.first, block.count, block.samples_per_unit_ln]
+            values = self._sums(source, mixed, block.wavenumber_per_cm, place, temperature_k, self_fraction)
             if values is not None:
                 mine, theirs = self.grid.part_of(block)
                 table[:, mine] = values[:, theirs]
         return table
 
-    def _block(
-        self, source: GasSource, mixed: Broadened, block: LogGrid, temperature_k: float, self_fraction: float
+    def _sum_node(self, formula: str, temperature_k: float, self_fraction: float) -> NDArray[np.float32]:
+        """The same on the samples of a selection alone, not by way of the whole grid."""
+        source, mixed = self._mixed(formula)
+        wavenumber = np.ascontiguousarray(self.wavenumber_per_cm)
+        values = self._sums(source, mixed, wavenumber, digest(wavenumber.tobytes()), temperature_k, self_fraction)
+        return np.full((PRESSURES_BAR.size, wavenumber.size), _NOTHING, np.float32) if values is None else values
+
+    def _mixed(self, formula: str) -> tuple[GasSource, Broadened]:
+        """The data of a gas with lines, and its lines as the air broadens them."""
+        source = self._library.gas(formula)
+        assert source.lines is not None
+        if formula not in self._broadened:
+            self._broadened[formula] = broadened(formula, source.lines, source.widths, self._air)
+        return source, self._broadened[formula]
+
+    def _sums(
+        self,
+        source: GasSource,
+        mixed: Broadened,
+        wavenumber: NDArray[np.float64],
+        place: list[int] | str,
+        temperature_k: float,
+        self_fraction: float,
     ) -> NDArray[np.float32] | None:
+        """Table on some wavenumbers, from the store if it is there; ``place`` names them. None where no line is."""
         lines = mixed.lines
-        wavenumber = block.wavenumber_per_cm
         reach = self._wing_per_cm + 1.0
         first, last = np.searchsorted(lines.wavenumber_per_cm, [wavenumber[0] - reach, wavenumber[-1] + reach])
         if first == last:
@@ -229,7 +253,7 @@ class Opacities:
             "broadening": mixed.key,
             "wing_per_cm": self._wing_per_cm,
             "lowered_at_the_cut": int(lowered.sum()),
-            "block": [block.first, block.count, block.samples_per_unit_ln],
+            "block": place,
             "pressures_bar": PRESSURES_BAR.tolist(),
         }
 
