@@ -102,7 +102,18 @@ cli.add_command(gases)
 @_LINES
 @click.option("--json", "json_file", type=_FILE, metavar="FILE", help="Write the result as JSON; - for stdout.")
 @click.option("--out", type=_FILE, metavar="DIR", help="Write tables, spectra and figure into this folder.")
-def plan(scenario: Path, lines_folder: Path | None, json_file: Path | None, out: Path | None) -> None:
+@click.option(
+    "--simulate",
+    "simulated",
+    type=click.IntRange(min=100),
+    is_flag=False,
+    flag_value=2000,
+    metavar="[N]",
+    help="Try the stated rates on N simulated observations of each search; last on the line, N may be left out: 2000.",
+)
+def plan(
+    scenario: Path, lines_folder: Path | None, json_file: Path | None, out: Path | None, simulated: int | None
+) -> None:
     """How many transits for each gas, with each mode."""
     from planner.report.files import check_writable, make_folder
     from planner.report.jsonio import plan_json, write_plan_json
@@ -114,7 +125,7 @@ def plan(scenario: Path, lines_folder: Path | None, json_file: Path | None, out:
         check_writable(json_file)
     if out is not None:
         make_folder(out)
-    result = _planned(read, lines_folder)
+    result = _planned(read, lines_folder, simulated)
     if to_stdout:
         click.echo(plan_json(result), nl=False)
     else:
@@ -264,11 +275,11 @@ def check(against: Path | None) -> None:
     _show_records(study(against))
 
 
-def _planned(scenario: Scenario, lines_folder: Path | None) -> PlanResult:
+def _planned(scenario: Scenario, lines_folder: Path | None, simulated: int | None = None) -> PlanResult:
     from planner.studies.plan import plan as study
 
     with _progress() as progress:
-        return study(scenario, lines_folder=lines_folder, progress=progress)
+        return study(scenario, lines_folder=lines_folder, progress=progress, simulated=simulated)
 
 
 def _write_all(result: PlanResult, folder: Path) -> None:

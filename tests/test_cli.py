@@ -39,8 +39,8 @@ def calls(result, monkeypatch):
     """Studies that answer at once, and the list of what they were asked."""
     asked = []
 
-    def plan(scenario, *, lines_folder=None, progress=None):
-        asked.append(("plan", scenario.title, lines_folder))
+    def plan(scenario, *, lines_folder=None, progress=None, simulated=None):
+        asked.append(("plan", scenario.title, lines_folder, *([simulated] if simulated else [])))
         return result
 
     def spectrum(scenario, *, lines_folder=None, progress=None):
@@ -147,6 +147,14 @@ def test_plan_writes_everything(folder, calls, result):
     assert len(json.loads(Path("r.json").read_text())["rows"]) == len(result.rows)
     assert Table.read("deep/out/spectra.ecsv").meta["invented"] is True
     assert "wrote deep/out/plan.json" in outcome.stderr
+
+
+@pytest.mark.parametrize(("words", "draws"), [(["--simulate"], 2000), (["--simulate", "500"], 500)])
+def test_plan_simulates_when_asked(folder, calls, words, draws):
+    """The number of simulated observations may be left out."""
+    assert run("plan", "a.toml", *words).exit_code == 0
+    assert calls == [("plan", "My search", None, draws)]
+    assert run("plan", "a.toml", "--simulate", "3").exit_code == 2
 
 
 def test_plan_json_on_stdout(folder, calls, result):

@@ -41,6 +41,12 @@ the six above with ``_all_known``       the same with everything but the gas kno
 ``uncovered``                           list of ``gas``, ``from_um``, ``to_um``: stretches without data
 ``saturated``                           list of ``from_um``, ``to_um``
 ``cautions``                            list of sentences
+``simulation``                          null, or what simulated observations gave beside what is stated: ``transits``
+                                        of one observation, ``draws`` with the gas and as many without,
+                                        ``power_stated``, ``power_found``, ``power_error`` (standard error),
+                                        ``false_alarm_sigma`` and ``false_alarms_stated``, ``_found``, ``_error`` at it,
+                                        ``sigma_anywhere``: local significance that counts as the threshold when the
+                                        place of the feature was not chosen in advance
 ======================================  ==============================================================================
 """
 
@@ -48,6 +54,7 @@ from __future__ import annotations
 
 import json
 import math
+from dataclasses import asdict
 from pathlib import Path
 from typing import Any
 
@@ -104,6 +111,7 @@ def _row(row: PlanRow) -> dict[str, Any]:
         "uncovered": [{"gas": gas, "from_um": a, "to_um": b} for gas, a, b in row.uncovered_um],
         "saturated": [{"from_um": a, "to_um": b} for a, b in row.saturated_um],
         "cautions": list(row.cautions),
+        "simulation": asdict(row.simulation) if row.simulation else None,
     }
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from math import ceil, floor
 from pathlib import Path
 
@@ -10,11 +11,13 @@ from numpy.typing import NDArray
 
 from planner import __version__
 from planner.detection.significance import Measurement, target_snr
+from planner.instrument.binning import Bins
 from planner.scenario.records import Case, Scenario
 from planner.star.flux import star_cautions
 from planner.studies.nuisances import prior_widths
 from planner.studies.observe import ModeView, source_of_light
 from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, Verdict
+from planner.studies.simulation import simulate_search
 from planner.studies.workshop import Progress, Sight, Workshop, see
 
 __all__ = ["CAUTIONS", "Sight", "Workshop", "plan", "see"]
@@ -24,6 +27,8 @@ CAUTIONS = (
     "submitting.",
     "A detected gas is not detected life or industry: most gases have other sources too.",
 )
+SEED = 1
+"""Of simulated observations."""
 _NO_SIGNAL_PPM = 0.1
 """A share that nowhere exceeds this counts as no band in range."""
 _MISSION_YEARS = 5.0
@@ -32,8 +37,24 @@ _CONFUSION_TRANSITS = 100.0
 """Transits at which confusion is quoted where even perfect knowledge does not suffice."""
 
 
-def plan(scenario: Scenario, *, lines_folder: Path | None = None, progress: Progress | None = None) -> PlanResult:
+def plan(
+    scenario: Scenario,
+    *,
+    lines_folder: Path | None = None,
+    progress: Progress | None = None,
+    simulated: int | None = None,
+) -> PlanResult:
     """Transits, hours and verdict for every case and mode of a scenario.
+
+    Parameters
+    ----------
+    scenario : Scenario
+    lines_folder : Path, optional
+        Real line files to lay over the embedded data.
+    progress : callable, optional
+        Called with a text and the share done.
+    simulated : int, optional
+        Observations to simulate of each search, to try the rates that are stated.
 
     Raises
     ------
@@ -46,7 +67,8 @@ def plan(scenario: Scenario, *, lines_folder: Path | None = None, progress: Prog
     for case in scenario.cases:
         sight = see(workshop, case)
         for index in range(len(workshop.views)):
-            rows.append(_row(workshop, sight, index))
+            row = _row(workshop, sight, index)
+            rows.append(_tried(row, workshop, sight, index, simulated) if simulated else row)
             spectra.append(binned_spectrum(workshop, sight, index))
     return PlanResult(
         title=scenario.title,
@@ -87,6 +109,23 @@ def _row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
         saturated_um=view.noise.saturated_um,
         cautions=(),
     )
+
+
+def _tried(row: PlanRow, workshop: Workshop, sight: Sight, index: int, draws: int) -> PlanRow:
+    """The row with its rates tried on simulated observations, the same ones every time."""
+    if not row.best_bands or row.verdict in (Verdict.NO_BAND, Verdict.SATURATED):
+        return row
+    bins, usable = workshop.views[index].bins, sight.usable[index]
+    simulation = simulate_search(
+        sight.measurements[index],
+        Bins(detector=bins.detector[usable], from_um=bins.from_um[usable], to_um=bins.to_um[usable]),
+        row.best_bands[0],
+        transits=row.marginalised.transits_required or _transits_available(workshop.scenario),
+        threshold_sigma=workshop.scenario.goal.threshold_sigma,
+        draws=draws,
+        rng=np.random.default_rng(SEED),
+    )
+    return replace(row, simulation=simulation)
 
 
 def _counts(measurement: Measurement, target: float, scenario: Scenario, view: ModeView) -> Counts:

@@ -9,7 +9,7 @@ from enum import StrEnum
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["BandShare", "BinnedSpectrum", "Counts", "PlanResult", "PlanRow", "Verdict"]
+__all__ = ["BandShare", "BinnedSpectrum", "Counts", "PlanResult", "PlanRow", "Simulation", "Verdict"]
 
 
 class Verdict(StrEnum):
@@ -49,6 +49,26 @@ class Counts:
 
 
 @dataclass(frozen=True, kw_only=True)
+class Simulation:
+    """Rates among simulated observations beside those stated; errors are standard errors of what was found."""
+
+    transits: int
+    """Transits of one observation: those required, else those available."""
+    draws: int
+    power_stated: float
+    """At this whole number of transits; a little above the power asked for, which the unrounded number gives."""
+    power_found: float
+    power_error: float
+    false_alarm_sigma: float
+    false_alarms_stated: float
+    false_alarms_found: float
+    false_alarms_error: float
+    sigma_anywhere: float
+    """Local significance that counts as the threshold when a feature as wide as the best band was searched for over
+    the whole mode."""
+
+
+@dataclass(frozen=True, kw_only=True)
 class PlanRow:
     """One gas at one mixing ratio with one mode."""
 
@@ -66,6 +86,7 @@ class PlanRow:
     """Stretches (gas, from, to) that a gas's data do not cover."""
     saturated_um: tuple[tuple[float, float], ...]
     cautions: tuple[str, ...]
+    simulation: Simulation | None = None
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)

@@ -31,6 +31,7 @@ ROW_KEYS = {
     "uncovered",
     "saturated",
     "cautions",
+    "simulation",
 }
 
 
