@@ -122,8 +122,8 @@ class ForwardModel:
     ) -> tuple[BinnedDepth, ...]:
         """Transit depth of one case in the bins of every mode."""
         spectrum = self.depth(case, change, shares_of=shares_of, transparent=transparent)
-        shares = {gas: self._where_covered(gas, spectrum.depth - spectrum.depth_without[gas]) for gas in shares_of}
-        slopes = {gas: self._where_covered(gas, spectrum.derivative[gas]) for gas in shares_of}
+        shares = {gas: self.where_covered(gas, spectrum.depth - spectrum.depth_without[gas]) for gas in shares_of}
+        slopes = {gas: self.where_covered(gas, spectrum.derivative[gas]) for gas in shares_of}
         return tuple(
             BinnedDepth(
                 depth_ppm=mean(spectrum.depth) * _PPM,
@@ -133,5 +133,6 @@ class ForwardModel:
             for mean in self._means
         )
 
-    def _where_covered(self, gas: str, samples: Array) -> Array:
+    def where_covered(self, gas: str, samples: Array) -> Array:
+        """The samples ``(..., wavenumber)``, zero where the gas's data do not cover."""
         return np.where(self.opacities.covered(gas), samples, 0.0) if self.opacities.has_data(gas) else samples
