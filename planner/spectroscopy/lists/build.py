@@ -16,6 +16,7 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+from threadpoolctl import threadpool_limits
 
 from planner.errors import LineDataError
 from planner.resources import data_folder
@@ -146,7 +147,8 @@ def _generate(constants: Constants) -> Lines:
     number = constants.molecule.hitran_number
     if number is None:
         raise LineDataError(f"{constants.molecule.formula}: lines need a HITRAN molecule number")
-    return Lines.join([_function(_LINE_KINDS[part["kind"]])(part, number) for part in constants.line_parts])
+    with threadpool_limits(1):  # thousands of small matrices: waiting for a second thread costs more than it gives
+        return Lines.join([_function(_LINE_KINDS[part["kind"]])(part, number) for part in constants.line_parts])
 
 
 def _function(address: str) -> Callable[..., Any]:
