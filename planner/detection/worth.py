@@ -70,7 +70,7 @@ class Response:
         return np.asarray(np.exp(curve(np.clip(ln_mixing_ratio, first, last)) + below))
 
     def mixing_ratio_for(self, snr: float) -> float | None:
-        """The lowest mixing ratio whose expected significance reaches ``snr``; None if none up to the last point does."""
+        """The lowest mixing ratio whose expected significance reaches ``snr``; None if none does up to the last."""
         fine = np.linspace(self.ln_mixing_ratio[0], self.ln_mixing_ratio[-1], 2001)
         reached = np.flatnonzero(self(fine) >= snr)
         if not reached.size:

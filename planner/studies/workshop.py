@@ -19,7 +19,7 @@ from planner.studies.forward import BinnedDepth, ForwardModel
 from planner.studies.nuisances import Direction, directions
 from planner.studies.observe import ModeView, observing_grid, view_modes
 
-__all__ = ["Progress", "Setting", "Sight", "Workshop", "see"]
+__all__ = ["Progress", "Setting", "Sight", "Workshop", "measurement_of", "see"]
 
 Array = NDArray[np.float64]
 Progress = Callable[[str, float], None]
@@ -119,7 +119,7 @@ def see(setting: Setting, case: Case) -> Sight:
     usable = [np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views]
     return Sight(
         case=case,
-        measurements=tuple(_measurement(view, templates[i], usable[i], nuisances, i) for i, view in enumerate(views)),
+        measurements=tuple(measurement_of(view, templates[i], usable[i], nuisances, i) for i, view in enumerate(views)),
         usable=tuple(usable),
         templates_ppm=tuple(templates),
         spectrum=spectrum,
@@ -133,9 +133,10 @@ def _template(case: Case, spectrum: BinnedDepth, null: BinnedDepth) -> Array:
     return spectrum.depth_ppm - null.depth_ppm
 
 
-def _measurement(
+def measurement_of(
     view: ModeView, template: Array, usable: NDArray[np.bool_], nuisances: list[Direction], mode: int
 ) -> Measurement:
+    """What one mode measures of a template ``(bin,)``, in its usable bins."""
     mine = [d for d in nuisances if np.any(d.per_mode_ppm[mode][usable])]
     return Measurement(
         template_ppm=template[usable],
