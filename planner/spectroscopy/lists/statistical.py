@@ -90,16 +90,24 @@ def relative_strengths(count: int, weakest: float) -> NDArray[np.float64]:
 
 
 def with_satellites(
-    lines: Lines, *, fraction: float, count: int, spread_per_cm: float, seed: int, decades: float = 3.0
+    lines: Lines,
+    *,
+    fraction: float,
+    count: int,
+    spread_per_cm: float,
+    seed: int,
+    decades: float = 3.0,
+    raised_per_cm: float = 300.0,
 ) -> Lines:
-    """The lines, each of which hands a share of its intensity to weak companions nearby.
+    """The lines, each of which hands a share of its intensity to companions nearby.
 
-    A stand-in for lines that the constants do not give: forbidden, resonance-borrowed and unlisted hot ones.
+    A stand-in for what the constants do not give: forbidden, resonance-borrowed and unlisted hot lines, or a
+    splitting by internal rotation. Local quantum labels are dropped.
 
     Parameters
     ----------
     lines : Lines
-        What is to be thickened.
+        What is to be thickened, of one molecule.
     fraction : float
         Share of each line's intensity that its companions carry together; the sum stays.
     count : int
@@ -109,8 +117,10 @@ def with_satellites(
     seed : int
         The same seed gives the same lines.
     decades : float
-        Their intensities are even in the logarithm over so many decades. Lower energies are raised at random, by
-        an exponential law with mean 300 1/cm, because weak companions come from higher states.
+        Their intensities are even in the logarithm over so many decades.
+    raised_per_cm : float
+        Their lower energies are raised at random by an exponential law with this mean: weak companions tend to come
+        from higher states.
     """
     if fraction <= 0 or count < 1 or not len(lines):
         return lines
@@ -119,7 +129,7 @@ def with_satellites(
     share = 10.0 ** (-decades * rng.random(shape))
     share *= fraction / share.sum(axis=0)
     position = lines.wavenumber_per_cm + rng.normal(0.0, spread_per_cm, shape)
-    raised = lines.lower_energy_per_cm + rng.exponential(300.0, shape)
+    raised = lines.lower_energy_per_cm + raised_per_cm * rng.exponential(1.0, shape)
     # a displacement may not carry a line past zero; mirrored there it keeps its intensity
     position = np.abs(position)
 

@@ -192,7 +192,8 @@ def symmetric_lines(part: Mapping[str, Any], hitran_number: int) -> Lines:
         ``coupled``, tables with ``a1``, ``e``, ``lower`` (names of levels), ``coupling`` [c, cK], ``doubling`` q,
         ``moments`` [ratio of squares, sign], ``sum_cm``, ``herman_wallis`` [h1, h2] and ``hot``;
 
-        ``satellites``, arguments of `planner.spectroscopy.lists.statistical.with_satellites`.
+        ``satellites``, tables of arguments of `planner.spectroscopy.lists.statistical.with_satellites`, applied
+        one after the other.
     hitran_number : int
         Molecule number that the lines carry.
 
@@ -384,8 +385,8 @@ def _as_lines(found: Sequence[_Transitions], part: Mapping[str, Any], hitran_num
             lower_global=band.lower.rjust(15)[:15],
             lower_local=[f"{j:3d}{k:3d}" for j, k in zip(band.j, band.k, strict=True)],
         )
-        if "satellites" in part:
-            lines = with_satellites(lines, **part["satellites"])
+        for satellites in part.get("satellites", []):
+            lines = with_satellites(lines, **satellites)
         keep = worth_keeping(
             hitran_number,
             isotopologue,
@@ -394,5 +395,12 @@ def _as_lines(found: Sequence[_Transitions], part: Mapping[str, Any], hitran_num
             lines.lower_energy_per_cm,
             weakest,
         )
-        sets.append(lines.where(keep))
+        lines = lines.where(keep)
+        if len(lines):
+            sets.append(_with_sum(lines, float(band.intensity.sum())))
     return Lines.join(sets)
+
+
+def _with_sum(lines: Lines, total: float) -> Lines:
+    """The lines scaled to a sum. Those near the cut are unsaturated, so they can carry what the dropped ones had."""
+    return replace(lines, intensity_cm=lines.intensity_cm * (total / lines.intensity_cm.sum()))
