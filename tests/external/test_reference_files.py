@@ -138,9 +138,9 @@ def test_noise_below_zero_in_two_columns(reference_folder, name, formula, counte
 
 
 def test_two_columns_import(reference_folder, store, tmp_path):
-    """A table of two columns becomes a .xsc file of a gas that has no embedded data."""
+    """A table of two columns becomes a .xsc file that stands for its gas."""
     source = reference_folder / "xsc" / "CH3Br_NISTquantIR_575-3975_296K_1atm.txt.gz"
-    meaning = ColumnMeaning(formula="CH3Br", x_unit="1/cm", y_unit="cm2", temperature_k=296.0, pressure_torr=760.0)
+    meaning = ColumnMeaning(formula="CH3Br", x_unit="1/cm", y_unit="cm2", temperature_k=296.0, pressure_bar=1.01325)
     report = import_files([source], tmp_path / "lines", store, columns=meaning)
     (written,) = report.written
     assert written.name == "CH3Br_NISTquantIR_575-3975_296K_1atm.xsc"

@@ -14,7 +14,7 @@ from planner.spectroscopy.files.describe import descriptions, formulas_in
 from planner.spectroscopy.files.disk import make_folder, read_whole, write_whole
 from planner.spectroscopy.files.folder import DataFiles, LineFile, kind_of, read_files
 from planner.spectroscopy.files.widths import widths_path
-from planner.spectroscopy.files.xsc import CrossSectionTable, format_xsc, parse_xsc
+from planner.spectroscopy.files.xsc import BAR_PER_TORR, CrossSectionTable, format_xsc, parse_xsc
 from planner.spectroscopy.sources import LineLibrary, NoDataError
 from planner.spectroscopy.store import Store
 
@@ -29,7 +29,7 @@ class ColumnMeaning:
     x_unit: str
     y_unit: str
     temperature_k: float
-    pressure_torr: float
+    pressure_bar: float
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -149,7 +149,7 @@ def _converted(path: Path, columns: ColumnMeaning) -> tuple[CrossSectionTable, s
         values,
         formula=columns.formula,
         temperature_k=columns.temperature_k,
-        pressure_torr=columns.pressure_torr,
+        pressure_torr=columns.pressure_bar / BAR_PER_TORR,
         where=f"{where}:1",
     )
     (written,) = parse_xsc(format_xsc(table), where)

@@ -10,7 +10,6 @@ from __future__ import annotations
 import contextlib
 import http.client
 import io
-import math
 import sys
 import tempfile
 import time
@@ -172,6 +171,7 @@ def _hapi_confined(address: str, timeout_s: float) -> Iterator[tuple[Path, _Watc
             yield Path(folder), watch
         finally:
             downloading.urllib2 = urllib.request
+            watch.close()
             hapi.VARIABLES.update(before)
             table = hapi.LOCAL_TABLE_CACHE.pop(_TABLE, {})
             if table.get("filehandler") is not None:
@@ -185,6 +185,7 @@ class _Watch:
         self.failure: Exception | None = None
         self.complete = False
         self._timeout_s = timeout_s
+        self._response: Any = None
 
     def __getattr__(self, name: str) -> Any:
         return getattr(urllib.request, name)
@@ -203,11 +204,15 @@ class _Watch:
             piece: bytes = self._response.read(size)
             self._received += len(piece)
             if not piece:
-                self._response.close()
                 if self._expected is not None and self._received < int(self._expected):
                     raise _Failure(f"the answer ended early, after {self._received} of {self._expected} bytes")
                 self.complete = True
         return piece
+
+    def close(self) -> None:
+        """Let go of the connection, whatever came."""
+        if self._response is not None:
+            self._response.close()
 
     @contextmanager
     def _noted(self) -> Iterator[None]:
@@ -244,4 +249,4 @@ def _of_status(error: urllib.error.HTTPError) -> Exception:
     retry = str(error.headers.get("Retry-After") or "0")
     wait_s = float(retry) if retry.isdigit() else 0.0
     again = error.code == 429 or error.code >= 500
-    return _Failure(f"answered {error.code} {error.reason}", again=again, wait_s=wait_s if math.isfinite(wait_s) else 0)
+    return _Failure(f"answered {error.code} {error.reason}", again=again, wait_s=wait_s)

@@ -39,13 +39,13 @@ def inbox(tmp_path):
 
 def test_all_kinds_at_once(inbox, tmp_path, store, make_xsc, make_cia):
     """Line records (mixed gases, gzip), cross-sections and collision blocks; every file is described and written."""
-    write_par(inbox / "mixed.par.gz", Lines.join([lines_of(40), lines_of(54)]))
+    write_par(inbox / "mixed.par.gz", Lines.join([lines_of(43), lines_of(52)]))
     (inbox / "freon.xsc").write_text(make_xsc(values=np.r_[np.full(30, 1e-19), -1e-21]))
     (inbox / "pair.cia").write_text(make_cia())
     report = import_files([inbox], tmp_path / "lines", store)
     said = "\n".join(report.files)
     assert (
-        "mixed.par.gz: 800 line records from 1000.00 to 1100.00 per cm, gases and isotopologues CH3Br 1, CH3I 1" in said
+        "mixed.par.gz: 800 line records from 1000.00 to 1100.00 per cm, gases and isotopologues C4H2 1, GeH4 1" in said
     )
     assert "freon.xsc:1: cross-sections of CCl3F at 293 K and 7.5 Torr from 830.00 to 860.00 per cm, 31 points" in said
     assert "1 negative and 0 zero values of 31" in said
@@ -55,7 +55,7 @@ def test_all_kinds_at_once(inbox, tmp_path, store, make_xsc, make_cia):
 
 def test_the_report_says_what_is_not_used(inbox, tmp_path, store):
     """Without an embedded list and without a promise nothing is used, and the way out is named."""
-    write_par(inbox / "a.par", lines_of(40))
+    write_par(inbox / "a.par", lines_of(43))
     report = import_files([inbox / "a.par"], tmp_path / "lines", store)
     assert report.used == ()
     assert "no embedded list to judge it by; declare it in coverage.toml" in report.unused[0]
@@ -63,31 +63,31 @@ def test_the_report_says_what_is_not_used(inbox, tmp_path, store):
 
 def test_a_promise_is_written_and_believed(inbox, tmp_path, store):
     """What the user declares goes into coverage.toml and stands from then on; older declarations stay."""
-    write_par(inbox / "a.par", lines_of(40))
-    write_par(inbox / "b.par", lines_of(54))
+    write_par(inbox / "a.par", lines_of(43))
+    write_par(inbox / "b.par", lines_of(52))
     folder = tmp_path / "lines"
     import_files(
         [inbox / "a.par"], folder, store, promise=Promise(interval_per_cm=(990.0, 1110.0), edition="HITRAN2020")
     )
     report = import_files([inbox / "b.par"], folder, store, promise=Promise(interval_per_cm=(1000.0, 1100.0)))
-    assert report.used == ("CH3I: isotopologue 1 over 1000-1100 per cm from b.par (edition not named, "
+    assert report.used == ("GeH4: isotopologue 1 over 1000-1100 per cm from b.par (edition not named, "
                            + report.used[0][-9:],)  # fmt: skip
-    source = LineLibrary(store, folder).gas("CH3Br")
+    source = LineLibrary(store, folder).gas("C4H2")
     assert source.covers_per_cm == ((990.0, 1110.0),)
     assert "from a.par (HITRAN2020" in source.provenance[0]
 
 
 def test_a_folder_can_declare_its_own_files(inbox, store):
     """Importing a file into the folder it lies in only writes the declaration."""
-    write_par(inbox / "a.par", lines_of(40))
+    write_par(inbox / "a.par", lines_of(43))
     import_files([inbox / "a.par"], inbox, store, promise=Promise(interval_per_cm=(990.0, 1110.0), isotopologues=(1,)))
     assert sorted(path.name for path in inbox.iterdir()) == ["a.par", "coverage.toml"]
-    assert LineLibrary(store, inbox).gas("CH3Br").covers_per_cm == ((990.0, 1110.0),)
+    assert LineLibrary(store, inbox).gas("C4H2").covers_per_cm == ((990.0, 1110.0),)
 
 
 def test_importing_twice_changes_nothing(inbox, tmp_path, store):
     """The same file again is the same folder."""
-    write_par(inbox / "a.par.gz", lines_of(40))
+    write_par(inbox / "a.par.gz", lines_of(43))
     first = import_files([inbox], tmp_path / "lines", store)
     before = (tmp_path / "lines" / "a.par.gz").read_bytes()
     assert import_files([inbox], tmp_path / "lines", store) == first
@@ -97,16 +97,16 @@ def test_importing_twice_changes_nothing(inbox, tmp_path, store):
 def test_two_columns(inbox, tmp_path, store):
     """A table of text becomes a .xsc file; the note says how."""
     (inbox / "so2.txt").write_text("\n".join(f"{nu:.2f} {1e-20:.4e}" for nu in np.arange(1000.0, 1010.0, 0.5)))
-    meaning = ColumnMeaning(formula="CH3Br", x_unit="1/cm", y_unit="cm2", temperature_k=296.0, pressure_torr=0.0)
+    meaning = ColumnMeaning(formula="C4H2", x_unit="1/cm", y_unit="cm2", temperature_k=296.0, pressure_bar=0.0)
     report = import_files([inbox / "so2.txt"], tmp_path / "lines", store, columns=meaning)
     assert report.files[-1] == "so2.txt: two columns in 1/cm and cm2, evenly spaced as it stands, kept to four digits"
     assert [path.name for path in (tmp_path / "lines").iterdir()] == ["so2.xsc"]
-    assert LineLibrary(store, tmp_path / "lines").gas("CH3Br").covers_per_cm == ((1000.0, 1009.5),)
+    assert LineLibrary(store, tmp_path / "lines").gas("C4H2").covers_per_cm == ((1000.0, 1009.5),)
 
 
 def test_records_that_stand_twice_are_counted(inbox, tmp_path, store):
     """Published files hold exact duplicates; they are counted, not removed."""
-    lines = lines_of(40, count=10)
+    lines = lines_of(43, count=10)
     write_par(inbox / "a.par", Lines.join([lines, lines.where(np.array([3, 4]))]))
     assert "; 2 records stand twice" in import_files([inbox], tmp_path / "lines", store).files[0]
 
@@ -123,7 +123,7 @@ def test_records_that_stand_twice_are_counted(inbox, tmp_path, store):
 )
 def test_nothing_is_written_when_a_file_is_refused(inbox, tmp_path, store, name, content, message):
     """One bad file among good ones, and the folder stays as it was."""
-    write_par(inbox / "good.par", lines_of(40))
+    write_par(inbox / "good.par", lines_of(43))
     (inbox / name).write_bytes(content)
     with pytest.raises(LineDataError, match=message):
         import_files([inbox / "good.par", inbox / name], tmp_path / "lines", store)
@@ -133,8 +133,8 @@ def test_nothing_is_written_when_a_file_is_refused(inbox, tmp_path, store, name,
 def test_a_file_of_the_same_name_is_not_overwritten(inbox, tmp_path, store):
     """Another file under a name that is taken is refused."""
     (tmp_path / "lines").mkdir()
-    write_par(tmp_path / "lines" / "a.par", lines_of(54))
-    write_par(inbox / "a.par", lines_of(40))
+    write_par(tmp_path / "lines" / "a.par", lines_of(52))
+    write_par(inbox / "a.par", lines_of(43))
     with pytest.raises(LineDataError, match="is there already and differs"):
         import_files([inbox / "a.par"], tmp_path / "lines", store)
 
@@ -151,7 +151,7 @@ def test_conflicts_with_what_is_there_are_refused(inbox, tmp_path, store, make_x
 
 def test_a_file_where_the_folder_should_be(inbox, tmp_path, store):
     """A folder that cannot be made is one clear error."""
-    write_par(inbox / "a.par", lines_of(40))
+    write_par(inbox / "a.par", lines_of(43))
     (tmp_path / "lines").write_text("in the way")
     with pytest.raises(OutputError, match="the folder cannot be made"):
         import_files([inbox / "a.par"], tmp_path / "lines", store)
