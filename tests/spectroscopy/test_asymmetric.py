@@ -258,6 +258,9 @@ def test_widths():
     ("changes", "message"),
     [
         ({"colour": "blue"}, "unknown keys \\['colour'\\]"),
+        ({"air_width": [0.1, 0.0]}, "air_width: expected 4 or 6 finite numbers, got \\[0.1, 0.0\\]"),
+        ({"spin_weights": [1, 3, 3, float("nan")]}, "spin_weights: expected 4 finite numbers"),
+        ({"antisymmetric_states": ["010"]}, "antisymmetric_states needs spin_weights_antisymmetric"),
         ({"states": {"000": [0.0, 1.0]}}, "state '000': expected \\[origin, A, B, C"),
         ({"states": {"000": [0.0, 3.0, 2.0, 1.0, "missing", ""]}}, "state '000': .*KeyError"),
         ({"distortion": {"none": [0.0] * 14, "some": []}}, "more than 13 numbers"),

@@ -29,6 +29,14 @@ _OPTIONAL = {
     "bands",
     "coupled",
 }
+_ROW_LENGTHS = {
+    "spin_weights": (4,),
+    "spin_weights_antisymmetric": (4,),
+    "air_width": (4, 6),
+    "self_width": (4, 6),
+    "air_exponent": (4,),
+    "spin_rotation_per_cm": (3,),
+}
 _COUPLED_KEYS = {"states", "lower", "sum_cm", "j_max", "couplings", "moments", "keep", "source"}
 
 
@@ -68,6 +76,7 @@ def parse_asymmetric_part(part: Mapping[str, Any], where: str) -> tuple[dict[str
         If a key is missing or unknown, a row has the wrong shape, or a state is not defined.
     """
     _check_keys(part, _NEEDED, _OPTIONAL, where)
+    _check_rows(part, where)
     rotors = _rotors(part, where)
     sets = [*_single_bands(part, where), *_coupled_sets(part, where)]
     for band in sets:
@@ -82,6 +91,17 @@ def _check_keys(table: Mapping[str, Any], needed: set[str], optional: set[str], 
     if missing or unknown:
         allowed = ", ".join(sorted(needed | optional))
         raise LineDataError(f"{where}: missing keys {missing}, unknown keys {unknown}; allowed: {allowed}")
+
+
+def _check_rows(part: Mapping[str, Any], where: str) -> None:
+    """Rows of fixed length hold that many finite numbers."""
+    if part.get("antisymmetric_states") and "spin_weights_antisymmetric" not in part:
+        raise LineDataError(f"{where}: antisymmetric_states needs spin_weights_antisymmetric beside it")
+    for name, lengths in _ROW_LENGTHS.items():
+        row = part.get(name)
+        if row is not None and (len(row) not in lengths or not np.all(np.isfinite(np.array(row, dtype=float)))):
+            allowed = " or ".join(str(length) for length in lengths)
+            raise LineDataError(f"{where}: {name}: expected {allowed} finite numbers, got {row!r}")
 
 
 def _rotors(part: Mapping[str, Any], where: str) -> dict[str, RotorConstants]:
