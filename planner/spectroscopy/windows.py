@@ -2,24 +2,23 @@
 
 from __future__ import annotations
 
-from itertools import pairwise
-
 import numpy as np
 from numpy.typing import NDArray
 
 from planner.spectroscopy.coverage import Interval
 
-__all__ = ["band_windows"]
+__all__ = ["band_windows", "runs"]
 
 _GAP_PER_CM = 100.0
 """Bands nearer than this share a window; lines of HF lie 40 apart."""
-_MARGIN_PER_CM = 5.0
 _WIDEST_PER_CM = 1000.0
 _CELL_PER_CM = 10.0
 _SMOOTHING_CELLS = 5
 
 
-def band_windows(wavenumber_per_cm: NDArray[np.float64], weight: NDArray[np.float64], reach: Interval) -> list[Interval]:
+def band_windows(
+    wavenumber_per_cm: NDArray[np.float64], weight: NDArray[np.float64], reach: Interval
+) -> list[Interval]:
     """Band regions of a spectrum within an interval, none wider than 1000 per cm.
 
     Parameters
@@ -34,21 +33,18 @@ def band_windows(wavenumber_per_cm: NDArray[np.float64], weight: NDArray[np.floa
     Returns
     -------
     list of (from, to)
-        Runs without a gap over 100 per cm, 5 per cm added at either end inside the reach. A run that is too wide is
-        cut in its middle half where least is absorbed, again and again.
+        From the first to the last point of each run without a gap over 100 per cm. A run that is too wide is cut in
+        its middle half where least is absorbed, again and again.
     """
     inside = (wavenumber_per_cm >= reach[0]) & (wavenumber_per_cm <= reach[1])
     position, weight = wavenumber_per_cm[inside], weight[inside]
-    if not position.size:
-        return []
-    breaks = [0, *(np.flatnonzero(np.diff(position) > _GAP_PER_CM) + 1).tolist(), position.size]
-    windows: list[Interval] = []
-    for first, last in pairwise(breaks):
-        low = max(reach[0], float(position[first]) - _MARGIN_PER_CM)
-        high = min(reach[1], float(position[last - 1]) + _MARGIN_PER_CM)
-        if high > low:
-            windows += _narrowed((low, high), position[first:last], weight[first:last])
-    return windows
+    return [window for run in runs(position) for window in _narrowed(run, position, weight)]
+
+
+def runs(position_per_cm: NDArray[np.float64]) -> list[Interval]:
+    """First and last point of each run of ascending points without a gap over 100 per cm; single points are left out."""
+    pieces = np.split(position_per_cm, np.flatnonzero(np.diff(position_per_cm) > _GAP_PER_CM) + 1)
+    return [(float(piece[0]), float(piece[-1])) for piece in pieces if piece.size > 1 and piece[-1] > piece[0]]
 
 
 def _narrowed(window: Interval, position: NDArray[np.float64], weight: NDArray[np.float64]) -> list[Interval]:
