@@ -18,7 +18,15 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.files.disk import read_whole
-from planner.spectroscopy.files.rows import fixed_count, fixed_number, numbers_of, printable_rows, remarks_on, shapes_of
+from planner.spectroscopy.files.rows import (
+    fixed_count,
+    fixed_number,
+    header_at_odds,
+    numbers_of,
+    printable_rows,
+    shapes_of,
+    signs_of,
+)
 from planner.spectroscopy.files.spread import spread_negatives
 from planner.spectroscopy.molecules import find_molecule
 
@@ -74,8 +82,9 @@ class CollisionTable:
         return spread_negatives(self.coefficient_cm5, np.gradient(self.wavenumber_per_cm))
 
     def remarks(self) -> tuple[str, ...]:
-        """What a reader of the values should know: negative and zero values, a header at odds with them."""
-        return remarks_on(self.coefficient_cm5, self.largest_stated_cm5, "cm5")
+        """What a reader of the values should know: those at or below zero, a header at odds with them."""
+        at_odds = header_at_odds(self.coefficient_cm5, self.largest_stated_cm5, "cm5")
+        return (*signs_of([self.coefficient_cm5]), *at_odds)
 
 
 def read_cia(path: Path) -> tuple[CollisionTable, ...]:

@@ -9,6 +9,7 @@ import numpy as np
 
 from planner.spectroscopy.files.cia import CollisionTable
 from planner.spectroscopy.files.folder import DataFiles, LineFile
+from planner.spectroscopy.files.rows import header_at_odds, signs_of
 from planner.spectroscopy.files.xsc import CrossSectionTable
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.molecules import MOLECULES
@@ -29,14 +30,14 @@ def formulas_in(lines: Lines) -> list[str]:
 
 
 def descriptions(files: DataFiles) -> tuple[str, ...]:
-    """One sentence per file, table or pair: what it holds, and what a reader should know."""
-    by_file: dict[str, list[CollisionTable]] = {}
+    """One sentence per file of lines, table, and pair of a file: what it holds, and what a reader should know."""
+    pairs: dict[tuple[str, tuple[str, str]], list[CollisionTable]] = {}
     for block in files.blocks:
-        by_file.setdefault(block.where.rpartition(":")[0], []).append(block)
+        pairs.setdefault((block.where.rpartition(":")[0], block.pair), []).append(block)
     return (
         *(_of_lines(file) for file in files.line_files),
         *(_of_table(table) for table in files.tables),
-        *(_of_blocks(Path(path).name, blocks) for path, blocks in by_file.items()),
+        *(_of_blocks(Path(path).name, blocks) for (path, _), blocks in pairs.items()),
     )
 
 
@@ -71,14 +72,18 @@ def _of_blocks(name: str, blocks: Sequence[CollisionTable]) -> str:
     kelvin = [block.temperature_k for block in blocks]
     low = min(block.wavenumber_per_cm[0] for block in blocks)
     high = max(block.wavenumber_per_cm[-1] for block in blocks)
-    remarks = [f"{block.temperature_k:g} K from line {block.where.rpartition(':')[2]}: {remark}"
-               for block in blocks for remark in block.remarks()]  # fmt: skip
+    at_odds = [
+        f"block at line {block.where.rpartition(':')[2]}: {remark}"
+        for block in blocks
+        for remark in header_at_odds(block.coefficient_cm5, block.largest_stated_cm5, "cm5")
+    ]
     unusable = () if blocks[0].usable else ("not used: no scenario can name this pair",)
     return "; ".join(
         (
             f"{name}: {len(blocks)} blocks of {'-'.join(blocks[0].pair)} pairs at {min(kelvin):g} to {max(kelvin):g} K "
             f"from {low:.2f} to {high:.2f} per cm",
             *unusable,
-            *remarks,
+            *signs_of([block.coefficient_cm5 for block in blocks]),
+            *at_odds,
         )
     )

@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.coverage import Interval, subtract, union
+from planner.spectroscopy.files.rows import signs_of
 from planner.spectroscopy.files.spread import SPREAD_RULE
 from planner.spectroscopy.files.xsc import BAR_PER_TORR, CrossSectionTable
 from planner.spectroscopy.store import digest
@@ -196,13 +197,16 @@ def _sentence(members: Sequence[CrossSectionTable], free: Sequence[Interval]) ->
     stretches = ", ".join(f"{low:.6g}-{high:.6g}" for low, high in free)
     files = sorted({Path(t.where.rpartition(":")[0]).name for t in members})
     names = ", ".join(files) if len(files) <= 3 else f"{len(files)} files, {files[0]} to {files[-1]}"
-    negative = sum(int(np.sum(t.cross_section_cm2 < 0)) for t in members)
-    zero = sum(int(np.sum(t.cross_section_cm2 == 0)) for t in members)
-    points = sum(t.cross_section_cm2.size for t in members)
-    remark = f"; {negative} negative and {zero} zero values of {points} in the record" if negative or zero else ""
-    return (
-        f"{members[0].formula}: measured cross-sections over {stretches} per cm from {names}, in place of all embedded "
-        f"data there, joined without blending; {_states(members)}{remark}" + (f"; {SPREAD_RULE}" if negative else "")
+    signs = signs_of([t.cross_section_cm2 for t in members])
+    rule = (SPREAD_RULE,) if any(np.any(t.cross_section_cm2 < 0) for t in members) else ()
+    return "; ".join(
+        (
+            f"{members[0].formula}: measured cross-sections over {stretches} per cm from {names}, in place of all "
+            "embedded data there, joined without blending",
+            _states(members),
+            *signs,
+            *rule,
+        )
     )
 
 

@@ -21,6 +21,7 @@ from numpy.typing import NDArray
 from planner.errors import LineDataError
 from planner.spectroscopy.coverage import Interval, subtract, union
 from planner.spectroscopy.files.cia import CollisionTable
+from planner.spectroscopy.files.rows import signs_of
 from planner.spectroscopy.files.spread import SPREAD_RULE
 
 __all__ = ["MeasuredPair"]
@@ -160,15 +161,22 @@ def _one_per_temperature(blocks: Sequence[CollisionTable]) -> tuple[CollisionTab
 
 
 def _sentence(blocks: Sequence[CollisionTable], free: Sequence[Interval], file: str) -> str:
-    stretches = ", ".join(f"{low:.6g}-{high:.6g}" for low, high in free)
-    kelvin = [block.temperature_k for block in blocks]
-    negative = sum(int(np.sum(block.coefficient_cm5 < 0)) for block in blocks)
-    zero = sum(int(np.sum(block.coefficient_cm5 == 0)) for block in blocks)
-    points = sum(block.coefficient_cm5.size for block in blocks)
-    remark = f"; {negative} negative and {zero} zero values of {points} in the record" if negative or zero else ""
-    return (
-        f"{'-'.join(blocks[0].pair)} pairs: measured or computed coefficients over {stretches} per cm from "
-        f"{Path(file).name}, {len(blocks)} blocks from {min(kelvin):g} to {max(kelvin):g} K, in place of the embedded "
-        f"ones from {min(kelvin) / _HELD_WITHIN:.0f} to {max(kelvin) * _HELD_WITHIN:.0f} K (nearest block held beyond "
-        f"its own temperatures), joined without blending{remark}" + (f"; {SPREAD_RULE}" if negative else "")
+    signs = signs_of([block.coefficient_cm5 for block in blocks])
+    rule = (SPREAD_RULE,) if any(np.any(block.coefficient_cm5 < 0) for block in blocks) else ()
+    return "; ".join(
+        (
+            f"{'-'.join(blocks[0].pair)} pairs: coefficients of {Path(file).name} over "
+            + ", ".join(_stretch(blocks, interval) for interval in free)
+            + f", in place of the embedded ones up to a factor {_HELD_WITHIN:g} beyond these temperatures, the nearest "
+            "block held; joined without blending",
+            *signs,
+            *rule,
+        )
     )
+
+
+def _stretch(blocks: Sequence[CollisionTable], interval: Interval) -> str:
+    """An interval and the temperatures of the blocks in it."""
+    low, high = interval
+    kelvin = [block.temperature_k for block in blocks if _reach(block)[0] < high and _reach(block)[1] > low]
+    return f"{low:.6g}-{high:.6g} per cm ({len(kelvin)} blocks, {min(kelvin):g}-{max(kelvin):g} K)"

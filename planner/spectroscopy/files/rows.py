@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 
-__all__ = ["fixed_count", "fixed_number", "numbers_of", "printable_rows", "remarks_on", "shapes_of"]
+__all__ = ["fixed_count", "fixed_number", "header_at_odds", "numbers_of", "printable_rows", "shapes_of", "signs_of"]
 
 _ALL_DIGITS_ALIKE = bytes.maketrans(b"123456789e", b"000000000E")
 _NUMBER = re.compile(r" *[+-]?(?:\d+\.?\d*|\.\d+)(?:[EeDd][+-]?\d{1,3})? *")
@@ -98,13 +98,16 @@ def fixed_count(row: bytes, start: int, stop: int, place: str) -> int:
     return int(written)
 
 
-def remarks_on(values: NDArray[np.float64], largest_stated: float, unit: str) -> tuple[str, ...]:
-    """What a reader of measured values should know: those at or below zero, a header at odds with them."""
-    found = []
-    negative, zero = np.sum(values < 0), np.sum(values == 0)
-    if negative or zero:
-        found.append(f"{negative} negative and {zero} zero values of {values.size}")
+def signs_of(arrays: Sequence[NDArray[np.float64]]) -> tuple[str, ...]:
+    """How many measured values are below zero or zero, in a sentence; none if all are above."""
+    values = np.concatenate(arrays)
+    negative, zero, count = np.sum(values < 0), np.sum(values == 0), values.size
+    return (f"{negative} negative and {zero} zero values of {count}",) if negative or zero else ()
+
+
+def header_at_odds(values: NDArray[np.float64], largest_stated: float, unit: str) -> tuple[str, ...]:
+    """Says so if the largest value is not what the header states; that occurs in published files."""
     largest = float(values.max())
-    if abs(largest - largest_stated) > _LARGEST_OFF * abs(largest):
-        found.append(f"the header gives {largest_stated:.3e} {unit} as the largest value, it is {largest:.3e}")
-    return tuple(found)
+    if abs(largest - largest_stated) <= _LARGEST_OFF * abs(largest):
+        return ()
+    return (f"the header gives {largest_stated:.3e} {unit} as the largest value, it is {largest:.3e}",)

@@ -237,7 +237,7 @@ class _Watch:
             return _Failure(f"the answer ended early, after {self._received + len(reason.partial)} bytes")
         if isinstance(reason, ConnectionRefusedError):
             return _Failure("cannot be reached: connection refused")
-        return _Failure(f"cannot be reached: {reason}" if str(reason) else f"cannot be reached: {reason!r}")
+        return _Failure(f"cannot be reached: {getattr(reason, 'strerror', None) or str(reason) or repr(reason)}")
 
 
 def _of_status(error: urllib.error.HTTPError) -> Exception:

@@ -17,7 +17,15 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.files.disk import read_whole
-from planner.spectroscopy.files.rows import fixed_count, fixed_number, numbers_of, printable_rows, remarks_on, shapes_of
+from planner.spectroscopy.files.rows import (
+    fixed_count,
+    fixed_number,
+    header_at_odds,
+    numbers_of,
+    printable_rows,
+    shapes_of,
+    signs_of,
+)
 from planner.spectroscopy.files.spread import spread_negatives
 from planner.spectroscopy.molecules import find_molecule
 
@@ -84,8 +92,9 @@ class CrossSectionTable:
         return spread_negatives(self.cross_section_cm2, np.ones(self.cross_section_cm2.size))
 
     def remarks(self) -> tuple[str, ...]:
-        """What a reader of the values should know: negative and zero values, a header at odds with them."""
-        return remarks_on(self.cross_section_cm2, self.largest_stated_cm2, "cm2")
+        """What a reader of the values should know: those at or below zero, a header at odds with them."""
+        at_odds = header_at_odds(self.cross_section_cm2, self.largest_stated_cm2, "cm2")
+        return (*signs_of([self.cross_section_cm2]), *at_odds)
 
 
 def read_xsc(path: Path) -> tuple[CrossSectionTable, ...]:
