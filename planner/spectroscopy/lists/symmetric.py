@@ -27,6 +27,7 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.lines import Lines
+from planner.spectroscopy.lists.angular import clebsch_gordan
 from planner.spectroscopy.lists.intensities import (
     C2_CM_K,
     REFERENCE_TEMPERATURE_K,
@@ -34,124 +35,15 @@ from planner.spectroscopy.lists.intensities import (
     worth_keeping,
 )
 from planner.spectroscopy.lists.statistical import with_satellites
+from planner.spectroscopy.lists.symmetric_levels import CoupledPair, TopLevel, pair_blocks, read_levels
 
-__all__ = ["CoupledPair", "TopLevel", "clebsch_gordan", "pair_blocks", "symmetric_lines"]
+__all__ = ["symmetric_lines"]
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
 _NARROWEST = 0.01
 """No line is narrower (1/cm/atm): the fitted forms may fall below zero far beyond the J and K they were fitted to."""
-
-
-@dataclass(frozen=True, kw_only=True, eq=False)
-class TopLevel:
-    """Constants of a vibrational level of a symmetric top, in 1/cm.
-
-    Attributes
-    ----------
-    name : str
-    weights : str
-        Key of the nuclear spin weights.
-    constants : (10,) float64
-        G, B, C-B, DJ, DJK, DK, HJ, HJK, HKJ, HK.
-    l_terms : (3,) float64
-        C zeta, etaJ, etaK; zero in levels that are not degenerate.
-    """
-
-    name: str
-    weights: str
-    constants: Floats
-    l_terms: Floats
-
-    def energy_per_cm(self, j: Any, k: Any, vibrational: Any = 0) -> Floats:
-        """Energy of the levels J, k, l, broadcast against each other."""
-        origin, b, c_b, dj, djk, dk, hj, hjk, hkj, hk = self.constants
-        c_zeta, eta_j, eta_k = self.l_terms
-        x, square, product = np.asarray(j * (j + 1.0)), np.asarray(k * 1.0) ** 2, k * vibrational
-        rigid = origin + b * x + c_b * square
-        distortion = -dj * x**2 - djk * x * square - dk * square**2
-        sextic = hj * x**3 + hjk * x**2 * square + hkj * x * square**2 + hk * square**3
-        return np.asarray(rigid + distortion + sextic + (eta_j * x + eta_k * square - 2.0 * c_zeta) * product)
-
-    def shifted(self, energy_per_cm: float) -> TopLevel:
-        """The same level with another origin."""
-        constants = self.constants.copy()
-        constants[0] += energy_per_cm
-        return replace(self, constants=constants)
-
-
-def clebsch_gordan(j: Any, k: Any, j_step: int, k_step: int) -> Floats:
-    """Coefficients (J k; 1 k_step | J+j_step k+k_step), zero where the upper level does not exist.
-
-    E.g. Varshalovich et al. 1988, Quantum theory of angular momentum, table 8.2; Condon-Shortley phases.
-    """
-    j, m = np.broadcast_arrays(np.asarray(j, dtype=np.float64), np.asarray(k, dtype=np.float64) + k_step)
-    upper = j + j_step
-    if j_step == 1:
-        square = {1: (j + m) * (j + m + 1) / 2, 0: (j - m + 1) * (j + m + 1), -1: (j - m) * (j - m + 1) / 2}
-        norm, sign = (2 * j + 1) * (j + 1), np.ones_like(m)
-    elif j_step == 0:
-        square = {1: (j + m) * (j - m + 1) / 2, 0: m**2, -1: (j - m) * (j + m + 1) / 2}
-        norm, sign = j * (j + 1), {1: -np.ones_like(m), 0: np.sign(m), -1: np.ones_like(m)}[k_step]
-    else:
-        square = {1: (j - m) * (j - m + 1) / 2, 0: (j - m) * (j + m), -1: (j + m + 1) * (j + m) / 2}
-        norm, sign = j * (2 * j + 1), (-1.0 if k_step == 0 else 1.0) * np.ones_like(m)
-    exists = (np.abs(m) <= upper) & (np.abs(k) <= j) & (norm > 0)
-    value = np.where(exists, square[k_step], 0.0) / np.where(exists, norm, 1.0)
-    return np.asarray(sign * np.sqrt(value))
-
-
-def pair_blocks(pair: CoupledPair, j: Ints, g: Ints) -> tuple[Floats, Floats]:
-    """Levels of a coupled pair, one block of three for each J and ``g = k - l``.
-
-    The force mixes the A1 state with k = g, and the E state with k = g+1, l = +1 and with k = g-1, l = -1. With
-    ``r(k) = sqrt(J(J+1) - k(k+1))`` its elements are (e.g. Papousek and Aliev 1982, Molecular
-    vibrational-rotational spectra, chapter 17; phases as in the amplitudes of `symmetric_lines`) ::
-
-        <E, +|H|A> = (c + cK (2g+1)) r(g)
-        <E, -|H|A> = -(c - cK (2g-1)) r(g-1)
-        <E, +|H|E, -> = (q/2) r(g) r(g-1)
-
-    Returns
-    -------
-    energies, shape ``(block, 3)``, and vectors, shape ``(block, 3, 3)``
-        Rows of a vector: A, E with l = +1, E with l = -1.
-    """
-    c, c_k = pair.coupling
-    x = j * (j + 1.0)
-    up, down = (np.sqrt(np.maximum(0.0, x - g * (g + s))) for s in (1.0, -1.0))
-    blocks = np.zeros((j.size, 3, 3))
-    blocks[:, 0, 0] = pair.a1.energy_per_cm(j, g)
-    blocks[:, 1, 1] = pair.e.energy_per_cm(j, g + 1, 1)
-    blocks[:, 2, 2] = pair.e.energy_per_cm(j, g - 1, -1)
-    blocks[:, 1, 0] = (c + c_k * (2 * g + 1)) * up
-    blocks[:, 2, 0] = -(c - c_k * (2 * g - 1)) * down
-    blocks[:, 2, 1] = pair.doubling / 2 * up * down
-    energies, vectors = np.linalg.eigh(blocks)  # reads the lower triangle
-    return energies, vectors
-
-
-@dataclass(frozen=True, kw_only=True, eq=False)
-class CoupledPair:
-    """An A1 and an E state mixed by Coriolis force.
-
-    Attributes
-    ----------
-    a1, e : TopLevel
-    coupling : (2,) float64
-        c and cK, in 1/cm.
-    doubling : float
-        q of the E state, in 1/cm.
-    moments : (2,) float64
-        Squared moment of the A1 state over half that of the E state, and the sign +1 or -1 between them.
-    """
-
-    a1: TopLevel
-    e: TopLevel
-    coupling: Floats
-    doubling: float
-    moments: Floats
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -202,7 +94,7 @@ def symmetric_lines(part: Mapping[str, Any], hitran_number: int) -> Lines:
     LineDataError
         If a row has another shape or names a level that is not there.
     """
-    levels = _read_levels(part["levels"], hitran_number)
+    levels = read_levels(part["levels"], hitran_number)
     largest_j, largest_k = part["largest"]
     grid = _quantum_numbers(largest_j, largest_k)
     found: list[_Transitions] = []
@@ -217,29 +109,6 @@ def _quantum_numbers(largest_j: int, largest_k: int) -> tuple[Ints, Ints]:
     """All J and K = 0..min(J, largest K) of lower levels, flat."""
     j, k = np.indices((largest_j + 1, largest_k + 1)).reshape(2, -1)
     return j[k <= j], k[k <= j]
-
-
-def _read_levels(rows: Sequence[Sequence[Any]], hitran_number: int) -> dict[str, TopLevel]:
-    levels: dict[str, TopLevel] = {}
-    ground: Sequence[float] = ()
-    for row in rows:
-        try:
-            name, weights, constants, l_terms, _source = row
-        except ValueError as error:
-            raise LineDataError(f"symmetric top {hitran_number}: level {row}: expected five columns") from error
-        if len(constants) not in (3, 6, 10):
-            raise LineDataError(
-                f"symmetric top {hitran_number}: level {name!r}: expected 3, 6 or 10 constants, got {len(constants)}"
-            )
-        ground = ground or constants
-        filled = np.zeros(10)
-        filled[: len(constants)] = constants
-        if len(constants) == 3:
-            filled[3:6] = ground[3:6]
-        extra = np.zeros(3)
-        extra[: len(l_terms)] = l_terms
-        levels[name] = TopLevel(name=name, weights=weights, constants=filled, l_terms=extra)
-    return levels
 
 
 def _level(levels: Mapping[str, TopLevel], name: str) -> TopLevel:
