@@ -27,6 +27,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -166,37 +167,38 @@ def row_weights(chords: Chords, pressures_bar: NDArray[np.float64]) -> NDArray[n
     the caller's to refuse.
     """
     ln_rows = np.log(pressures_bar)
-    chord_count, rows = chords.ln_pressure_bar.shape[0], ln_rows.size
+    shares = _row_shares(tuple(ln_rows))
+    chord_count, cells, width = chords.ln_pressure_bar.shape[0], *shares.shape[:2]
     ln_p = np.clip(chords.ln_pressure_bar, ln_rows[0], ln_rows[-1])
-    first, share = _interpolation(ln_rows, ln_p)
-    weights = np.zeros(chord_count * rows)
-    origin = np.arange(chord_count)[:, None] * rows + first
-    for j in range(share.shape[-1]):
-        contribution = (chords.column_per_cm2 * share[..., j]).ravel()
-        weights += np.bincount((origin + j).ravel(), contribution, minlength=weights.size)
-    return weights.reshape(chord_count, rows)
+    cell = np.clip(np.searchsorted(ln_rows, ln_p, side="right") - 1, 0, cells - 1)
+    # columns are summed within the cells first, one sum for each function of the basis: far fewer numbers to spread
+    place = (np.arange(chord_count)[:, None] * cells + cell).ravel()
+    sums = np.empty((chord_count * cells, width))
+    for b, function in enumerate(_basis(ln_p - ln_rows[cell], width)):
+        sums[:, b] = np.bincount(place, (chords.column_per_cm2 * function).ravel(), minlength=len(sums))
+    return sums.reshape(chord_count, -1) @ shares.reshape(cells * width, -1)
 
 
-def _interpolation(
-    ln_rows: NDArray[np.float64], ln_p: NDArray[np.float64]
-) -> tuple[NDArray[np.int64], NDArray[np.float64]]:
-    """First row used at each point, ``(chord, point)``, and the shares of it and the next, ``(chord, point, 4)``."""
-    rows = ln_rows.size
-    width = min(4, rows)
-    cell = np.clip(np.searchsorted(ln_rows, ln_p, side="right") - 1, 0, max(rows - 2, 0))
+@lru_cache(maxsize=8)
+def _row_shares(ln_rows: tuple[float, ...]) -> NDArray[np.float64]:
+    """Share of each row in the interpolation, per cell between rows and function of the basis, (cell, basis, row)."""
+    at = np.array(ln_rows)
+    rows, width = at.size, min(4, at.size)
     cells = np.arange(max(rows - 1, 1))
     starts = np.clip(cells - 1, 0, rows - width)
-    offsets = ln_rows[starts[:, None] + np.arange(width)] - ln_rows[cells, None]
-    shares = np.linalg.inv(_basis(offsets, width))  # (cell, basis, row)
-    if width > 2:
-        for k in np.flatnonzero(np.diff(ln_rows) > _WIDE_GAP):
-            two = slice(k - starts[k], k - starts[k] + 2)
-            shares[k] = 0.0
-            shares[k, :2, two] = np.linalg.inv(_basis(offsets[k, two], 2))
-    return starts[cell], np.einsum("...b,...bj->...j", _basis(ln_p - ln_rows[cell], width), shares[cell])
+    offsets = at[starts[:, None] + np.arange(width)] - at[cells, None]
+    four = np.linalg.inv(np.stack(_basis(offsets, width), axis=-1))
+    shares = np.zeros((cells.size, width, rows))
+    for k, start in enumerate(starts):
+        if width > 2 and at[k + 1] - at[k] > _WIDE_GAP:
+            two = slice(k - start, k - start + 2)
+            shares[k, :2, k : k + 2] = np.linalg.inv(np.stack(_basis(offsets[k, two], 2), axis=-1))
+        else:
+            shares[k, :, start : start + width] = four[k]
+    return shares
 
 
-def _basis(offset: NDArray[np.float64], width: int) -> NDArray[np.float64]:
+def _basis(offset: NDArray[np.float64], width: int) -> tuple[NDArray[np.float64], ...]:
     """1, P, 1/P and ln P, the first `width` of them, relative to the pressure where `offset` is 0."""
-    parts = (np.ones_like(offset), np.exp(offset), np.exp(-offset), offset)
-    return np.stack(parts[:width], axis=-1)
+    pressure = np.exp(offset)
+    return (np.ones_like(offset), pressure, 1 / pressure, offset)[:width]
