@@ -7,6 +7,9 @@ few numbers per band carry a list, not how well they would have foretold it; the
 
 from __future__ import annotations
 
+import contextlib
+import io
+import json
 from functools import cache
 from pathlib import Path
 
@@ -14,13 +17,13 @@ import numpy as np
 import pytest
 
 from planner.spectroscopy.accuracy import WindowScore, alike, compare
-from planner.spectroscopy.hitran import read_par
+from planner.spectroscopy.hitran import read_par, write_par
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.lists.build import read_constants
 from planner.spectroscopy.lists.doublet import doublet_lines
 from planner.spectroscopy.lists.intensities import relative_intensity
 from planner.spectroscopy.lists.linear import linear_lines
-from planner.spectroscopy.molecules import partition_sum
+from planner.spectroscopy.molecules import partition_sum, quiet_hapi
 
 FILES = {
     "CO": "CO_full400-10000_hitran2012",
@@ -55,7 +58,6 @@ WINDOWS = [
     ("HCN", 3150.0, 3420.0),
     ("C2H2", 620.0, 850.0),
     ("C2H2", 1200.0, 1450.0),
-    ("C2H2", 2000.0, 2250.0),
     ("C2H2", 2600.0, 2800.0),
     ("C2H2", 3150.0, 3390.0),
     ("C2H2", 3800.0, 4200.0),
@@ -132,15 +134,32 @@ def test_nitrous_oxide_is_as_close_as_the_cut_allows(reference_folder: Path, key
     assert np.abs(score.mean).max() < 0.02
 
 
+def _held(embedded: Lines, real: Lines) -> Lines:
+    """Embedded lines of bands that the real list holds, up to the largest J that it holds of each."""
+
+    def keys(lines: Lines) -> list[tuple[str, str]]:
+        return [(u.strip(), low.strip()) for u, low in zip(lines.upper_global, lines.lower_global, strict=True)]
+
+    def j(lines: Lines) -> list[int]:
+        return [int(label[6:9]) for label in lines.lower_local]
+
+    largest: dict[tuple[str, str], int] = {}
+    for key, value in zip(keys(real), j(real), strict=True):
+        largest[key] = max(value, largest.get(key, 0))
+    mask = [value <= largest.get(key, -1) for key, value in zip(keys(embedded), j(embedded), strict=True)]
+    return embedded.where(np.array(mask))
+
+
 @pytest.mark.slow
-def test_hydrogen_cyanide_bands_that_the_list_holds(reference_folder: Path) -> None:
-    """2000-2200 per cm: HITRAN2012 lacks the hot bands that the embedded list adds by rule; compare the others."""
-    real, ours = _real(reference_folder, "HCN"), _embedded("HCN")
-    held = {(upper.strip(), lower.strip()) for upper, lower in zip(real.upper_global, real.lower_global, strict=True)}
-    bands = zip(ours.upper_global, ours.lower_global, strict=True)
-    same = ours.where(np.array([(upper.strip(), lower.strip()) in held for upper, lower in bands]))
-    _score(reference_folder, "HCN", 2000.0, 2200.0)
-    assert compare(same, real, (2000.0, 2200.0)).passes()
+@pytest.mark.parametrize(("key", "low", "high"), [("HCN", 2000.0, 2200.0), ("C2H2", 2000.0, 2250.0)])
+def test_windows_where_the_published_list_breaks_off(reference_folder: Path, key: str, low: float, high: float) -> None:
+    """HITRAN2012 has no hot bands of HCN here and stops C2H2 where measured lines end (S about 1e-24).
+
+    Compared as they are, the embedded lists show 0.2 scale heights more; the bands and J that both hold agree.
+    """
+    real, ours = _real(reference_folder, key), _embedded(key)
+    _score(reference_folder, key, low, high)
+    assert compare(_held(ours, real), real, (low, high)).passes()
 
 
 SUMS = [
@@ -223,3 +242,22 @@ def test_lines_one_by_one(reference_folder: Path, key: str, upper: str, lower: s
     assert np.allclose(embedded.air_width_per_cm_atm[a], published.air_width_per_cm_atm[b], rtol=0.1)
     assert np.array_equal(embedded.upper_weight[a], published.upper_weight[b])
     assert np.array_equal(embedded.lower_weight[a], published.lower_weight[b])
+
+
+@pytest.mark.parametrize("formula", ["CO2", "C2H2", "NO", "HCl"])
+def test_hapi_takes_the_records(tmp_path: Path, formula: str) -> None:
+    """The strongest lines, written as 160-character records, come back from HITRAN's own library with their labels."""
+    embedded = _embedded(formula)
+    lines = embedded.where(np.sort(np.argsort(embedded.intensity_cm)[-400:]))
+    write_par(tmp_path / "table.data", lines)
+    hapi = quiet_hapi()
+    (tmp_path / "table.header").write_text(json.dumps(hapi.HITRAN_DEFAULT_HEADER | {"table_name": "table"}))
+    with contextlib.redirect_stdout(io.StringIO()):
+        hapi.db_begin(str(tmp_path))
+    table = hapi.LOCAL_TABLE_CACHE["table"]["data"]
+    assert np.allclose(table["nu"], lines.wavenumber_per_cm, rtol=0, atol=1e-6)
+    assert np.allclose(table["sw"], lines.intensity_cm, rtol=1e-3)
+    assert np.allclose(table["a"], lines.einstein_a_per_s, rtol=1e-3)
+    assert np.array_equal(table["gpp"], lines.lower_weight)
+    for column, labels in (("global_upper_quanta", lines.upper_global), ("local_lower_quanta", lines.lower_local)):
+        assert [text.rstrip() for text in table[column]] == labels.tolist()
