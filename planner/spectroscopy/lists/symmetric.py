@@ -82,7 +82,8 @@ def symmetric_lines(part: Mapping[str, Any], hitran_number: int) -> Lines:
         (parallel) or 1.5 (perpendicular) if the row carries the name of the band's upper level;
 
         ``coupled``, tables with ``a1``, ``e``, ``lower`` (names of levels), ``coupling`` [c, cK], ``doubling`` q,
-        ``moments`` [ratio of squares, sign], ``sum_cm``, ``herman_wallis`` [h1, h2] and ``hot``;
+        ``moment_ratio``, the squared moment of
+        the A1 state over half that of the E state, ``sum_cm``, ``herman_wallis`` [h1, h2] and ``hot``;
 
         ``satellites``, tables of arguments of `planner.spectroscopy.lists.statistical.with_satellites`, applied
         one after the other.
@@ -174,9 +175,7 @@ def _coupled_band(
         e=_level(levels, table["e"]),
         coupling=np.asarray(table["coupling"], dtype=np.float64),
         doubling=float(table["doubling"]),
-        moments=np.asarray(table["moments"], dtype=np.float64),
     )
-    ratio, sign = pair.moments
     j, k = grid
     weight = _spin_weights(part["weights"][lower.weights], j, k) * (2 * j + 1)
     energy = lower.energy_per_cm(j, k)
@@ -188,7 +187,7 @@ def _coupled_band(
                 factor
                 * clebsch_gordan(j, k, j_step, k_step)
                 * _herman_wallis(table["herman_wallis"], j, k, j_step, k_step)
-                for factor, k_step in ((ratio**0.5, 0), (1.0, 1), (-sign, -1))
+                for factor, k_step in ((float(table["moment_ratio"]) ** 0.5, 0), (1.0, 1), (-1.0, -1))
             ],
             axis=1,
         )

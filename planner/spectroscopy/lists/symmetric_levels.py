@@ -65,15 +65,12 @@ class CoupledPair:
         c and cK, in 1/cm.
     doubling : float
         q of the E state, in 1/cm.
-    moments : (2,) float64
-        Squared moment of the A1 state over half that of the E state, and the sign +1 or -1 between them.
     """
 
     a1: TopLevel
     e: TopLevel
     coupling: Floats
     doubling: float
-    moments: Floats
 
 
 def pair_blocks(pair: CoupledPair, j: Ints, g: Ints) -> tuple[Floats, Floats]:
@@ -117,7 +114,6 @@ def read_levels(rows: Sequence[Sequence[Any]], hitran_number: int) -> dict[str, 
         If a row has another shape.
     """
     levels: dict[str, TopLevel] = {}
-    ground: Sequence[float] = ()
     for row in rows:
         try:
             name, weights, constants, l_terms, _source = row
@@ -127,11 +123,10 @@ def read_levels(rows: Sequence[Sequence[Any]], hitran_number: int) -> dict[str, 
             raise LineDataError(
                 f"symmetric top {hitran_number}: level {name!r}: expected 3, 6 or 10 constants, got {len(constants)}"
             )
-        ground = ground or constants
         filled = np.zeros(10)
         filled[: len(constants)] = constants
-        if len(constants) == 3:
-            filled[3:6] = ground[3:6]
+        if len(constants) == 3 and levels:
+            filled[3:6] = next(iter(levels.values())).constants[3:6]
         extra = np.zeros(3)
         extra[: len(l_terms)] = l_terms
         levels[name] = TopLevel(name=name, weights=weights, constants=filled, l_terms=extra)
