@@ -136,9 +136,12 @@ def broadened(formula: str, lines: Lines, widths: ForeignWidths | None, air: Map
     return Broadened(
         lines=replace(lines, air_width_per_cm_atm=width, temperature_exponent=exponent),
         key=repr([(gas, share, width_factor(formula, gas)) for gas, share in shares.items()]),
-        sentence=f"{formula} lines: on average {mean:.3g} times their width in air"
-        + (f" ({'; '.join(details)})" if details else ""),
+        sentence=f"{formula} lines: {_summary(shares, mean)}" + (f" ({'; '.join(details)})" if details else ""),
     )
+
+
+def _summary(shares: Mapping[str, float], mean: float) -> str:
+    return "as wide as in air" if set(shares) <= {"N2"} else f"on average {mean:.3g} times as wide as in air"
 
 
 def _shares(formula: str, air: Mapping[str, float]) -> dict[str, float]:
@@ -155,7 +158,8 @@ def _in_gas(
     """Widths and exponents in one gas, and how they came about."""
     factor, per_cent = width_factor(formula, gas) or (1.0, 0)
     width, exponent = factor * lines.air_width_per_cm_atm, lines.temperature_exponent
-    by_factor = f"{factor:g} times the air width, from memory, +/- {per_cent} %"
+    times = "as air" if factor == 1 else f"{factor:g} times the air width"
+    by_factor = f"{times}, from memory, +/- {per_cent} %"
     table = None if widths is None else widths.by_gas.get(gas)
     if table is None or not np.any(np.isfinite(table[0])):
         return width, exponent, by_factor

@@ -26,6 +26,7 @@ def test_air_and_nitrogen_leave_widths_alone():
         result = broadened("CO2", lines(), None, air)
         np.testing.assert_allclose(result.lines.air_width_per_cm_atm, lines().air_width_per_cm_atm)
         np.testing.assert_allclose(result.lines.temperature_exponent, 0.7)
+        assert result.sentence.startswith("CO2 lines: as wide as in air")
 
 
 def test_widths_add_in_proportion_to_pressure():

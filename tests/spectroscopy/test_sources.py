@@ -108,6 +108,22 @@ def test_the_newer_edition_wins(store, folder):
     assert len(source.lines) <= len(build_lines(read_constants("CO"), store)) + 1
 
 
+@pytest.mark.parametrize(
+    ("name", "edition"),
+    [
+        ("05_hit12.par", "HITRAN2012"),
+        ("05_HIT04.par", "HITRAN2004"),
+        ("hit96.par", "HITRAN1996"),
+        ("CO_hitran_2016.par", "HITRAN2016"),
+        ("CO_2000-2300.par", "edition not named"),
+    ],
+)
+def test_editions_in_names(store, folder, name, edition):
+    """HITRAN's own file names say the edition with two digits."""
+    write_par(folder / name, co_within(store, 2050, 2250))
+    assert any(f"from {name} ({edition}, " in s for s in LineLibrary(store, folder).gas("CO").provenance)
+
+
 def test_the_same_line_twice_names_both_files(store, folder):
     """Two files of one edition that hold the same line are refused."""
     file = co_within(store, 2050, 2250)

@@ -126,12 +126,15 @@ def _segment(
 
 
 def _edition(path: Path, declared: Sequence[Declaration]) -> str:
-    """As declared, else by a name such as ``CO_hitran2020.par``."""
+    """As declared, else by a name such as ``CO_hitran2020.par`` or HITRAN's own ``05_hit12.par``."""
     named = next((row.edition for row in declared if row.edition), None)
     if named:
         return named
-    found = re.search(r"hitran[_-]?(\d{4})", path.name, re.IGNORECASE)
-    return f"HITRAN{found.group(1)}" if found else ""
+    found = re.search(r"hit(?:ran)?[_-]?(\d{4}|\d\d)(?!\d)", path.name, re.IGNORECASE)
+    if not found:
+        return ""
+    century = "" if len(found[1]) == 4 else "19" if int(found[1]) >= 86 else "20"
+    return f"HITRAN{century}{found[1]}"
 
 
 def _without_overlap(segments: Sequence[Segment]) -> list[Segment]:

@@ -5,7 +5,9 @@ The way is the true one: hapi forms the request and downloads; only the address 
 
 from __future__ import annotations
 
+import contextlib
 import gzip
+import io
 import socket
 import sys
 
@@ -56,6 +58,21 @@ def test_what_comes_is_what_the_service_has(ask, service, tmp_path):
     assert row.edition == "HITRANonline 2026-03-01"
     assert f"from {service.address} through hapi" in row.fetched
     assert "on 2026-03-01, isotopologues with an abundance of 0.001 or more" in row.fetched
+
+
+def test_the_service_here_speaks_as_hapi_reads(service, tmp_path, monkeypatch):
+    """hapi itself, asked directly, reads from the answers of this test's server what the server has."""
+    hapi = sys.modules[quiet_hapi().queryHITRAN.__module__]
+    monkeypatch.setitem(hapi.VARIABLES, "GLOBAL_HOST", service.address)
+    monkeypatch.setitem(hapi.VARIABLES, "BACKEND_DATABASE_NAME", str(tmp_path))
+    with contextlib.redirect_stdout(io.StringIO()):
+        hapi.fetch_by_ids("x", [7], 500, 750, ParameterGroups=["160-char"], Parameters=["gamma_H2", "n_H2", "n_He"])
+    table = hapi.LOCAL_TABLE_CACHE.pop("x")["data"]
+    mine = service.lines.where((service.lines.isotopologue == 1) & (service.lines.wavenumber_per_cm < 750))
+    np.testing.assert_array_equal(table["nu"], mine.wavenumber_per_cm)
+    np.testing.assert_array_equal(table["gamma_h2"], np.full(len(mine), 0.105))
+    np.testing.assert_array_equal(table["n_h2"], np.full(len(mine), 0.6))
+    assert np.all(np.ma.getmaskarray(table["n_he"]))
 
 
 def test_the_record_of_a_fetch_is_its_coverage(ask, tmp_path):
