@@ -37,7 +37,7 @@ from planner.atmosphere.layers import Air
 __all__ = ["Chords", "chords_through", "height_rule", "row_weights"]
 
 _PANEL_E_FOLDS = 2.0
-_NODES_PER_PANEL = 6
+_GAUSS = np.polynomial.legendre.leggauss(6)
 # 16 e-folds above the tangent point the density is 1e-7 of that below
 _REACH_E_FOLDS = 16.0
 _STEPS_ALONG_CHORD = 80
@@ -91,7 +91,7 @@ def height_rule(bottom: float, top: float) -> tuple[NDArray[np.float64], NDArray
     """
     panels = max(1, math.ceil((top - bottom) / _PANEL_E_FOLDS - 1e-9))
     edges = np.linspace(bottom, top, panels + 1)
-    x, weight = np.polynomial.legendre.leggauss(_NODES_PER_PANEL)
+    x, weight = _GAUSS
     half = np.diff(edges)[:, None] / 2
     return (edges[:-1, None] + half * (1 + x)).ravel(), (half * weight).ravel()
 
