@@ -81,25 +81,36 @@ def domain_of(scenario: Scenario, *, temperature: bool = False, wider: Mapping[s
     return Domain(ranges=ranges | {n: _union(r, ranges.get(n)) for n, r in wider.items()}, mixing_ratios=ratios)
 
 
-def drawn(scenario: Scenario, domain: Domain, count: int, seed: int) -> list[tuple[Scenario, Case]]:
-    """Atmospheres spread evenly over a domain (scrambled Halton sequence), the searched gases taking turns.
+def drawn(
+    scenario: Scenario, domain: Domain, count: int, seed: int, *, to_the_ends: bool = False
+) -> list[tuple[Scenario, Case]]:
+    """Atmospheres spread over a domain (scrambled Halton sequence), the searched gases taking turns.
 
     Tables of the whole grid are dear, so temperatures are those of nodes (the scenario's and those that hold the
     domain), and mixing ratios at which a gas broadens itself are the scenario's own.
+
+    Parameters
+    ----------
+    to_the_ends : bool
+        Whether points are denser towards the ends of each range, as those of Chebyshev are: what is fitted there
+        holds better in between than the other way round. Else they are even.
     """
     cases, temperatures = distinct_cases(scenario), _temperatures(scenario, domain)
     names = [name for name in domain.ranges if name != "temperature"]
-    points = qmc.Halton(len(names) + 3, seed=seed).random(count)
+    temperature_at, clear_at, *places = qmc.Halton(len(names) + 3, seed=seed).random(count).T
+    points = np.array(places).T
+    if to_the_ends:
+        points = (1 - np.cos(np.pi * points)) / 2
     result = []
-    for number, (ratio_at, temperature_at, clear_at, *at) in enumerate(points):
+    for number, (ratio_at, *at) in enumerate(points):
         case = cases[number % len(cases)]
         values = {n: _between(scenario, n, domain.ranges[n], u) for n, u in zip(names, at, strict=True)}
         ratio = _between(scenario, "mixing_ratio", domain.mixing_ratios[case.gases], ratio_at)
         values["mixing_ratio"] = _without_new_tables(ratio, case.mixing_ratios[0])
         for gas, own in scenario.atmosphere.absorbers.items():
             values[gas] = _without_new_tables(values[gas], own)
-        values["temperature"] = temperatures[int(temperature_at * len(temperatures))]
-        result.append(vary(scenario, case, values | _none_of(scenario, clear_at)))
+        values["temperature"] = temperatures[int(temperature_at[number] * len(temperatures))]
+        result.append(vary(scenario, case, values | _none_of(scenario, clear_at[number])))
     return result
 
 
