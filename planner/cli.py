@@ -111,8 +111,18 @@ cli.add_command(gases)
     metavar="[N]",
     help="Try the stated rates on N simulated observations of each search; last on the line, N may be left out: 2000.",
 )
+@click.option(
+    "--remedies",
+    is_flag=True,
+    help="Work out all that would help: other modes, more of the gas, a clearer sky; and try rivals of the catalogue.",
+)
 def plan(
-    scenario: Path, lines_folder: Path | None, json_file: Path | None, out: Path | None, simulated: int | None
+    scenario: Path,
+    lines_folder: Path | None,
+    json_file: Path | None,
+    out: Path | None,
+    simulated: int | None,
+    remedies: bool,
 ) -> None:
     """How many transits for each gas, with each mode."""
     from planner.report.files import check_writable, make_folder
@@ -125,7 +135,7 @@ def plan(
         check_writable(json_file)
     if out is not None:
         make_folder(out)
-    result = _planned(read, lines_folder, simulated)
+    result = _planned(read, lines_folder, simulated=simulated, remedies=remedies)
     if to_stdout:
         click.echo(plan_json(result), nl=False)
     else:
@@ -275,11 +285,11 @@ def check(against: Path | None) -> None:
     _show_records(study(against))
 
 
-def _planned(scenario: Scenario, lines_folder: Path | None, simulated: int | None = None) -> PlanResult:
+def _planned(scenario: Scenario, lines_folder: Path | None, **asked: Any) -> PlanResult:
     from planner.studies.plan import plan as study
 
     with _progress() as progress:
-        return study(scenario, lines_folder=lines_folder, progress=progress, simulated=simulated)
+        return study(scenario, lines_folder=lines_folder, progress=progress, **asked)
 
 
 def _write_all(result: PlanResult, folder: Path) -> None:

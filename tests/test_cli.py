@@ -39,8 +39,9 @@ def calls(result, monkeypatch):
     """Studies that answer at once, and the list of what they were asked."""
     asked = []
 
-    def plan(scenario, *, lines_folder=None, progress=None, simulated=None):
-        asked.append(("plan", scenario.title, lines_folder, *([simulated] if simulated else [])))
+    def plan(scenario, *, lines_folder=None, progress=None, simulated=None, remedies=False):
+        more = [*([simulated] if simulated else []), *(["remedies"] if remedies else [])]
+        asked.append(("plan", scenario.title, lines_folder, *more))
         return result
 
     def spectrum(scenario, *, lines_folder=None, progress=None):
@@ -155,6 +156,12 @@ def test_plan_simulates_when_asked(folder, calls, words, draws):
     assert run("plan", "a.toml", *words).exit_code == 0
     assert calls == [("plan", "My search", None, draws)]
     assert run("plan", "a.toml", "--simulate", "3").exit_code == 2
+
+
+def test_plan_finds_remedies_when_asked(folder, calls):
+    """All that would help is worked out on demand."""
+    assert run("plan", "a.toml", "--remedies").exit_code == 0
+    assert calls == [("plan", "My search", None, "remedies")]
 
 
 def test_plan_json_on_stdout(folder, calls, result):

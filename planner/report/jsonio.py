@@ -38,9 +38,19 @@ Each row:
 the six above with ``_all_known``       the same with everything but the gas known
 ``confusion``                           list of ``nuisance``, ``snr_left``: what is left of the S/N when this alone is
                                         unknown, after as many transits as would do were all known; dearest first
+``confused_from``, ``confused_to``      S/N at that number of transits with all known, and with all unknown together
 ``uncovered``                           list of ``gas``, ``from_um``, ``to_um``: stretches without data
 ``saturated``                           list of ``from_um``, ``to_um``
 ``cautions``                            list of sentences
+``rivals``                              list of ``gas``, ``mixing_ratio``, ``snr_left`` of ``snr`` after ``transits``:
+                                        gases of the catalogue that the air is not said to hold, each by itself
+                                        unknown to that width; empty unless asked for
+``remedies``                            list of what would help, each with ``kind`` (``"another mode as well"``,
+                                        ``"a lower floor"``, ``"more of the gas"``, ``"a clearer sky"``), ``enough``,
+                                        ``snr`` after ``transits``, ``says`` (the sentence) and what belongs to the
+                                        kind, null elsewhere: ``mode``, ``band_um`` (from, to), ``transits_required``
+                                        with each mode and ``hours_required`` in all; ``floor_factor``, ``floor_ppm``;
+                                        ``mixing_ratio``; ``cloud_top_bar`` (null for no cloud at all)
 ``simulation``                          null, or what simulated observations gave beside what is stated: ``transits``
                                         of one observation, ``draws`` with the gas and as many without,
                                         ``power_stated``, ``power_found``, ``power_error`` (standard error),
@@ -59,7 +69,8 @@ from pathlib import Path
 from typing import Any
 
 from planner.report.files import write_text
-from planner.studies.results import Counts, PlanResult, PlanRow
+from planner.report.remedies import remedy_text
+from planner.studies.results import Counts, PlanResult, PlanRow, Remedy
 
 __all__ = ["plan_json", "write_plan_json"]
 
@@ -108,11 +119,20 @@ def _row(row: PlanRow) -> dict[str, Any]:
         **_counts(row.marginalised, ""),
         **_counts(row.all_known, "_all_known"),
         "confusion": [{"nuisance": name, "snr_left": snr} for name, snr in row.confusion],
+        "confused_from": row.confused_from,
+        "confused_to": row.confused_to,
         "uncovered": [{"gas": gas, "from_um": a, "to_um": b} for gas, a, b in row.uncovered_um],
         "saturated": [{"from_um": a, "to_um": b} for a, b in row.saturated_um],
         "cautions": list(row.cautions),
+        "rivals": [asdict(rival) for rival in row.rivals],
+        "remedies": [_remedy(remedy, row) for remedy in row.remedies],
         "simulation": asdict(row.simulation) if row.simulation else None,
     }
+
+
+def _remedy(remedy: Remedy, row: PlanRow) -> dict[str, Any]:
+    values = asdict(remedy) | {"kind": remedy.kind.value, "says": remedy_text(remedy, row)}
+    return {key: None if value == math.inf else value for key, value in values.items()}
 
 
 def _counts(counts: Counts, suffix: str) -> dict[str, float | int | None]:

@@ -11,6 +11,7 @@ from rich.console import Console, Group, RenderableType
 from rich.table import Table
 from rich.text import Text
 
+from planner.report.remedies import remedies_block
 from planner.report.simulations import simulations_block
 from planner.report.words import band_text, bands_text, count_text, gas_text, hours_text, ratio_text, snr_text
 from planner.studies.results import PlanResult, PlanRow, Verdict
@@ -46,6 +47,7 @@ def plan_view(result: PlanResult, width: int) -> Group:
     return Group(
         _headline(result),
         *(item for block in blocks for item in block),
+        *remedies_block(result.rows),
         *simulations_block(result.rows),
         *_list("Held unknown, with the width of the prior", [priors] if priors else []),
         *_list("Assumptions", result.assumptions),

@@ -70,6 +70,10 @@ class ForwardModel:
         self.opacities = opacities
         self._means = means
 
+    def of(self, scenario: Scenario) -> ForwardModel:
+        """The model of a variation of the scenario, on the same samples and in the same bins."""
+        return ForwardModel(scenario, self.opacities, self._means)
+
     def air(self, case: Case, change: Change = NO_CHANGE) -> Air:
         """The column of air of one case."""
         scenario, atmosphere = self.scenario, self.scenario.atmosphere

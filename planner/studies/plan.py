@@ -16,11 +16,12 @@ from planner.scenario.records import Case, Scenario
 from planner.star.flux import star_cautions
 from planner.studies.nuisances import prior_widths
 from planner.studies.observe import ModeView, source_of_light
+from planner.studies.remedies import Adviser
 from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, Verdict
 from planner.studies.simulation import simulate_search
 from planner.studies.workshop import Progress, Sight, Workshop, see
 
-__all__ = ["CAUTIONS", "Sight", "Workshop", "plan", "see"]
+__all__ = ["CAUTIONS", "Sight", "Workshop", "assumptions", "cautions_about_star", "plan", "plan_row", "see"]
 
 CAUTIONS = (
     "These are estimates: confirm exposure settings and noise with the observatory's own tools and staff before "
@@ -43,6 +44,7 @@ def plan(
     lines_folder: Path | None = None,
     progress: Progress | None = None,
     simulated: int | None = None,
+    remedies: bool = False,
 ) -> PlanResult:
     """Transits, hours and verdict for every case and mode of a scenario.
 
@@ -55,6 +57,8 @@ def plan(
         Called with a text and the share done.
     simulated : int, optional
         Observations to simulate of each search, to try the rates that are stated.
+    remedies : bool
+        Work out all that would help; without, only what takes no further forward model.
 
     Raises
     ------
@@ -62,12 +66,13 @@ def plan(
         If line data or modes cannot be read or used.
     """
     workshop = Workshop(scenario, lines_folder=lines_folder, progress=progress)
+    adviser = Adviser(workshop, thorough=remedies, lines_folder=lines_folder, progress=progress)
     rows: list[PlanRow] = []
     spectra: list[BinnedSpectrum] = []
     for case in scenario.cases:
         sight = see(workshop, case)
         for index in range(len(workshop.views)):
-            row = _row(workshop, sight, index)
+            row = adviser.advise(plan_row(workshop, sight, index), sight, index)
             rows.append(_tried(row, workshop, sight, index, simulated) if simulated else row)
             spectra.append(binned_spectrum(workshop, sight, index))
     return PlanResult(
@@ -83,18 +88,20 @@ def plan(
         rows=tuple(rows),
         spectra=tuple(spectra),
         line_data=(*workshop.line_data(), *workshop.store.notices),
-        assumptions=_assumptions(workshop),
+        assumptions=assumptions(workshop),
         nuisances=prior_widths(scenario),
-        cautions=(*CAUTIONS, *_star_cautions(workshop)),
+        cautions=(*CAUTIONS, *cautions_about_star(workshop)),
         version=__version__,
     )
 
 
-def _row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
+def plan_row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
+    """What a case comes down to with one mode."""
     scenario, view, measurement = workshop.scenario, workshop.views[index], sight.measurements[index]
     target = target_snr(scenario.goal.threshold_sigma, scenario.goal.power)
     known = _counts(measurement.known(), target, scenario, view)
     marginalised = _counts(measurement, target, scenario, view)
+    transits = known.transits_unrounded or _CONFUSION_TRANSITS
     verdict = _verdict(sight, index, known, marginalised, target, _transits_available(scenario))
     return PlanRow(
         gas=sight.case.label,
@@ -104,7 +111,9 @@ def _row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
         marginalised=marginalised,
         all_known=known,
         best_bands=_best_bands(view, sight.usable[index], measurement),
-        confusion=_confusion(measurement, known),
+        confusion=_confusion(measurement, transits),
+        confused_from=measurement.known().snr(transits),
+        confused_to=measurement.snr(transits),
         uncovered_um=_uncovered(workshop, sight.case, view),
         saturated_um=view.noise.saturated_um,
         cautions=(),
@@ -158,9 +167,8 @@ def _transits_available(scenario: Scenario) -> int:
     return stated if stated is not None else floor(_MISSION_YEARS * 365.25 / scenario.planet.period_d)
 
 
-def _confusion(measurement: Measurement, known: Counts) -> tuple[tuple[str, float], ...]:
-    """What each nuisance alone does to the significance that would suffice were all known; the three dearest."""
-    transits = known.transits_unrounded or _CONFUSION_TRANSITS
+def _confusion(measurement: Measurement, transits: float) -> tuple[tuple[str, float], ...]:
+    """What each nuisance alone leaves of the significance that all known would give; the three dearest."""
     full = measurement.known().snr(transits)
     left = sorted(((name, measurement.only(name).snr(transits)) for name in measurement.nuisances), key=lambda c: c[1])
     return tuple((name, snr) for name, snr in left[:3] if snr < 0.98 * full)
@@ -228,13 +236,15 @@ def binned_spectrum(workshop: Workshop, sight: Sight, index: int) -> BinnedSpect
     )
 
 
-def _star_cautions(workshop: Workshop) -> tuple[str, ...]:
+def cautions_about_star(workshop: Workshop) -> tuple[str, ...]:
+    """What to mind about the star, seen with the modes of a scenario."""
     spans = [view.mode.span_um for view in workshop.views]
     star = source_of_light(workshop.scenario)
     return star_cautions(star, min(a for a, _ in spans), max(b for _, b in spans))
 
 
-def _assumptions(workshop: Workshop) -> tuple[str, ...]:
+def assumptions(workshop: Workshop) -> tuple[str, ...]:
+    """What a result rests on, a sentence each."""
     scenario = workshop.scenario
     goal = scenario.goal
     baseline = scenario.out_of_transit_h

@@ -9,7 +9,18 @@ from enum import StrEnum
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["BandShare", "BinnedSpectrum", "Counts", "PlanResult", "PlanRow", "Simulation", "Verdict"]
+__all__ = [
+    "BandShare",
+    "BinnedSpectrum",
+    "Counts",
+    "PlanResult",
+    "PlanRow",
+    "Remedy",
+    "RemedyKind",
+    "Rival",
+    "Simulation",
+    "Verdict",
+]
 
 
 class Verdict(StrEnum):
@@ -68,6 +79,58 @@ class Simulation:
     the whole mode."""
 
 
+class RemedyKind(StrEnum):
+    """What could be otherwise."""
+
+    MODE = "another mode as well"
+    FLOOR = "a lower floor"
+    AMOUNT = "more of the gas"
+    SKY = "a clearer sky"
+
+
+@dataclass(frozen=True, kw_only=True)
+class Remedy:
+    """One thing that would raise a significance, and how far it goes.
+
+    The field that belongs to the kind is set, the others are ``None``.
+    """
+
+    kind: RemedyKind
+    enough: bool
+    """Whether it brings the search within reach."""
+    transits: int
+    """Transits that ``snr`` is for, with each mode: those required without the remedy, else those on offer."""
+    snr: float
+    mode: str | None = None
+    band_um: tuple[float, float] | None = None
+    """The stretch of the added mode that does most."""
+    transits_required: int | None = None
+    """With each of the modes, where a mode is added."""
+    hours_required: float | None = None
+    """Charged with all modes together."""
+    floor_factor: float | None = None
+    """On every floor of the mode, 0 to 1; 0 where even no floor is not enough."""
+    floor_ppm: float | None = None
+    """What the factor makes of the floor, at the resolving power that it is quoted for."""
+    mixing_ratio: float | None = None
+    """Of the searched gas, or of the first of a set; the most that was tried where it is not enough."""
+    cloud_top_bar: float | None = None
+    """Infinite for no cloud at all."""
+
+
+@dataclass(frozen=True, kw_only=True)
+class Rival:
+    """A gas of the catalogue that the air is not said to hold, and what not knowing it would cost."""
+
+    gas: str
+    mixing_ratio: float
+    """Width of the prior that it was tried with."""
+    snr_left: float
+    """Of ``snr``, with all the other unknowns as well."""
+    snr: float
+    transits: int
+
+
 @dataclass(frozen=True, kw_only=True)
 class PlanRow:
     """One gas at one mixing ratio with one mode."""
@@ -82,11 +145,19 @@ class PlanRow:
     confusion: tuple[tuple[str, float], ...]
     """Nuisances that cost most: (name, S/N left if this one alone is unknown, at the number of transits that would
     suffice were everything known), dearest first."""
+    confused_from: float
+    """S/N at that number of transits were everything known: the one asked for, unless it is out of reach even then."""
+    confused_to: float
+    """S/N left of it when everything is unknown together."""
     uncovered_um: tuple[tuple[str, float, float], ...]
     """Stretches (gas, from, to) that a gas's data do not cover."""
     saturated_um: tuple[tuple[float, float], ...]
     cautions: tuple[str, ...]
     simulation: Simulation | None = None
+    rivals: tuple[Rival, ...] = ()
+    """Gases of the catalogue that were tried, dearest first."""
+    remedies: tuple[Remedy, ...] = ()
+    """What would help, the most first of each kind."""
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)

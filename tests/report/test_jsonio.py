@@ -31,6 +31,10 @@ ROW_KEYS = {
     "uncovered",
     "saturated",
     "cautions",
+    "confused_from",
+    "confused_to",
+    "rivals",
+    "remedies",
     "simulation",
 }
 
