@@ -62,7 +62,7 @@ class Levels:
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Evidence:
-    """Log likelihood ratios ``ln p(v | true) / p(v | false)`` of observations drawn of each kind of world, ``(draw,)``."""
+    """Log likelihood ratios ``ln p(v | true) / p(v | false)`` of observations drawn of either kind, ``(draw,)``."""
 
     in_true: Array
     in_false: Array

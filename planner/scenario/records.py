@@ -12,6 +12,7 @@ from pydantic import BeforeValidator, Field, PrivateAttr, model_validator
 
 from planner.atmosphere import layers
 from planner.scenario import geometry
+from planner.scenario.beliefs import Beliefs
 from planner.scenario.fields import Name, Record, Switch
 from planner.scenario.locate import heading
 from planner.scenario.readings import FieldProblem, ModeNames, Sets, Tables
@@ -62,6 +63,8 @@ class Scenario(Record):
     noise: Noise | None = None
     nuisances: Nuisances = Field(default_factory=Nuisances)
     bins: Bins = Field(default_factory=Bins)
+    beliefs: Beliefs = Field(default_factory=Beliefs)
+    """In place of the gas catalogue's, for the choice between gases."""
 
     _text: str = PrivateAttr(default="")
     _where: str = PrivateAttr(default="scenario")

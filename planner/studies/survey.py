@@ -1,0 +1,215 @@
+"""Every gas seen with every mode: significance along its range of mixing ratios, and what looks like it.
+
+A gas is seen at its reference mixing ratio and at a few others, on every fourth sample of the grid;
+`planner.detection.worth.Response` runs through them. The nuisances of trace gases are those of the air without them,
+worked out once.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from functools import cached_property
+from math import ceil, inf, log, log10, sqrt
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.catalogue.sharing import sharing_bands
+from planner.detection.significance import Measurement
+from planner.detection.worth import Response
+from planner.scenario.records import Case
+from planner.studies.beliefs import MOST_RATIO, believed_gas, span
+from planner.studies.choices import Resembling
+from planner.studies.nuisances import Direction, directions
+from planner.studies.workshop import Progress, Sight, Workshop, measurement_of
+
+__all__ = ["Curve", "Survey", "snr_after"]
+
+Array = NDArray[np.float64]
+
+_NODE_DEX = 1.3
+_NODES = (4, 6)
+"""Computed mixing ratios per gas: about one per so many decades from the top, within these numbers."""
+_TRACE = 0.02
+"""Up to here a gas leaves the rest of the air, and so its nuisances, as they are."""
+_NO_GAS = Case(gases=(), mixing_ratios=())
+_MOST_SNR = 1e4
+"""What an S/N without any limit is taken as."""
+_NOTICED_SNR = 0.5
+"""Relative errors of smaller ones do not count."""
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Curve:
+    """One gas with one mode: significance against mixing ratio."""
+
+    at_hours: Response
+    at_limit: Response
+    """After infinitely many transits."""
+    miss: float
+    """By how much the curve through the other points misses the reference."""
+
+
+class Survey:
+    """Gases with the modes of a workshop, each mode for a number of transits.
+
+    Parameters
+    ----------
+    workshop : Workshop
+    hypothesis : str
+        ``"life"`` or ``"industry"``: decides at which mixing ratios a gas is seen.
+    transits : sequence of int
+        Per mode.
+    progress : callable
+        Called with a text and the share done.
+
+    Attributes
+    ----------
+    sights : dict of gas to Sight
+        At the references.
+    curves : dict of (gas, mode's position) to Curve
+    """
+
+    def __init__(self, workshop: Workshop, hypothesis: str, transits: Sequence[int], progress: Progress) -> None:
+        self.workshop, self.scenario = workshop, workshop.scenario
+        self.transits = transits
+        self.sights: dict[str, Sight] = {}
+        self.curves: dict[tuple[str, int], Curve] = {}
+        self._hypothesis, self._progress = hypothesis, progress
+        self._shapes: dict[str, tuple[Array, ...]] = {}
+
+    def look(self, gases: Sequence[str]) -> None:
+        """See every gas at its reference and along its range, and those that are like it at theirs."""
+        for number, gas in enumerate(gases):
+            self._progress(f"looking for {gas}", number / len(gases))
+            nuisances = self.nuisances_of((gas,))
+            self.sights[gas] = self._sight(gas, self.reference(gas), nuisances)
+            ratios = self._nodes(gas)
+            others = [self._sight(gas, ratio, nuisances) for ratio in ratios]
+            for index in range(len(self.transits)):
+                self.curves[gas, index] = self._curve(ratios, others, self.sights[gas], index)
+            self._shapes[gas] = self.sights[gas].templates_ppm
+            self.workshop.opacities.let_go()
+        for other in dict.fromkeys(other for gas in gases for other in sharing_bands(gas)):
+            if other not in self._shapes and self.workshop.opacities.has_data(other):
+                self._shapes[other] = self._shape(other)
+
+    def reference(self, gas: str) -> float:
+        """Geometric middle of the range where the hypothesis is true."""
+        low, high = believed_gas(self.scenario, gas, self._hypothesis).presence(True).mixing_ratio_range
+        return sqrt(low * min(high, MOST_RATIO))
+
+    def nuisances_of(self, gases: tuple[str, ...]) -> list[Direction]:
+        """Directions of the air without some gases; for gases that are but traces, those of the air as it is."""
+        atmosphere = self.scenario.atmosphere
+        part_of_the_air = any(gas in atmosphere.absorbers or gas in atmosphere.background for gas in gases)
+        if not part_of_the_air and all(self.reference(gas) <= _TRACE for gas in gases):
+            return self._common
+        return self._directions(Case(gases=gases, mixing_ratios=tuple(map(self.reference, gases))))
+
+    def rivals(self, gas: str, index: int) -> tuple[Resembling | None, float]:
+        """The gas hardest to tell apart, and the share of the S/N that all gases with like bands leave together.
+
+        Gases of the scenario's air are among the nuisances already.
+        """
+        sight, there = self.sights[gas], self.scenario.air()
+        measurement, transits = sight.measurements[index], max(self.transits[index], 1)
+        whole = snr_after(measurement, transits)
+        alike = {o: self._shapes[o][index][sight.usable[index]] for o in sharing_bands(gas) if o in self._shapes}
+        alike = {other: shape for other, shape in alike.items() if np.any(shape) and other not in there}
+        if not alike or whole == 0:
+            return None, 1.0
+        left = {other: snr_after(_beside(measurement, [shape]), transits) / whole for other, shape in alike.items()}
+        worst = min(left, key=lambda other: left[other])
+        resembling = Resembling(gas=worst, mixing_ratio=self.reference(worst), snr_left=left[worst])
+        return resembling, snr_after(_beside(measurement, list(alike.values())), transits) / whole
+
+    def accuracy(self, leading: Sequence[str]) -> tuple[str, ...]:
+        """What thinned samples and interpolation cost, as found on this very run; some gases on the whole grid."""
+        missed = max((curve.miss for curve in self.curves.values()), default=0.0)
+        worst = max((self._thinning_error(self.sights[gas]) for gas in leading), default=0.0)
+        return (
+            f"S/N between computed mixing ratios: interpolation missed the references by {100 * missed:.2g} % at most, "
+            "before they were added to the points",
+            f"S/N on every fourth sample of the grid: within {100 * worst:.2g} % of the whole grid for "
+            f"{' and '.join(leading)}",
+        )
+
+    @cached_property
+    def _common(self) -> list[Direction]:
+        return self._directions(_NO_GAS)
+
+    def _directions(self, case: Case) -> list[Direction]:
+        thin = self.workshop.thin
+        others = [gas for gas in self.scenario.air(case) if gas not in case.gases]
+        null = thin.binned(case, shares_of=others, transparent=case.gases)
+        return directions(thin, case, null, self.workshop.views)
+
+    def _sight(self, gas: str, ratio: float, nuisances: list[Direction]) -> Sight:
+        case = Case(gases=(gas,), mixing_ratios=(ratio,))
+        spectrum = self.workshop.thin.binned(case, shares_of=[gas])
+        templates = tuple(part.shares_ppm[gas] for part in spectrum)
+        views = self.workshop.views
+        usable = tuple(np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views)
+        measured = tuple(measurement_of(v, templates[i], usable[i], nuisances, i) for i, v in enumerate(views))
+        return Sight(case=case, measurements=measured, usable=usable, templates_ppm=templates, spectrum=spectrum)
+
+    def _shape(self, gas: str) -> tuple[Array, ...]:
+        """Share of a gas at its reference, per mode."""
+        case = Case(gases=(gas,), mixing_ratios=(self.reference(gas),))
+        spectrum = self.workshop.thin.binned(case, shares_of=[gas])
+        self.workshop.opacities.let_go()
+        return tuple(part.shares_ppm[gas] for part in spectrum)
+
+    def _nodes(self, gas: str) -> Array:
+        """Mixing ratios to compute, ascending; below the lowest the gas is thin."""
+        low, high = span(believed_gas(self.scenario, gas, self._hypothesis))
+        wide = log10(high / low)
+        count = int(np.clip(ceil(wide / _NODE_DEX) + 1, *_NODES))
+        return np.logspace(log10(high) - min(wide, _NODE_DEX * (count - 1)), log10(high), count)
+
+    def _curve(self, ratios: Array, others: Sequence[Sight], reference: Sight, index: int) -> Curve:
+        transits = self.transits[index]
+        at = {float(x): sight.measurements[index] for x, sight in zip(ratios, others, strict=True)}
+        own, place = reference.measurements[index], reference.case.mixing_ratios[0]
+        rough = Response(ln_mixing_ratio=np.log(ratios), snr=np.array([snr_after(m, transits) for m in at.values()]))
+        found = snr_after(own, transits)
+        miss = abs(float(rough(np.array([log(place)]))[0]) / found - 1) if found > _NOTICED_SNR else 0.0
+        at[place] = own
+        points = sorted(at)
+        return Curve(
+            at_hours=Response(
+                ln_mixing_ratio=np.log(points), snr=np.array([snr_after(at[x], transits) for x in points])
+            ),
+            at_limit=Response(ln_mixing_ratio=np.log(points), snr=np.array([snr_after(at[x], inf) for x in points])),
+            miss=miss,
+        )
+
+    def _thinning_error(self, sight: Sight) -> float:
+        gas = sight.case.gases[0]
+        whole = self.workshop.model.binned(sight.case, shares_of=[gas])
+        self.workshop.opacities.let_go()
+        worst = 0.0
+        for index, (measurement, usable) in enumerate(zip(sight.measurements, sight.usable, strict=True)):
+            transits = max(self.transits[index], 1)
+            exact = snr_after(replace(measurement, template_ppm=whole[index].shares_ppm[gas][usable]), transits)
+            if exact > _NOTICED_SNR:
+                worst = max(worst, abs(snr_after(measurement, transits) / exact - 1))
+        return worst
+
+
+def snr_after(measurement: Measurement, transits: float) -> float:
+    """Expected significance; none without a transit or a usable bin, the best attainable one for infinitely many."""
+    if not measurement.template_ppm.size or not transits:
+        return 0.0
+    return min(measurement.snr_limit(), _MOST_SNR) if transits == inf else measurement.snr(transits)
+
+
+def _beside(measurement: Measurement, shapes: Sequence[Array]) -> Measurement:
+    """The same with further amplitudes unknown."""
+    return replace(
+        measurement,
+        nuisances=(*measurement.nuisances, *(f"shape {i}" for i in range(len(shapes)))),
+        directions_ppm=np.vstack([measurement.directions_ppm, *shapes]),
+    )
