@@ -178,5 +178,6 @@ def _sentence(blocks: Sequence[CollisionTable], free: Sequence[Interval], file: 
 def _stretch(blocks: Sequence[CollisionTable], interval: Interval) -> str:
     """An interval and the temperatures of the blocks in it."""
     low, high = interval
-    kelvin = [block.temperature_k for block in blocks if _reach(block)[0] < high and _reach(block)[1] > low]
-    return f"{low:.6g}-{high:.6g} per cm ({len(kelvin)} blocks, {min(kelvin):g}-{max(kelvin):g} K)"
+    kelvin = sorted({b.temperature_k for b in blocks if _reach(b)[0] < high and _reach(b)[1] > low})
+    told = f"{len(kelvin)} temperatures, {kelvin[0]:g}-{kelvin[-1]:g} K" if len(kelvin) > 1 else f"{kelvin[0]:g} K"
+    return f"{low:.6g}-{high:.6g} per cm ({told})"
