@@ -55,7 +55,7 @@ def test_sum_over_upper_levels():
 
 
 def test_honl_london_factors():
-    """Against the factors of Herzberg 1945, equations IV.27-28 and IV.61, written for absorption."""
+    """Against the factors of Hoenl and London (e.g. Herzberg 1945), written for absorption."""
     j, k = 7, 3
     r_parallel = ((j + 1) ** 2 - k**2) / ((j + 1) * (2 * j + 1))
     q_parallel = k**2 / (j * (j + 1))

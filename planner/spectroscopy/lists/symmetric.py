@@ -1,7 +1,7 @@
 """Lines of symmetric tops: parallel and perpendicular bands, and pairs of states mixed by Coriolis force.
 
 With ``x = J(J+1)``, the signed projection k of J on the axis, K = ``|k|``, and the vibrational angular momentum
-l = +1 or -1 of a degenerate state, a level is (Herzberg 1945, Infrared and Raman Spectra, section IV.2) ::
+l = +1 or -1 of a degenerate state, a level is (e.g. Herzberg 1945, Infrared and Raman Spectra, chapter IV) ::
 
     E = G + B x + (C-B) K^2 - DJ x^2 - DJK x K^2 - DK K^4 + HJ x^3 + HJK x^2 K^2 + HKJ x K^4 + HK K^6
           - 2 C zeta k l + etaJ x k l + etaK K^2 k l

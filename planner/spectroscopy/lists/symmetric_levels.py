@@ -78,7 +78,7 @@ def pair_blocks(pair: CoupledPair, j: Ints, g: Ints) -> tuple[Floats, Floats]:
 
     The force mixes the A1 state with k = g, and the E state with k = g+1, l = +1 and with k = g-1, l = -1. With
     ``r(k) = sqrt(J(J+1) - k(k+1))`` its elements are (e.g. Papousek and Aliev 1982, Molecular
-    vibrational-rotational spectra, chapter 17; phases as in the amplitudes of `symmetric_lines`) ::
+    vibrational-rotational spectra; phases as in the amplitudes of `symmetric_lines`) ::
 
         <E, +|H|A> = (c + cK (2g+1)) r(g)
         <E, -|H|A> = -(c - cK (2g-1)) r(g-1)
