@@ -282,6 +282,18 @@ def test_cut_of_shipped_lists_loses_little(formula: str) -> None:
 
 
 @pytest.mark.parametrize("formula", NUMBERS)
+def test_levels_of_shipped_lists_rise_with_j(formula: str) -> None:
+    """No distortion term runs away: every level lies above the one before, up to the largest J that is used."""
+    part = _shipped(formula)
+    for species in part["species"]:
+        levels = Levels.from_rows(species["levels"])
+        index = np.arange(len(levels.names))[:, np.newaxis]
+        j = levels.angular_momentum[index] + np.arange(part["largest_j"] + 2)
+        for parity in (E, F):
+            assert np.all(np.diff(levels.energy_per_cm(index, j, parity), axis=1) > 0)
+
+
+@pytest.mark.parametrize("formula", NUMBERS)
 def test_sources_of_shipped_lists(formula: str) -> None:
     """Every level and band names a source that the file explains, and no explanation is left over."""
     with (data_folder("linelists") / f"{formula}.toml").open("rb") as file:
