@@ -16,6 +16,7 @@ import click
 
 from planner import __version__
 from planner.catalogue.command import gases
+from planner.checkcommand import check
 from planner.errors import PlannerError
 
 if TYPE_CHECKING:
@@ -276,13 +277,7 @@ def build(gases: tuple[str, ...]) -> None:
         click.echo(sentence)
 
 
-@lines.command()
-@click.option("--against", type=_FILE, metavar="DIR", help="Folder of real line files to compare with.")
-def check(against: Path | None) -> None:
-    """Check the embedded lists for faults, or against real line files."""
-    from planner.studies.linedata import check as study
-
-    _show_records(study(against))
+lines.add_command(check)
 
 
 def _planned(scenario: Scenario, lines_folder: Path | None, **asked: Any) -> PlanResult:

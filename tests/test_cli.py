@@ -21,6 +21,8 @@ from matplotlib.figure import Figure
 from planner import __version__
 from planner.cli import cli
 from planner.errors import LineDataError, StoreError
+from planner.spectroscopy.accuracyfile import AccuracyTable
+from planner.studies.listrecords import CheckedList, CheckReport
 
 COMMAND = [sys.executable, "-c", "from planner.cli import main; main()"]
 
@@ -61,9 +63,10 @@ def calls(result, monkeypatch):
         asked.append(("build", formulas))
         return ["CO2: 7 lines"]
 
-    def check(against):
+    def check(against, progress):
         asked.append(("check", against))
-        return [Row("CO2", 7)]
+        checked = CheckedList(gas="CO2", lines=7, seconds=0.1, faults=("a band is missing",) if against is None else ())
+        return CheckReport(lists=(checked,), accuracy=AccuracyTable(), against=against, notices=())
 
     studies = {
         "plan": SimpleNamespace(plan=plan),
@@ -211,8 +214,11 @@ def test_lines(folder, calls):
     """The three line-data commands."""
     assert run("lines", "list").stdout.split() == ["formula", "lines", "CO2", "5"]
     assert run("lines", "build", "CO2", "CFC-12").stdout == "CO2: 7 lines\n"
-    assert run("lines", "check").exit_code == 0
-    assert run("lines", "check", "--against", "mine").stdout.split()[-1] == "7"
+    faulty = run("lines", "check")
+    assert "a band is missing" in faulty.stdout
+    assert faulty.exit_code == 1
+    assert run("lines", "check", "--against", "mine").exit_code == 0
+    assert run("lines", "check", "--write").exit_code == 2
     assert calls == [("build", ("CO2", "CFC-12")), ("check", None), ("check", Path("mine"))]
 
 

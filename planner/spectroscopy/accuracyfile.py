@@ -134,7 +134,7 @@ def format_accuracy(table: AccuracyTable) -> str:
     """The inverse of `parse_accuracy`, numbers rounded as they deserve."""
     lines = [
         "# Accuracy of the embedded line lists. Written by `limbcast lines check --against DIR --write`;",
-        "# not to be edited by hand. Differences are in scale heights, an entry per mixing ratio, nan where nothing shows.",
+        "# not to be edited by hand. Differences in scale heights, an entry per mixing ratio, nan where nothing shows.",
     ]
     for name, rows in (("judged", table.judged), ("unseen", table.unseen)):
         for row in rows:

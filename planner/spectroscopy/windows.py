@@ -9,6 +9,8 @@ from planner.spectroscopy.coverage import Interval
 
 __all__ = ["band_windows", "runs"]
 
+Floats = NDArray[np.float64]
+
 _GAP_PER_CM = 100.0
 """Bands nearer than this share a window; lines of HF lie 40 apart."""
 _WIDEST_PER_CM = 1000.0
@@ -16,9 +18,7 @@ _CELL_PER_CM = 10.0
 _SMOOTHING_CELLS = 5
 
 
-def band_windows(
-    wavenumber_per_cm: NDArray[np.float64], weight: NDArray[np.float64], reach: Interval
-) -> list[Interval]:
+def band_windows(wavenumber_per_cm: Floats, weight: Floats, reach: Interval) -> list[Interval]:
     """Band regions of a spectrum within an interval, none wider than 1000 per cm.
 
     Parameters
@@ -41,13 +41,13 @@ def band_windows(
     return [window for run in runs(position) for window in _narrowed(run, position, weight)]
 
 
-def runs(position_per_cm: NDArray[np.float64]) -> list[Interval]:
-    """First and last point of each run of ascending points without a gap over 100 per cm; single points are left out."""
+def runs(position_per_cm: Floats) -> list[Interval]:
+    """First and last of each run of ascending points without a gap over 100 per cm; single points are left out."""
     pieces = np.split(position_per_cm, np.flatnonzero(np.diff(position_per_cm) > _GAP_PER_CM) + 1)
     return [(float(piece[0]), float(piece[-1])) for piece in pieces if piece.size > 1 and piece[-1] > piece[0]]
 
 
-def _narrowed(window: Interval, position: NDArray[np.float64], weight: NDArray[np.float64]) -> list[Interval]:
+def _narrowed(window: Interval, position: Floats, weight: Floats) -> list[Interval]:
     low, high = window
     if high - low <= _WIDEST_PER_CM:
         return [window]

@@ -24,7 +24,7 @@ from planner.spectroscopy.store import Store
 from planner.spectroscopy.windows import band_windows, runs
 from planner.studies.judging import averaged, judge_lines, judge_tables, noise_cm2, smooth_sum_cm, sum_cm
 
-__all__ = ["Job", "judge_all", "jobs_of"]
+__all__ = ["Job", "jobs_of", "judge_all"]
 
 Progress = Callable[[str, float], None]
 

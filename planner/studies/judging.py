@@ -16,12 +16,12 @@ from numpy.typing import NDArray
 
 from planner.spectroscopy.accuracy import MARKS, STRONG_MARKS, Marks, WindowScore, compare, compare_cross_sections
 from planner.spectroscopy.accuracyfile import JudgedWindow, Judgement
+from planner.spectroscopy.claims import claim_of
 from planner.spectroscopy.coverage import Interval, inside
 from planner.spectroscopy.crosssections import cross_sections
 from planner.spectroscopy.files.xsc import BAR_PER_TORR, CrossSectionTable
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.lists.build import Constants, smooth_cross_section
-from planner.spectroscopy.lists.claims import claim_of
 from planner.spectroscopy.windows import runs
 
 __all__ = [
@@ -135,10 +135,8 @@ def judge_tables(
     """
     scores, ratios, sums = [], [], []
     for table in tables:
-        part = slice(
-            *np.searchsorted(table.wavenumber_per_cm, [window_per_cm[0], np.nextafter(window_per_cm[1], np.inf)])
-        )
-        nu, real = table.wavenumber_per_cm[part], table.cross_section_cm2[part]
+        here = inside(table.wavenumber_per_cm, [window_per_cm])
+        nu, real = table.wavenumber_per_cm[here], table.cross_section_cm2[here]
         ours = _embedded_cross_section(constants, embedded, table, nu)
         score = compare_cross_sections(
             np.maximum(averaged(ours, table.step_per_cm), 0.0),

@@ -29,6 +29,7 @@ __all__ = [
     "build_lines",
     "embedded_formulas",
     "lines_from_table",
+    "part_lines",
     "read_constants",
     "smooth_cross_section",
     "table_from_lines",
@@ -131,6 +132,22 @@ def build_lines(constants: Constants, store: Store) -> Lines | None:
     return lines_from_table(store.fetch("lists", key, lambda: table_from_lines(_generate(constants))))
 
 
+def part_lines(constants: Constants, part: Mapping[str, Any]) -> Lines:
+    """The lines of one line part of a molecule, built anew.
+
+    Raises
+    ------
+    LineDataError
+        If the part breaks its layout, or the molecule has no HITRAN number.
+    """
+    number = constants.molecule.hitran_number
+    if number is None:
+        raise LineDataError(f"{constants.molecule.formula}: lines need a HITRAN molecule number")
+    with threadpool_limits(1):  # thousands of small matrices: waiting for a second thread costs more than it gives
+        lines: Lines = _function(_LINE_KINDS[part["kind"]])(part, number)
+        return lines
+
+
 def smooth_cross_section(
     constants: Constants, wavenumber_per_cm: NDArray[np.float64], temperature_k: float
 ) -> NDArray[np.float64] | None:
@@ -144,11 +161,7 @@ def smooth_cross_section(
 
 
 def _generate(constants: Constants) -> Lines:
-    number = constants.molecule.hitran_number
-    if number is None:
-        raise LineDataError(f"{constants.molecule.formula}: lines need a HITRAN molecule number")
-    with threadpool_limits(1):  # thousands of small matrices: waiting for a second thread costs more than it gives
-        return Lines.join([_function(_LINE_KINDS[part["kind"]])(part, number) for part in constants.line_parts])
+    return Lines.join([part_lines(constants, part) for part in constants.line_parts])
 
 
 def _function(address: str) -> Callable[..., Any]:
