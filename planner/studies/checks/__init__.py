@@ -1,0 +1,1 @@
+"""The checks of an audit, one module each, and the bench they share."""

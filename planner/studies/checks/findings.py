@@ -1,0 +1,117 @@
+"""What a check of a claim finds, and what all of them come to."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from enum import StrEnum
+
+__all__ = ["FALLS_BELOW", "NEEDED_SIGMA", "AuditResult", "Check", "Finding", "Outcome", "Standing", "judge"]
+
+NEEDED_SIGMA = 3.0
+"""What must be left of a claim once one thing is allowed for: the least that is called evidence (common practice)."""
+FALLS_BELOW = 2.0
+"""Below this nothing is left to speak of: one search in forty ends here by chance."""
+
+
+class Check(StrEnum):
+    """What is checked, in the order of the report."""
+
+    SIZE = "size"
+    NOISE = "noise"
+    COMPANIONS = "companions"
+    RIVALS = "rivals"
+    TRIALS = "trials"
+    EVIDENCE = "evidence"
+    STAR = "star"
+    OFFSETS = "offsets"
+    REDUCTIONS = "reductions"
+    FOLLOW_UP = "follow-up"
+
+
+class Outcome(StrEnum):
+    """How a check ended."""
+
+    PASSED = "passed"
+    FAILED = "failed"
+    UNTESTED = "cannot be tested"
+
+
+class Standing(StrEnum):
+    """How a claim stands after all checks."""
+
+    STANDS = "stands"
+    OPEN = "not settled"
+    FALLS = "does not stand"
+    UNTESTED = "cannot be judged"
+
+
+@dataclass(frozen=True, kw_only=True)
+class Finding:
+    """One check: what was tested, what came of it, and why it matters."""
+
+    check: Check
+    outcome: Outcome
+    tested: str
+    says: str
+    why: str
+    figures: Mapping[str, float | str | None] = field(default_factory=dict)
+    left_sigma: float | None = None
+    """Significance that is left of the claim once this is allowed for; None where the check is not about that."""
+    on_data: bool = False
+    """Whether it ran on the spectrum itself, and not on the numbers of the claim."""
+
+
+@dataclass(frozen=True, kw_only=True)
+class AuditResult:
+    """A claim with everything that was found."""
+
+    title: str
+    source: str | None
+    invented: bool
+    gas: str
+    claimed_sigma: float | None
+    standing: Standing
+    verdict: str
+    weakest: Check | None
+    findings: tuple[Finding, ...]
+    line_data: tuple[str, ...]
+    assumptions: tuple[str, ...]
+    cautions: tuple[str, ...]
+    version: str
+
+    def finding(self, check: Check) -> Finding:
+        """What one check found."""
+        return next(finding for finding in self.findings if finding.check is check)
+
+
+def judge(gas: str, sigma: float | None, findings: tuple[Finding, ...]) -> tuple[Standing, str, Check | None]:
+    """Standing, verdict as a sentence, and the weakest link.
+
+    The weakest link is the check that leaves the least; among those that leave nothing, the first. A claim falls where
+    a check leaves less than `FALLS_BELOW`, and is not settled where a check has failed but leaves more.
+    """
+    failed = [finding for finding in findings if finding.outcome is Outcome.FAILED]
+    missing = [finding.check.value for finding in findings if finding.outcome is Outcome.UNTESTED]
+    untested = f" Not tested: {', '.join(missing)}." if missing else ""
+    if failed:
+        weakest = min(failed, key=_left)
+        standing = Standing.FALLS if _left(weakest) < FALLS_BELOW else Standing.OPEN
+        head = f"As given, the detection of {gas} {standing.value}"
+        if standing is Standing.OPEN:
+            head = f"As given, the detection of {gas} is {standing.value}"
+        return standing, f"{head}; weakest link, {weakest.check.value}: {weakest.says}{untested}", weakest.check
+    told = [finding for finding in findings if finding.outcome is Outcome.PASSED and finding.left_sigma is not None]
+    if sigma is None or not told:
+        why = "no significance is given" if sigma is None else "too little is given for any check"
+        return Standing.UNTESTED, f"The detection of {gas} cannot be judged: {why}.{untested}", None
+    weakest = min(told, key=_left)
+    sentence = (
+        f"The detection of {gas} stands up to every check that could be made; weakest link, {weakest.check.value}: "
+        f"{weakest.says}{untested}"
+    )
+    return Standing.STANDS, sentence, weakest.check
+
+
+def _left(finding: Finding) -> float:
+    return FALLS_BELOW if finding.left_sigma is None else finding.left_sigma
