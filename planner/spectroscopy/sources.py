@@ -64,7 +64,7 @@ class GasSource:
     partial : tuple of str
         One sentence per stretch of a file that was found and not used, with the reason.
     digest : str
-        Hash of the lines' origin, for the store.
+        Hash of everything the data come from, for the store.
     """
 
     molecule: Molecule
@@ -157,7 +157,7 @@ class LineLibrary:
         return embedded if files is None else files.coefficient_cm5(wavenumber_per_cm, temperature_k, embedded)
 
     def pair_provenance(self, formulas: Iterable[str]) -> tuple[str, ...]:
-        """One sentence per collision file that is used among these gases."""
+        """One sentence per collision file that is used among these gases; a hash of its content is part of it."""
         present = set(formulas)
         return tuple(s for pair, files in self._pairs.items() if present.issuperset(pair) for s in files.sentences)
 
@@ -202,6 +202,7 @@ class LineLibrary:
             digest=digest(
                 constants.digest if constants else "",
                 *(f"{s.file_digest} {s.isotopologue} {s.intervals}" for s in segments),
+                measured.digest if measured else "",
             ),
         )
 

@@ -78,7 +78,7 @@ class MeasuredBands:
             occupied += reach
         self.intervals = union([piece.interval for piece in self._pieces])
         self.depends_on_pressure = any(len(group) > 1 for piece in self._pieces for group in piece.groups)
-        self.digest = digest(*(part for t in tables for part in (_header(t), t.cross_section_cm2.tobytes())))
+        self.digest = _digest(tables)
 
     def cross_section_cm2(
         self, wavenumber_per_cm: NDArray[np.float64], temperature_k: float, pressures_bar: NDArray[np.float64]
@@ -134,8 +134,11 @@ class MeasuredBands:
         return kelvin, spectra[below] + share[:, np.newaxis] * (spectra[above] - spectra[below])
 
 
-def _header(t: CrossSectionTable) -> str:
-    return f"{t.formula} {t.from_per_cm} {t.to_per_cm} {t.temperature_k} {t.pressure_torr}"
+def _digest(tables: Sequence[CrossSectionTable]) -> str:
+    def header(t: CrossSectionTable) -> str:
+        return f"{t.formula} {t.from_per_cm} {t.to_per_cm} {t.temperature_k} {t.pressure_torr}"
+
+    return digest(*(part for t in tables for part in (header(t), t.cross_section_cm2.tobytes())))
 
 
 def _sets(tables: Sequence[CrossSectionTable]) -> list[list[CrossSectionTable]]:
@@ -201,8 +204,8 @@ def _sentence(members: Sequence[CrossSectionTable], free: Sequence[Interval]) ->
     rule = (SPREAD_RULE,) if any(np.any(t.cross_section_cm2 < 0) for t in members) else ()
     return "; ".join(
         (
-            f"{members[0].formula}: measured cross-sections over {stretches} per cm from {names}, in place of all "
-            "embedded data there, joined without blending",
+            f"{members[0].formula}: measured cross-sections over {stretches} per cm from {names} "
+            f"({_digest(members)[:8]}), in place of all embedded data there, joined without blending",
             _states(members),
             *signs,
             *rule,

@@ -23,6 +23,7 @@ from planner.spectroscopy.coverage import Interval, subtract, union
 from planner.spectroscopy.files.cia import CollisionTable
 from planner.spectroscopy.files.rows import signs_of
 from planner.spectroscopy.files.spread import SPREAD_RULE
+from planner.spectroscopy.store import digest
 
 __all__ = ["MeasuredPair"]
 
@@ -165,13 +166,19 @@ def _sentence(blocks: Sequence[CollisionTable], free: Sequence[Interval], file: 
     rule = (SPREAD_RULE,) if any(np.any(block.coefficient_cm5 < 0) for block in blocks) else ()
     return "; ".join(
         (
-            f"{'-'.join(blocks[0].pair)} pairs: coefficients of {Path(file).name} over "
+            f"{'-'.join(blocks[0].pair)} pairs: coefficients of {Path(file).name} ({_digest(blocks)[:8]}) over "
             + ", ".join(_stretch(blocks, interval) for interval in free)
             + f", in place of the embedded ones up to a factor {_HELD_WITHIN:g} beyond these temperatures, the nearest "
             "block held; joined without blending",
             *signs,
             *rule,
         )
+    )
+
+
+def _digest(blocks: Sequence[CollisionTable]) -> str:
+    return digest(
+        *(a.tobytes() for b in blocks for a in (b.wavenumber_per_cm, b.coefficient_cm5, np.array(b.temperature_k)))
     )
 
 

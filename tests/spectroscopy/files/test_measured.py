@@ -73,7 +73,7 @@ def test_sets_with_more_temperatures_stand_first():
     bands = MeasuredBands([broad, table(1.0, 300.0), table(2.0, 200.0, where="b.xsc:1")])
     np.testing.assert_allclose(at(bands, [700.0, 850.0, 1000.0], 300.0), [9.0, 1.0, 9.0])
     assert bands.intervals == ((500.0, 1500.0),)
-    assert "over 500-800, 900-1500 per cm from broad.xsc" in bands.sentences[1]
+    assert "over 500-800, 900-1500 per cm from broad.xsc (" in bands.sentences[1]
 
 
 def test_tables_of_slightly_different_reach():
