@@ -36,7 +36,8 @@ def fit_quadrature(values: Array, share: Array, means: Array, tolerance: float) 
     values : (function, sample)
         In a unit in which an error of one is an error of one for every function.
     share : (sample,)
-        How much each sample counts when the functions are reduced to combinations; >= 0, adding up to 1.
+        How much each sample counts when the functions are reduced to combinations; >= 0, adding up to 1. Samples
+        that count for nothing are not chosen.
     means : (function,)
         What the weighted samples shall give.
     tolerance : float
@@ -77,23 +78,22 @@ def fit_until(
 
 
 class _Combinations:
-    """The functions as orthogonal combinations, largest first: ``rows`` has shape (combination, sample)."""
+    """The functions as orthogonal combinations of samples that count, largest first."""
 
     def __init__(self, values: Array, share: Array, means: Array) -> None:
-        root = np.sqrt(share)
-        weighted = (values - means[:, np.newaxis]) * root
+        self._counting = np.flatnonzero(share)
+        root = np.sqrt(share[self._counting])
+        weighted = (values[:, self._counting] - means[:, np.newaxis]) * root
         # eigenvectors of the samples' products: as good as singular vectors down to 1e-8 of the largest, and cheaper
         squares, vectors = linalg.eigh(weighted.T @ weighted)
-        self.norms = np.sqrt(np.maximum(squares[::-1], 0.0))
-        with np.errstate(divide="ignore", invalid="ignore"):
-            rows = self.norms[:, np.newaxis] * vectors.T[::-1] / root
-        self.rows = np.where(share > 0, rows, 0.0)
+        self._norms = np.sqrt(np.maximum(squares[::-1], 0.0))
+        self._rows = self._norms[:, np.newaxis] * vectors.T[::-1] / root
 
     def fit(self, tolerance: float) -> Quadrature:
-        kept = self.rows[: int(np.searchsorted(-self.norms, -tolerance))]
-        equations = np.vstack([kept, np.full((1, self.rows.shape[1]), _SUM_OF_WEIGHTS)])
+        kept = self._rows[: int(np.searchsorted(-self._norms, -tolerance))]
+        equations = np.vstack([kept, np.full((1, self._counting.size), _SUM_OF_WEIGHTS)])
         wanted = np.zeros(len(equations))
         wanted[-1] = _SUM_OF_WEIGHTS
-        weights, _ = optimize.nnls(equations, wanted, maxiter=20 * self.rows.shape[1])
-        index = np.flatnonzero(weights)
-        return index, weights[index] / weights[index].sum()
+        weights, _ = optimize.nnls(equations, wanted, maxiter=20 * self._counting.size)
+        chosen = np.flatnonzero(weights)
+        return self._counting[chosen], weights[chosen] / weights[chosen].sum()
