@@ -74,7 +74,8 @@ def remedy_text(remedy: Remedy, row: PlanRow) -> str:
     if remedy.kind is RemedyKind.FLOOR:
         if remedy.floor_factor == 0:
             return f"without any floor: {outcome}"
-        return f"a floor of {remedy.floor_ppm:.2g} ppm ({remedy.floor_factor:.2g} of what it is): {outcome}"
+        size = "floors at" if remedy.floor_ppm is None else f"a floor of {remedy.floor_ppm:.2g} ppm,"
+        return f"{size} {remedy.floor_factor:.2g} of the present one: {outcome}"
     if remedy.kind is RemedyKind.AMOUNT:
         ratio = remedy.mixing_ratio or row.mixing_ratio
         return f"{ratio_text(ratio)} of {_first(row.gas)} ({_times(ratio / row.mixing_ratio)} times as much): {outcome}"

@@ -14,7 +14,7 @@ from pydantic.fields import FieldInfo
 from planner.errors import ScenarioError
 from planner.resources import data_folder
 from planner.scenario.locate import heading, line_of
-from planner.scenario.readings import nearest, shown
+from planner.scenario.readings import COMBINED, nearest, shown
 from planner.scenario.records import Scenario
 
 __all__ = ["parse_scenario", "read_scenario", "starting_scenario"]
@@ -81,7 +81,7 @@ def _check_files(scenario: Scenario) -> None:
         if isinstance(mode, Path):
             if not mode.is_file():
                 raise ScenarioError(f"{place}: no such file: {mode}")
-        elif mode not in known:
+        elif mode not in (*known, COMBINED):
             hint = nearest(mode, known) or f"; known modes: {', '.join(known)}"
             raise ScenarioError(f'{place}: expected a known mode or the path of a .toml file, got "{mode}"{hint}')
 

@@ -21,6 +21,7 @@ from pydantic import ValidationInfo
 from planner.errors import LineDataError
 
 __all__ = [
+    "COMBINED",
     "Choice",
     "FieldProblem",
     "FilePath",
@@ -40,6 +41,9 @@ __all__ = [
     "nearest",
     "shown",
 ]
+
+COMBINED = "combined"
+"""Stands among the modes for all of them together."""
 
 # Spellings people use that astropy lacks. "ppt" is parts per trillion, as in atmospheric chemistry.
 _MORE_UNITS = [
@@ -342,6 +346,8 @@ class ModeNames:
             modes.append(FilePath()(item, info) if path else Text(expected=self.expected)(item))
         if len(set(modes)) != len(modes):
             raise _refuse("different modes", value)
+        if COMBINED in modes and len(modes) < 3:
+            raise _refuse(f'at least two modes beside "{COMBINED}"', value)
         return tuple(modes)
 
 

@@ -15,7 +15,7 @@ from planner.scenario import geometry
 from planner.scenario.beliefs import Beliefs
 from planner.scenario.fields import Name, Record, Switch
 from planner.scenario.locate import heading
-from planner.scenario.readings import FieldProblem, ModeNames, Sets, Tables
+from planner.scenario.readings import COMBINED, FieldProblem, ModeNames, Sets, Tables
 from planner.scenario.search import Bins, Candidate, Case, Goal, Noise, Nuisances
 from planner.scenario.target import Atmosphere, Cloud, Haze, Planet, Star
 
@@ -58,7 +58,7 @@ class Scenario(Record):
     together: Annotated[tuple[tuple[str, ...], ...], BeforeValidator(Sets())] = ()
     """Sets of candidates, as formulas, that are also judged as one."""
     modes: Annotated[tuple[str | Path, ...], BeforeValidator(ModeNames())]
-    """Shipped modes by their short name (str), own files as paths."""
+    """Shipped modes by their short name (str), own files as paths; ``"combined"`` for all of them together as well."""
     goal: Goal
     noise: Noise | None = None
     nuisances: Nuisances = Field(default_factory=Nuisances)
@@ -72,6 +72,16 @@ class Scenario(Record):
     def place(self, *keys: str | int) -> str:
         """Where a key stands, for the head of a message: ``demo.toml:14: planet.mass``."""
         return heading(self._text, self._where, keys)
+
+    @property
+    def single_modes(self) -> tuple[str | Path, ...]:
+        """The modes without their combination."""
+        return tuple(mode for mode in self.modes if mode != COMBINED)
+
+    @property
+    def combines(self) -> bool:
+        """Whether all modes together are asked for as well."""
+        return COMBINED in self.modes
 
     # -- geometry -----------------------------------------------------------------------------------------------
 

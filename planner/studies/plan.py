@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
-from math import ceil, floor
+from math import ceil
 from pathlib import Path
 
 import numpy as np
@@ -82,7 +82,7 @@ def plan(
         power=scenario.goal.power,
         transits_available=scenario.goal.transits_available,
         transit_duration_h=scenario.transit_duration_h,
-        charged_hours_per_transit=max(view.charged_hours for view in workshop.views),
+        charged_hours_per_transit=max(view.charged_hours for view in workshop.views if not view.parts),
         scale_height_km=scenario.scale_height_km(),
         scale_height_ppm=scenario.scale_height_ppm(),
         rows=tuple(rows),
@@ -102,7 +102,7 @@ def plan_row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
     known = _counts(measurement.known(), target, scenario, view)
     marginalised = _counts(measurement, target, scenario, view)
     transits = known.transits_unrounded or _CONFUSION_TRANSITS
-    verdict = _verdict(sight, index, known, marginalised, target, _transits_available(scenario))
+    verdict = _verdict(sight, index, known, marginalised, target, view.on_offer(scenario))
     return PlanRow(
         gas=sight.case.label,
         mixing_ratio=sight.case.mixing_ratios[0],
@@ -129,7 +129,7 @@ def _tried(row: PlanRow, workshop: Workshop, sight: Sight, index: int, draws: in
         sight.measurements[index],
         Bins(detector=bins.detector[usable], from_um=bins.from_um[usable], to_um=bins.to_um[usable]),
         row.best_bands[0],
-        transits=row.marginalised.transits_required or _transits_available(workshop.scenario),
+        transits=row.marginalised.transits_required or workshop.views[index].on_offer(workshop.scenario),
         threshold_sigma=workshop.scenario.goal.threshold_sigma,
         draws=draws,
         rng=np.random.default_rng(SEED),
@@ -140,13 +140,14 @@ def _tried(row: PlanRow, workshop: Workshop, sight: Sight, index: int, draws: in
 def _counts(measurement: Measurement, target: float, scenario: Scenario, view: ModeView) -> Counts:
     unrounded = measurement.transits_for(target) if measurement.template_ppm.size else None
     required = None if unrounded is None else max(1, ceil(unrounded - 1e-9))
+    in_transit_h = view.transits_each * scenario.transit_duration_h
     return Counts(
         snr_one_transit=measurement.snr(1.0) if measurement.template_ppm.size else 0.0,
         snr_limit=measurement.snr_limit() if measurement.template_ppm.size else 0.0,
         transits_required=required,
         transits_unrounded=unrounded,
         hours_required=None if required is None else required * view.charged_hours,
-        in_transit_hours_required=None if required is None else required * scenario.transit_duration_h,
+        in_transit_hours_required=None if required is None else required * in_transit_h,
     )
 
 
@@ -159,12 +160,6 @@ def _verdict(sight: Sight, index: int, known: Counts, marginalised: Counts, targ
     if marginalised.transits_required is None:
         return Verdict.FLOOR if known.snr_limit <= target else Verdict.CONFUSION
     return Verdict.WITHIN_REACH if marginalised.transits_required <= available else Verdict.TOO_MANY
-
-
-def _transits_available(scenario: Scenario) -> int:
-    """As stated, else what the orbit offers in five years."""
-    stated = scenario.goal.transits_available
-    return stated if stated is not None else floor(_MISSION_YEARS * 365.25 / scenario.planet.period_d)
 
 
 def _confusion(measurement: Measurement, transits: float) -> tuple[tuple[str, float], ...]:
@@ -248,7 +243,7 @@ def assumptions(workshop: Workshop) -> tuple[str, ...]:
     scenario = workshop.scenario
     goal = scenario.goal
     baseline = scenario.out_of_transit_h
-    available = _transits_available(scenario)
+    available = scenario.transits_on_offer
     sentences = [
         f"detection: one-sided threshold of {goal.threshold_sigma:g} sigma reached with probability {goal.power:g}",
         f"bins of R = {scenario.bins.resolving_power:g}, or the resolution element where that is wider",
@@ -258,6 +253,12 @@ def assumptions(workshop: Workshop) -> tuple[str, ...]:
         "isothermal air with constant mixing ratios; white noise averages down with transits, the floor does not",
     ]
     for view in workshop.views:
+        if view.parts:
+            sentences.append(
+                f"{view.mode.name}: {view.mode.summary}; its transits count those with each, its hours all of them "
+                f"({view.charged_hours:.2f} h for one of each)"
+            )
+            continue
         floor_at = view.mode.floor
         groups = ", ".join(
             f"{d.name} {n}" for d, n in zip(view.mode.detectors, view.noise.groups.tolist(), strict=True)

@@ -125,14 +125,15 @@ class Adviser:
     def _search(self, row: PlanRow, sight: Sight, index: int) -> _Search:
         scenario = self._workshop.scenario
         observed = [*_observed(self._workshop.views, sight)]
+        here = observed[index]
         reached = row.verdict is Verdict.WITHIN_REACH
         return _Search(
             case=sight.case,
             index=index,
-            here=observed[index],
-            elsewhere=tuple(other for i, other in enumerate(observed) if i != index),
+            here=here,
+            elsewhere=() if here.view.parts else tuple(o for o in observed if o is not here and not o.view.parts),
             target=target_snr(scenario.goal.threshold_sigma, scenario.goal.power),
-            transits=(row.marginalised.transits_required if reached else None) or scenario.transits_on_offer,
+            transits=(row.marginalised.transits_required if reached else None) or here.view.on_offer(scenario),
         )
 
     def _modes(self, search: _Search) -> list[Remedy]:
@@ -147,10 +148,11 @@ class Adviser:
         both = _join(search, other)
         unrounded = both.transits_for(search.target)
         required = None if unrounded is None else max(1, ceil(unrounded - 1e-9))
+        on_offer = self._workshop.scenario.transits_on_offer
         hours = search.here.view.charged_hours + other.view.charged_hours
         return Remedy(
             kind=RemedyKind.MODE,
-            enough=required is not None and 2 * required <= self._workshop.scenario.transits_on_offer,
+            enough=required is not None and required * (search.here.view.transits_each + 1) <= on_offer,
             transits=round(search.transits),
             snr=search.snr(both),
             mode=other.view.mode.name,
@@ -304,7 +306,7 @@ def _lower_floor(search: _Search) -> Remedy | None:
         transits=round(search.transits),
         snr=search.target if enough else snr(0.0),
         floor_factor=factor,
-        floor_ppm=factor * floor.depth_ppm,
+        floor_ppm=None if search.here.view.parts else factor * floor.depth_ppm,
     )
 
 

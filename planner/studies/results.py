@@ -111,7 +111,7 @@ class Remedy:
     floor_factor: float | None = None
     """On every floor of the mode, 0 to 1; 0 where even no floor is not enough."""
     floor_ppm: float | None = None
-    """What the factor makes of the floor, at the resolving power that it is quoted for."""
+    """What the factor makes of the floor, at the resolving power that it is quoted for; ``None`` for combined modes."""
     mixing_ratio: float | None = None
     """Of the searched gas, or of the first of a set; the most that was tried where it is not enough."""
     cloud_top_bar: float | None = None

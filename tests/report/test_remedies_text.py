@@ -42,7 +42,8 @@ def row(fake_plan):
         ),
         (replace(MODE, enough=False, transits_required=400, hours_required=3210.0), "more than there are"),
         (replace(MODE, enough=False, transits_required=None), "no number of transits is enough"),
-        (FLOOR, "a floor of 22 ppm (0.43 of what it is): within reach after 100 transits"),
+        (FLOOR, "a floor of 22 ppm, 0.43 of the present one: within reach after 100 transits"),
+        (replace(FLOOR, floor_ppm=None), "floors at 0.43 of the present one: within reach after 100 transits"),
         (
             replace(FLOOR, enough=False, floor_factor=0.0, snr=4.2),
             "without any floor: still only 4.20 sigma after 100 transits",
