@@ -23,7 +23,7 @@ from planner.scenario.fields import (
     Sigmas,
 )
 
-__all__ = ["Bins", "Candidate", "Case", "Goal", "Noise", "Nuisances"]
+__all__ = ["Bins", "Candidate", "Case", "Goal", "Noise", "Nuisances", "Spread"]
 
 
 class Candidate(Record):
@@ -70,6 +70,15 @@ class Nuisances(Record):
     absorbers_dex: Decades = Field(default=1.0, alias="absorbers")
     rivals: Amounts = Field(default_factory=dict)
     """Gases that the air lacks but might hold: width of the prior in mixing ratio, by formula."""
+
+
+class Spread(Record):
+    """Prior widths (one sigma) of what moves the answer and is no nuisance: a search asks for it, or it is a scale."""
+
+    mixing_ratio_dex: Decades = Field(default=0.3, alias="mixing_ratio")
+    """Of the searched gas."""
+    star_radius_fraction: Relative = Field(default=0.03, alias="star_radius")
+    """The planet's radius follows, since transits measure the ratio of the two."""
 
 
 class Bins(Record):
