@@ -7,8 +7,7 @@ one line and 130.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from collections.abc import Callable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -18,6 +17,8 @@ from planner import __version__
 from planner.catalogue.command import gases
 from planner.checkcommand import check
 from planner.errors import PlannerError
+from planner.linecommands import fetch, import_
+from planner.options import Measured, Stretch, progress_bar
 
 if TYPE_CHECKING:
     from planner.scenario import Scenario
@@ -48,42 +49,6 @@ class _Group(click.Group):
         except KeyboardInterrupt:
             click.echo("interrupted", err=True)
             ctx.exit(130)
-
-
-class _Measured(click.ParamType):
-    """A value with a unit, read into the unit of the named measure."""
-
-    name = "value with unit"
-
-    def __init__(self, kind: str, unit: str, example: str) -> None:
-        self.kind, self.unit, self.example = kind, unit, example
-
-    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> float:
-        import astropy.units as u
-
-        from planner.scenario.readings import Measure
-
-        try:
-            return Measure(kind=self.kind, unit=u.Unit(self.unit), example=self.example)(value)
-        except ValueError as error:
-            self.fail(str(error), param, ctx)
-
-
-class _Stretch(click.ParamType):
-    """``FROM:TO UNIT`` in wavenumber, wavelength or frequency, read as two ascending wavenumbers in 1/cm."""
-
-    name = "from:to unit"
-
-    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> tuple[float, float]:
-        import astropy.units as u
-
-        low, _, rest = str(value).partition(":")
-        number, _, unit = rest.strip().partition(" ")
-        try:
-            ends = (u.Quantity([float(low), float(number)], unit)).to_value(u.cm**-1, equivalencies=u.spectral())
-        except (ValueError, TypeError):
-            self.fail(f'expected a range such as "2000:2300 1/cm" or "4.2:4.4 um", got "{value}"', param, ctx)
-        return float(min(ends)), float(max(ends))
 
 
 @click.group(cls=_Group, context_settings={"help_option_names": ["-h", "--help"]})
@@ -199,7 +164,7 @@ def spectrum(scenario: Path, lines_folder: Path | None, out: Path, figure: Path 
     if figure is not None:
         _check_figure(figure)
     planned = read_scenario(scenario)
-    with _progress() as progress:
+    with progress_bar() as progress:
         spectra = study(planned, lines_folder=lines_folder, progress=progress)
     meta = {"title": planned.title, "invented": planned.invented, "limbcast": __version__}
     write_table(spectra_table(spectra, meta), out)
@@ -215,12 +180,12 @@ def spectrum(scenario: Path, lines_folder: Path | None, out: Path, figure: Path 
 
 @cli.command()
 @click.argument("gas")
-@click.option("--temperature", type=_Measured("a temperature", "K", "296 K"), required=True, help='Such as "296 K".')
-@click.option("--pressure", type=_Measured("a pressure", "bar", "1 bar"), required=True, help='Such as "1 bar".')
-@click.option("--range", "stretch", type=_Stretch(), required=True, help='Such as "2000:2300 1/cm" or "4:5 um".')
+@click.option("--temperature", type=Measured("a temperature", "K", "296 K"), required=True, help='Such as "296 K".')
+@click.option("--pressure", type=Measured("a pressure", "bar", "1 bar"), required=True, help='Such as "1 bar".')
+@click.option("--range", "stretch", type=Stretch(), required=True, help='Such as "2000:2300 1/cm" or "4:5 um".')
 @click.option(
     "--step",
-    type=_Measured("a step in wavenumber", "cm-1", "0.01 1/cm"),
+    type=Measured("a step in wavenumber", "cm-1", "0.01 1/cm"),
     default="0.01 1/cm",
     show_default=True,
     help="Step of the even grid.",
@@ -271,7 +236,7 @@ def build(gases: tuple[str, ...]) -> None:
     """Build the lists of some gases, or of all, ahead of their first use."""
     from planner.studies.linedata import build as study
 
-    with _progress() as progress:
+    with progress_bar() as progress:
         sentences = study(gases, progress)
     for sentence in sentences:
         click.echo(sentence)
@@ -280,10 +245,14 @@ def build(gases: tuple[str, ...]) -> None:
 lines.add_command(check)
 
 
+lines.add_command(fetch)
+lines.add_command(import_)
+
+
 def _planned(scenario: Scenario, lines_folder: Path | None, **asked: Any) -> PlanResult:
     from planner.studies.plan import plan as study
 
-    with _progress() as progress:
+    with progress_bar() as progress:
         return study(scenario, lines_folder=lines_folder, progress=progress, **asked)
 
 
@@ -329,22 +298,6 @@ def _show_records(records: Any) -> None:
 
 def _tell_written(*paths: Path) -> None:
     click.echo(f"wrote {', '.join(str(path) for path in paths)}", err=True)
-
-
-@contextmanager
-def _progress() -> Iterator[Progress | None]:
-    """A bar on stderr that goes away when the work is done; nothing where stderr is not a terminal."""
-    from rich.console import Console
-    from rich.progress import BarColumn, Progress, TextColumn, TimeElapsedColumn
-
-    console = Console(stderr=True)
-    if not console.is_terminal:
-        yield None
-        return
-    columns = (TextColumn("{task.description}"), BarColumn(), TimeElapsedColumn())
-    with Progress(*columns, console=console, transient=True) as bars:
-        task = bars.add_task("starting", total=1.0)
-        yield lambda message, fraction: bars.update(task, description=message, completed=fraction)
 
 
 def main() -> None:
