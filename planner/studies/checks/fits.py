@@ -27,8 +27,9 @@ class Fits:
     """
 
     def __init__(self, depth_ppm: Array, error_ppm: Array, directions_ppm: Array) -> None:
-        scaled = directions_ppm / error_ppm
-        self._root = linalg.cholesky(np.eye(error_ppm.size) + scaled.T @ scaled, lower=True)
+        # (1 + S S')^-1/2 = 1 + U (1 / sqrt(1 + d^2) - 1) U' with S = U d V': accurate for nuisances of any width
+        self._vectors, sizes, _ = linalg.svd((directions_ppm / error_ppm).T, full_matrices=False)
+        self._shrink = 1 / np.sqrt(1 + sizes**2) - 1
         self._error = error_ppm
         self._depth = self._white(depth_ppm)
 
@@ -60,7 +61,8 @@ class Fits:
         return (float(white @ self._depth) / norm, 1 / sqrt(norm)) if norm > 0 else (0.0, np.inf)
 
     def _white(self, values_ppm: Array) -> Array:
-        return np.asarray(linalg.solve_triangular(self._root, values_ppm / self._error, lower=True))
+        scaled = values_ppm / self._error
+        return np.asarray(scaled + self._vectors @ (self._shrink * (self._vectors.T @ scaled)))
 
     def _solve(self, shapes_ppm: Sequence[Array]) -> tuple[Array, float]:
         columns = np.array([self._white(shape) for shape in shapes_ppm]).T
