@@ -29,7 +29,9 @@ def part(**changes):
             ["1", "1", 0, 0, [2916.0]],
             ["", "", 4, 0, [-5e-5]],
         ],
-        "system": [{"step": 1, "largest_j": [8], "sum_cm": 5e-18, "moments": [["4", "", 0, 0, [1.0]]]}],
+        "coupled": [
+            {"lower": "P0", "states": ["P1"], "largest_j": [8], "sum_cm": 5e-18, "moments": [["4", "", 0, 0, [1.0]]]}
+        ],
     } | changes
 
 
@@ -44,8 +46,10 @@ def test_rigid_lines_by_hand():
 
 def test_sum_and_lower_states():
     """The cold lines of the first isotopologue have the stated sum; hot bands come with their Boltzmann factor."""
-    system = [{"step": 1, "largest_j": [16, 16], "sum_cm": 5e-18, "moments": [["4", "", 0, 0, [1.0]]]}]
-    lines = tetrahedral_band_lines(part(system=system), METHANE)
+    coupled = [
+        {"lower": "P0", "states": ["P1"], "largest_j": [16, 16], "sum_cm": 5e-18, "moments": [["4", "", 0, 0, [1.0]]]}
+    ]
+    lines = tetrahedral_band_lines(part(coupled=coupled), METHANE)
     cold = np.char.strip(lines.lower_global) == "P0"
     assert lines.intensity_cm[cold].sum() == pytest.approx(5e-18, rel=1e-9)
     # harmonic oscillators: nu4 from nu4 = 1, two quanta above in 3 directions, is as strong as 2 + 2 of the cold band
@@ -85,12 +89,12 @@ def test_isotopologue_shift_and_abundance():
 
 def test_largest_step_leaves_systems_out():
     """A row that stops at one step has no lines of two."""
-    system = [
-        {"step": 1, "largest_j": [3], "sum_cm": 5e-18, "moments": [["4", "", 0, 0, [1.0]]]},
-        {"step": 2, "largest_j": [3], "sum_cm": 1e-17, "moments": [["3", "", 0, 0, [1.0]]]},
+    coupled = [
+        {"lower": "P0", "states": ["P1"], "largest_j": [3], "sum_cm": 5e-18, "moments": [["4", "", 0, 0, [1.0]]]},
+        {"lower": "P0", "states": ["P2"], "largest_j": [3], "sum_cm": 1e-17, "moments": [["3", "", 0, 0, [1.0]]]},
     ]
     rows = [[1, 1.0, [0.0] * 4, 0, 3], [2, 0.011, [0.0] * 4, 0, 1]]
-    lines = tetrahedral_band_lines(part(isotopologues=rows, system=system), METHANE)
+    lines = tetrahedral_band_lines(part(isotopologues=rows, coupled=coupled), METHANE)
     assert set(np.char.strip(lines.upper_global[lines.isotopologue == 2])) == {"P1"}
     assert set(np.char.strip(lines.upper_global[lines.isotopologue == 1])) == {"P1", "P2"}
 
@@ -111,6 +115,13 @@ def test_cut():
     fewer = tetrahedral_band_lines(part(weakest_cm=1e-22), METHANE)
     assert 0 < len(fewer) < len(lines)
     assert fewer.intensity_cm.sum() > 0.999 * lines.intensity_cm.sum()
+
+
+def test_bad_states():
+    """Only transitions from the ground state to one polyad can be stated."""
+    table = {"lower": "P1", "states": ["P2"], "largest_j": [3], "sum_cm": 1e-18, "moments": []}
+    with pytest.raises(LineDataError, match='expected lower "P0" and states such as'):
+        tetrahedral_band_lines(part(coupled=[table]), METHANE)
 
 
 @pytest.mark.parametrize(

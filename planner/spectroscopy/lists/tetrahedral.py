@@ -15,7 +15,8 @@ that the lines of the main isotopologue from the ground state have the stated su
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+import re
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
 import numpy as np
@@ -80,8 +81,9 @@ def tetrahedral_band_lines(part: Mapping[str, Any], hitran_number: int) -> Lines
 
         ``weakest_cm``, the weakest line kept, at 296 or 600 K;
 
-        ``system``, tables with ``step``, the polyads climbed, ``largest_j`` of the lower level for each lower polyad,
-        ``sum_cm`` from the ground state (cm/molecule at 296 K), and ``moments``, rows as in `read_terms` on any scale.
+        ``coupled``, tables with ``lower`` (``"P0"``), ``states`` (the polyad reached from there, such as ``["P2"]``),
+        ``sum_cm`` (cm/molecule at 296 K, first isotopologue), ``moments``, rows as in `read_terms` on any scale, and
+        ``largest_j``, the largest J'' from P0, and from P1, ... for the hot bands as many polyads up.
     hitran_number : int
         Molecule number that the lines carry.
 
@@ -96,19 +98,28 @@ def tetrahedral_band_lines(part: Mapping[str, Any], hitran_number: int) -> Lines
     found = []
     for number, relative, shifts, largest_polyad, largest_step in part["isotopologues"]:
         ladder = _Ladder(hamiltonian, shifts)
-        for index, system in enumerate(part["system"]):
-            if system["step"] > largest_step:
+        for step, coupled in _by_step(part["coupled"], where):
+            if step > largest_step:
                 continue
-            moments = read_terms(system["moments"], vector=True, where=f"{where}, moments {index + 1}")
-            for polyad, largest_j in enumerate(system["largest_j"][: largest_polyad + 1]):
-                columns = ladder.transitions(moments, polyad + system["step"], polyad, largest_j)
+            moments = read_terms(coupled["moments"], vector=True, where=f"{where}, moments to P{step}")
+            for polyad, largest_j in enumerate(coupled["largest_j"][: largest_polyad + 1]):
+                columns = ladder.transitions(moments, polyad + step, polyad, largest_j)
                 # the first isotopologue comes first and its ground state sets the scale
-                scale = scales.setdefault(index, system["sum_cm"] / columns["intensity"].sum())
+                scale = scales.setdefault(step, coupled["sum_cm"] / columns["intensity"].sum())
                 columns["intensity"] *= scale * relative
-                names = (f"P{polyad + system['step']}", f"P{polyad}")
+                names = (f"P{polyad + step}", f"P{polyad}")
                 found.append(_as_lines(columns, part, hitran_number, number, names))
     coupled_functions.cache_clear()  # tens of megabytes that are not needed again
     return Lines.join(found)
+
+
+def _by_step(tables: Sequence[Mapping[str, Any]], where: str) -> Iterator[tuple[int, Mapping[str, Any]]]:
+    """How many polyads each table climbs, and the table."""
+    for table in tables:
+        lower, states = table["lower"], table["states"]
+        if lower != "P0" or len(states) != 1 or not re.fullmatch(r"P[1-9]", states[0]):
+            raise LineDataError(f'{where}: expected lower "P0" and states such as ["P2"], got {lower!r} and {states!r}')
+        yield int(states[0][1:]), table
 
 
 class _Ladder:
