@@ -268,12 +268,12 @@ def test_closed_pipe():
 
 def test_progress_goes_to_a_terminal_only(monkeypatch, capsys):
     """A bar appears on stderr when that is a terminal, and nothing otherwise."""
-    from planner.cli import _progress
+    from planner.options import progress_bar
 
-    with _progress() as progress:
+    with progress_bar() as progress:
         assert progress is None
     monkeypatch.setenv("FORCE_COLOR", "1")
-    with _progress() as progress:
+    with progress_bar() as progress:
         progress("reading lines", 0.5)
     shown = capsys.readouterr()
     assert shown.out == ""
