@@ -133,6 +133,8 @@ def test_methane_levels_and_intensities(reference_folder):
     assert len(keys) > 2000
     assert np.sqrt((shift**2).mean()) < 0.005
     assert np.median(np.abs(ratio)) < 0.03
+    rate = np.log(ours.einstein_a_per_s[mine] / real.einstein_a_per_s[cold])
+    assert rate == pytest.approx(ratio, abs=0.01)
 
 
 def labels(texts: np.ndarray) -> list[tuple[int, str, int]]:

@@ -24,7 +24,7 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.lines import Lines
-from planner.spectroscopy.lists.intensities import relative_intensity, worth_keeping
+from planner.spectroscopy.lists.intensities import einstein_a_per_s, relative_intensity, worth_keeping
 from planner.spectroscopy.lists.polyad_levels import (
     Factors,
     Levels,
@@ -208,6 +208,14 @@ def _as_lines(
         isotopologue=isotopologue,
         wavenumber_per_cm=column["wavenumber"],
         intensity_cm=column["intensity"],
+        einstein_a_per_s=einstein_a_per_s(
+            hitran_number,
+            isotopologue,
+            column["wavenumber"],
+            column["intensity"],
+            column["lower_energy"],
+            column["upper_weight"],
+        ),
         lower_energy_per_cm=column["lower_energy"],
         air_width_per_cm_atm=np.where(column["e_species"], e_lines, others),
         self_width_per_cm_atm=own,
