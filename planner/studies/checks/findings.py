@@ -100,7 +100,7 @@ def judge(gas: str, sigma: float | None, findings: tuple[Finding, ...]) -> tuple
         head = f"As given, the detection of {gas} {standing.value}"
         if standing is Standing.OPEN:
             head = f"As given, the detection of {gas} is {standing.value}"
-        return standing, f"{head}; weakest link, {weakest.check.value}: {weakest.says}{untested}", weakest.check
+        return standing, f"{head}; weakest link, {weakest.check.value}: {weakest.says}.{untested}", weakest.check
     told = [finding for finding in findings if finding.outcome is Outcome.PASSED and finding.left_sigma is not None]
     if sigma is None or not told:
         why = "no significance is given" if sigma is None else "too little is given for any check"
@@ -108,7 +108,7 @@ def judge(gas: str, sigma: float | None, findings: tuple[Finding, ...]) -> tuple
     weakest = min(told, key=_left)
     sentence = (
         f"The detection of {gas} stands up to every check that could be made; weakest link, {weakest.check.value}: "
-        f"{weakest.says}{untested}"
+        f"{weakest.says}.{untested}"
     )
     return Standing.STANDS, sentence, weakest.check
 
