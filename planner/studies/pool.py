@@ -1,4 +1,4 @@
-"""Many small pieces of work side by side, in threads: compiled loops let go of the interpreter, the rest takes turns."""
+"""Many small pieces of work side by side, in threads: compiled loops let go of the interpreter while they run."""
 
 from __future__ import annotations
 

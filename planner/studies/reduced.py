@@ -18,7 +18,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.scenario.records import Case, Scenario
-from planner.spectroscopy.opacity import Opacities
 from planner.spectroscopy.quadrature import Quadrature, fit_until
 from planner.spectroscopy.store import digest
 from planner.studies.domain import Domain, drawn
@@ -111,13 +110,13 @@ class Reduced:
     """A scenario's opacities and bin means on few samples, for it and for every variation of it."""
 
     views: Sequence[ModeView]
-    opacities: Opacities
-    means: Sequence[SparseMeans]
+    model: ForwardModel
+    """Of the scenario itself."""
     error: ReducedError
 
     def of(self, scenario: Scenario) -> Variant:
         """The setting for a variation of the scenario; light and noise stay those of the original."""
-        return Variant(views=self.views, model=ForwardModel(scenario, self.opacities, self.means))
+        return Variant(views=self.views, model=self.model.of(scenario))
 
 
 def reduce_opacity(workshop: Workshop, domain: Domain, *, progress: Progress | None = None) -> Reduced:
@@ -131,16 +130,21 @@ def reduce_opacity(workshop: Workshop, domain: Domain, *, progress: Progress | N
     choice = _Choice(workshop, domain, progress or (lambda text, share: None))
     error, *rows = workshop.store.fetch("reduced", choice.key, choice.make)
     table = np.array(rows)
-    bins = [[_bin_of(table, mode, b) for b in range(len(view.bins))] for mode, view in enumerate(workshop.views)]
+    bins = [[_bin_of(table, mode, b) for b in range(len(view.bins))] for mode, view in enumerate(choice.views)]
+    if workshop.scenario.combines:
+        bins.append([pair for mode in bins for pair in mode])
     index = np.unique(table[:, 2].astype(np.intp))
     return Reduced(
         views=workshop.views,
-        opacities=workshop.opacities.selection(index, own_tables=True),
-        means=[SparseMeans([(np.searchsorted(index, i), w) for i, w in mode]) for mode in bins],
+        model=ForwardModel(
+            workshop.scenario,
+            workshop.opacities.selection(index, own_tables=True),
+            [SparseMeans([(np.searchsorted(index, i), w) for i, w in mode]) for mode in bins],
+        ),
         error=ReducedError(
             samples=index.size,
             of_samples=workshop.opacities.grid.count,
-            bins=sum(len(view.bins) for view in workshop.views),
+            bins=sum(len(view.bins) for view in choice.views),
             atmospheres=_PROOFS,
             transits=workshop.scenario.transits_on_offer,
             worst=float(error[0]),
@@ -172,11 +176,18 @@ class _Functions:
 
 
 class _Choice:
-    """The work of choosing, done when its result is asked for."""
+    """The work of choosing, done when its result is asked for.
+
+    Attributes
+    ----------
+    views : list of ModeView
+        The single modes; a combination has the bins of its parts.
+    """
 
     def __init__(self, workshop: Workshop, domain: Domain, progress: Progress) -> None:
         self._workshop, self._domain, self._progress = workshop, domain, progress
-        self._means = [view.means() for view in workshop.views]
+        self.views = [view for view in workshop.views if not view.parts]
+        self._means = [view.means() for view in self.views]
 
     @property
     def key(self) -> dict[str, Any]:
@@ -186,9 +197,10 @@ class _Choice:
         gases += sorted(workshop.scenario.nuisances.rivals)
         return {
             "code": _code_digest(),
-            "scenario": workshop.scenario.model_dump_json(),
-            "light": [digest(v.weights.tobytes(), v.noise.depth_error_ppm.tobytes()) for v in workshop.views],
-            "bins": [digest(v.bins.from_um.tobytes(), v.floor_ppm2.tobytes()) for v in workshop.views],
+            "scenario": workshop.scenario.model_dump_json(exclude={"title", "goal", "spread"}),
+            "transits": workshop.scenario.transits_on_offer,
+            "light": [digest(v.weights.tobytes(), v.noise.depth_error_ppm.tobytes()) for v in self.views],
+            "bins": [digest(v.bins.from_um.tobytes(), v.floor_ppm2.tobytes()) for v in self.views],
             "grid": [workshop.opacities.grid.first, workshop.opacities.grid.samples_per_unit_ln],
             "gases": [workshop.library.gas(g).digest for g in gases if workshop.opacities.has_data(g)],
             "pairs": workshop.library.pair_provenance(gases),
@@ -200,7 +212,7 @@ class _Choice:
         """A row with the errors (worst, typical, worst in ppm), then rows of mode, bin, position and weight."""
         count = max(_TRAINING, _TRAINING_PER_CASE * len(self._domain.mixing_ratios))
         training, checks = self._functions(count, seed=1, to_the_ends=True), self._functions(_CHECKS, seed=2)
-        every = [(mode, b) for mode, view in enumerate(self._workshop.views) for b in range(len(view.bins))]
+        every = [(mode, b) for mode, view in enumerate(self.views) for b in range(len(view.bins))]
         chosen = {place: self._fit(place, training, checks) for place in every}
         for number in range(_ROUNDS + 1):
             proofs = self._functions(_PROOFS, seed=3 + number)
@@ -240,7 +252,7 @@ class _Choice:
     def _candidates(self, place: tuple[int, int]) -> tuple[NDArray[np.intp], Array]:
         """Samples to choose from, as positions among every fourth, and their share of the photons."""
         mode, number = place
-        view, means = self._workshop.views[mode], self._means[mode]
+        view, means = self.views[mode], self._means[mode]
         inside = np.arange(-(-means.start[number] // _STRIDE), -(-means.stop[number] // _STRIDE))
         photons = view.weights[view.bins.detector[number], inside * _STRIDE]
         return inside, photons / photons.sum() if photons.sum() > 0 else np.full(inside.size, 1 / inside.size)
@@ -250,7 +262,7 @@ class _Choice:
         """Noise of each bin after all the transits on offer, in ppm; infinite where the bin is not usable."""
         transits = self._workshop.scenario.transits_on_offer
         noise = []
-        for view in self._workshop.views:
+        for view in self.views:
             variance = view.noise.depth_error_ppm**2 / transits + np.diag(view.floor_ppm2)
             noise.append(np.where(view.noise.saturated | ~np.isfinite(variance), np.inf, np.sqrt(variance)))
         return noise

@@ -226,9 +226,7 @@ def _factor(name: str, width: float) -> Prior:
 
 
 def _ratio(gas: str, ratio: float, decades: float) -> Prior:
-    return Prior(
-        name=gas, words=f"{decades:g} dex in mixing ratio", value=lambda z: shifted_ratio(ratio, decades * z)
-    )
+    return Prior(name=gas, words=f"{decades:g} dex in mixing ratio", value=lambda z: shifted_ratio(ratio, decades * z))
 
 
 def _cloud(scenario: Scenario) -> list[Prior]:

@@ -26,7 +26,7 @@ def test_few_samples(narrow_workshop, narrow_reduced):
     """A dozen samples per bin or so in place of 500."""
     error = narrow_reduced.error
     assert error.bins == len(narrow_workshop.views[0].bins)
-    assert error.samples == narrow_reduced.opacities.wavenumber_per_cm.size
+    assert error.samples == narrow_reduced.model.opacities.wavenumber_per_cm.size
     assert error.bins < error.samples < 30 * error.bins
     assert error.of_samples > 450 * error.bins
 
@@ -83,7 +83,9 @@ def test_choice_comes_from_the_store(narrow, narrow_workshop, narrow_reduced, mo
 
     monkeypatch.setattr(module._Choice, "make", fail)
     again = reduce_opacity(Workshop(narrow), domain_of(narrow, temperature=True))
-    np.testing.assert_array_equal(again.opacities.wavenumber_per_cm, narrow_reduced.opacities.wavenumber_per_cm)
+    np.testing.assert_array_equal(
+        again.model.opacities.wavenumber_per_cm, narrow_reduced.model.opacities.wavenumber_per_cm
+    )
     assert again.error == narrow_reduced.error
     elsewhere = domain_of(narrow, wider={"cloud_top": (3e-6, 2.0)})
     with pytest.raises(AssertionError, match="chosen again"):
