@@ -13,8 +13,7 @@ from planner.catalogue.read import find_gas, read_hypotheses
 from planner.catalogue.records import Hypothesis, Presence, Prior
 from planner.detection.worth import Occurrence
 from planner.errors import ScenarioError
-from planner.scenario.beliefs import PresenceBelief, PriorBelief
-from planner.scenario.records import Scenario
+from planner.scenario.beliefs import Beliefs, PresenceBelief, PriorBelief
 
 __all__ = [
     "MOST_RATIO",
@@ -48,21 +47,21 @@ class Opinions:
     if_false: Mapping[str, Occurrence]
 
 
-def believed_prior(scenario: Scenario, hypothesis: str) -> Prior:
-    """The prior of ``"life"`` or ``"industry"``: the scenario's word where it has one, else the shipped one.
+def believed_prior(beliefs: Beliefs, hypothesis: str) -> Prior:
+    """The prior of ``"life"`` or ``"industry"``: the user's word where there is one, else the shipped one.
 
     Raises
     ------
     ScenarioError
-        If the scenario's probability lies outside a range that it leaves as it is.
+        If the user's probability lies outside a range that is left as it is.
     """
     prior: Prior = getattr(read_hypotheses(), hypothesis)
-    given: PriorBelief = getattr(scenario.beliefs, hypothesis)
-    return prior.model_copy(update=_update(scenario, ("beliefs", hypothesis), prior, given))
+    given: PriorBelief = getattr(beliefs, hypothesis)
+    return prior.model_copy(update=_update(f"beliefs.{hypothesis}", prior, given))
 
 
-def believed_gas(scenario: Scenario, gas: str, hypothesis: str) -> Hypothesis:
-    """A gas under a hypothesis: the scenario's word where it has one, else the catalogue's.
+def believed_gas(beliefs: Beliefs, gas: str, hypothesis: str) -> Hypothesis:
+    """A gas under a hypothesis: the user's word where there is one, else the catalogue's.
 
     Raises
     ------
@@ -70,29 +69,27 @@ def believed_gas(scenario: Scenario, gas: str, hypothesis: str) -> Hypothesis:
         As `believed_prior`.
     """
     ours = find_gas(gas).hypothesis(hypothesis)
-    if gas not in scenario.beliefs.gases:
+    if gas not in beliefs.gases:
         return ours
-    sides = getattr(scenario.beliefs.gases[gas], hypothesis)
+    sides = getattr(beliefs.gases[gas], hypothesis)
     merged: dict[str, Presence] = {}
     for side, true in (("if_true", True), ("if_false", False)):
         presence, given = ours.presence(true), getattr(sides, side)
-        place = ("beliefs", "gases", gas, hypothesis, side)
-        merged[side] = presence.model_copy(update=_update(scenario, place, presence, given)) if given else presence
+        place = f"beliefs.gases.{gas}.{hypothesis}.{side}"
+        merged[side] = presence.model_copy(update=_update(place, presence, given)) if given else presence
     if sides.if_true is None and sides.if_false is None:
         return ours
     return Hypothesis(if_true=merged["if_true"], if_false=merged["if_false"])
 
 
-def _update(
-    scenario: Scenario, place: tuple[str, ...], ours: Prior | Presence, given: PriorBelief | PresenceBelief
-) -> dict[str, object]:
+def _update(place: str, ours: Prior | Presence, given: PriorBelief | PresenceBelief) -> dict[str, object]:
     """The fields that the scenario gives."""
     update = {name: value for name, value in dict(given).items() if value is not None}
     low, high = update.get("probability_range", ours.probability_range)
     central = update.get("probability", ours.probability)
     if not low <= central <= high:
         raise ScenarioError(
-            f"{scenario.place(*place)}: expected a probability inside its range, {low:g} to {high:g}, got {central:g}; "
+            f"{place}: expected a probability inside its range, {low:g} to {high:g}, got {central:g}; "
             "give probability and probability_range together"
         )
     return update

@@ -50,6 +50,9 @@ class Choice:
     worth: Worth
     bits_spread: tuple[float, float]
     """16 % and 84 % of the opinions on prior, presence and range lie below."""
+    after_detection_spread: tuple[float, float]
+    """The same of the chance of the hypothesis after a detection."""
+    after_null_spread: tuple[float, float]
     wins: float
     """Share of the opinions under which this gas with this mode is worth most."""
 

@@ -13,7 +13,7 @@ from planner import __version__
 from planner.catalogue.read import find_gas, read_catalogue, read_hypotheses
 from planner.catalogue.records import Prior
 from planner.detection.significance import target_snr
-from planner.detection.worth import Channel, entropy_bits, worth
+from planner.detection.worth import Channel, Worth, entropy_bits, worth
 from planner.scenario.records import Scenario
 from planner.studies.beliefs import (
     MOST_RATIO,
@@ -102,39 +102,34 @@ class _Study:
     def __init__(self, workshop: Workshop, hypothesis: str, hours: float, progress: Progress | None) -> None:
         self.workshop, self.scenario = workshop, workshop.scenario
         self.hypothesis, self.hours = hypothesis, hours
-        self.prior: Prior = believed_prior(self.scenario, hypothesis)
+        self.prior: Prior = believed_prior(self.scenario.beliefs, hypothesis)
         self.transits = [floor(hours / view.charged_hours + 1e-9) for view in workshop.views]
         self.survey = Survey(workshop, hypothesis, self.transits, progress or (lambda text, share: None))
 
     def look(self, gases: Sequence[str], seed: int) -> None:
         """See the gases with every mode, and ask every opinion what that is worth."""
         self.survey.look(gases)
-        self.beliefs = {gas: believed_gas(self.scenario, gas, self.hypothesis) for gas in gases}
+        self.beliefs = {gas: believed_gas(self.scenario.beliefs, gas, self.hypothesis) for gas in gases}
         self.pairs = [(gas, index) for gas in gases for index in range(len(self.transits))]
         self.channels = {
             (gas, index): Channel.make(self.survey.curves[gas, index].at_hours, *span(self.beliefs[gas]))
             for gas, index in self.pairs
         }
         drawn = opinions(self.prior, self.beliefs, np.random.default_rng(seed))
-        self.bits = {pair: self._bits(pair, drawn) for pair in self.pairs}
+        self.opinions = {pair: self._opinions(pair, drawn) for pair in self.pairs}
         self.wins, self.nobody_wins = self._winners(drawn)
 
-    def _bits(self, pair: tuple[str, int], drawn: Opinions) -> Array:
-        """Information from the amplitude under every opinion, ``(draw,)``."""
-        gas = pair[0]
-        if not self.beliefs[gas].tells:
-            return np.zeros(drawn.prior.size)
-        kinds = (drawn.if_true[gas], drawn.if_false[gas])
-        return np.asarray(
-            worth(self.channels[pair], *kinds, drawn.prior, self.scenario.goal.threshold_sigma).amplitude_bits
-        )
+    def _opinions(self, pair: tuple[str, int], drawn: Opinions) -> Worth:
+        """The worth under every opinion, ``(draw,)``."""
+        kinds = (drawn.if_true[pair[0]], drawn.if_false[pair[0]])
+        return worth(self.channels[pair], *kinds, drawn.prior, self.scenario.goal.threshold_sigma)
 
     def _winners(self, drawn: Opinions) -> tuple[dict[tuple[str, int], float], float]:
         """Share of the opinions that each gas and mode wins, and the share in which nothing is worth going for."""
-        bits = np.array(list(self.bits.values()))
+        bits = np.array([self.opinions[pair].amplitude_bits for pair in self.pairs])
         worthy = bits.max(axis=0) > _WORTHLESS * np.asarray(entropy_bits(drawn.prior))
         won = np.bincount(np.argmax(bits, axis=0)[worthy], minlength=len(bits)) / worthy.size
-        return dict(zip(self.bits, won.tolist(), strict=True)), float(1 - worthy.mean())
+        return dict(zip(self.pairs, won.tolist(), strict=True)), float(1 - worthy.mean())
 
     def choices(self) -> list[Choice]:
         """Every gas with every mode, the most worth first."""
@@ -146,6 +141,7 @@ class _Study:
         target = target_snr(goal.threshold_sigma, goal.power)
         certain = target_snr(goal.threshold_sigma, _EXCLUDED_WITH)
         sight, curve = self.survey.sights[gas], self.survey.curves[gas, index]
+        views = self.opinions[gas, index]
         row = plan_row(self.workshop, sight, index)
         resembling, unique = self.survey.rivals(gas, index)
         kinds = (occurrence(belief.presence(True)), occurrence(belief.presence(False)))
@@ -164,10 +160,9 @@ class _Study:
             resembling=resembling,
             uniqueness=unique,
             worth=worth(self.channels[gas, index], *kinds, self.prior.probability, goal.threshold_sigma),
-            bits_spread=(
-                float(np.quantile(self.bits[gas, index], 0.16)),
-                float(np.quantile(self.bits[gas, index], 0.84)),
-            ),
+            bits_spread=_spread(views.amplitude_bits),
+            after_detection_spread=_spread(views.after_detection),
+            after_null_spread=_spread(views.after_null),
             wins=self.wins[gas, index],
         )
 
@@ -214,17 +209,31 @@ class _Study:
             nobody_wins=self.nobody_wins,
             accuracy=self.survey.accuracy(leading),
             assumptions=(*assumptions(self.workshop), _DRAWN),
-            line_data=(*self.workshop.line_data(), *self.workshop.store.notices),
+            line_data=(*self._line_data(), *self.workshop.store.notices),
             nuisances=prior_widths(scenario),
             cautions=(*JUDGEMENT, *CAUTIONS, *cautions_about_star(self.workshop)),
             version=__version__,
         )
+
+    def _line_data(self) -> list[str]:
+        """Sources of the gases that were seen, and of the air."""
+        library, opacities = self.workshop.library, self.workshop.opacities
+        gases = [gas for gas in dict.fromkeys([*self.beliefs, *self.scenario.air()]) if opacities.has_data(gas)]
+        sources = [library.gas(gas) for gas in gases]
+        sentences = [sentence for source in sources for sentence in (*source.provenance, *source.partial)]
+        return [*sentences, *library.pair_provenance(gases), *opacities.broadening_notes]
 
 
 _DRAWN = (
     f"{OPINIONS} opinions: probabilities drawn evenly in log odds, half on each side of the central value; ends of "
     f"ranges of mixing ratios moved by up to {SHIFT_DEX:g} dex; mixing ratios above {100 * MOST_RATIO:g} % left out"
 )
+
+
+def _spread(values: float | Array) -> tuple[float, float]:
+    """Between 16 and 84 % of the opinions."""
+    low, high = np.quantile(values, [0.16, 0.84])
+    return float(low), float(high)
 
 
 def _possible(ratio: float | None) -> float | None:

@@ -7,7 +7,7 @@ worked out once.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 from math import ceil, inf, log, log10, sqrt
@@ -36,6 +36,8 @@ _TRACE = 0.02
 _NO_GAS = Case(gases=(), mixing_ratios=())
 _MOST_SNR = 1e4
 """What an S/N without any limit is taken as."""
+_SAME_LN = 1e-3
+"""Mixing ratios closer than this in their logarithm count as one."""
 _NOTICED_SNR = 0.5
 """Relative errors of smaller ones do not count."""
 
@@ -97,7 +99,7 @@ class Survey:
 
     def reference(self, gas: str) -> float:
         """Geometric middle of the range where the hypothesis is true."""
-        low, high = believed_gas(self.scenario, gas, self._hypothesis).presence(True).mixing_ratio_range
+        low, high = believed_gas(self.scenario.beliefs, gas, self._hypothesis).presence(True).mixing_ratio_range
         return sqrt(low * min(high, MOST_RATIO))
 
     def nuisances_of(self, gases: tuple[str, ...]) -> list[Direction]:
@@ -164,7 +166,7 @@ class Survey:
 
     def _nodes(self, gas: str) -> Array:
         """Mixing ratios to compute, ascending; below the lowest the gas is thin."""
-        low, high = span(believed_gas(self.scenario, gas, self._hypothesis))
+        low, high = span(believed_gas(self.scenario.beliefs, gas, self._hypothesis))
         wide = log10(high / low)
         count = int(np.clip(ceil(wide / _NODE_DEX) + 1, *_NODES))
         return np.logspace(log10(high) - min(wide, _NODE_DEX * (count - 1)), log10(high), count)
@@ -173,18 +175,11 @@ class Survey:
         transits = self.transits[index]
         at = {float(x): sight.measurements[index] for x, sight in zip(ratios, others, strict=True)}
         own, place = reference.measurements[index], reference.case.mixing_ratios[0]
-        rough = Response(ln_mixing_ratio=np.log(ratios), snr=np.array([snr_after(m, transits) for m in at.values()]))
+        rough = _response(at, transits)
         found = snr_after(own, transits)
         miss = abs(float(rough(np.array([log(place)]))[0]) / found - 1) if found > _NOTICED_SNR else 0.0
-        at[place] = own
-        points = sorted(at)
-        return Curve(
-            at_hours=Response(
-                ln_mixing_ratio=np.log(points), snr=np.array([snr_after(at[x], transits) for x in points])
-            ),
-            at_limit=Response(ln_mixing_ratio=np.log(points), snr=np.array([snr_after(at[x], inf) for x in points])),
-            miss=miss,
-        )
+        points = {x: measurement for x, measurement in at.items() if abs(log(x / place)) > _SAME_LN} | {place: own}
+        return Curve(at_hours=_response(points, transits), at_limit=_response(points, inf), miss=miss)
 
     def _thinning_error(self, sight: Sight) -> float:
         gas = sight.case.gases[0]
@@ -204,6 +199,13 @@ def snr_after(measurement: Measurement, transits: float) -> float:
     if not measurement.template_ppm.size or not transits:
         return 0.0
     return min(measurement.snr_limit(), _MOST_SNR) if transits == inf else measurement.snr(transits)
+
+
+def _response(measured: Mapping[float, Measurement], transits: float) -> Response:
+    """Significance against mixing ratio, from measurements by mixing ratio."""
+    ratios = sorted(measured)
+    snr = [snr_after(measured[ratio], transits) for ratio in ratios]
+    return Response(ln_mixing_ratio=np.log(ratios), snr=np.array(snr))
 
 
 def _beside(measurement: Measurement, shapes: Sequence[Array]) -> Measurement:
