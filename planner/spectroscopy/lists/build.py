@@ -39,7 +39,6 @@ _LINE_KINDS = {
     "linear": "linear:linear_lines",
     "linear-pi": "doublet:doublet_lines",
     "symmetric": "symmetric:symmetric_lines",
-    "tetrahedral-pair": "tetrahedral:tetrahedral_pair_lines",
     "tetrahedral-band": "tetrahedral:tetrahedral_band_lines",
     "statistical": "statistical:statistical_lines",
     "asymmetric": "asymmetric:asymmetric_lines",
