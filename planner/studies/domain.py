@@ -50,7 +50,13 @@ def distinct_cases(scenario: Scenario) -> list[Case]:
     return list(found.values())
 
 
-def domain_of(scenario: Scenario, *, temperature: bool = False, wider: Mapping[str, Range] | None = None) -> Domain:
+def domain_of(
+    scenario: Scenario,
+    *,
+    temperature: bool = False,
+    wider: Mapping[str, Range] | None = None,
+    mixing_ratios: Mapping[tuple[str, ...], Range] | None = None,
+) -> Domain:
     """The ranges that the priors of a scenario reach, two widths either way.
 
     Parameters
@@ -58,7 +64,9 @@ def domain_of(scenario: Scenario, *, temperature: bool = False, wider: Mapping[s
     temperature : bool
         Whether temperature ranges too, which needs tables for more temperatures; else it stays as it is.
     wider : mapping of parameter to (low, high), optional
-        What a study visits besides, ``mixing_ratio`` among them; ranges are stretched to hold it.
+        What a study visits besides; ranges are stretched to hold it.
+    mixing_ratios : mapping of searched gases to (low, high), optional
+        The same for the mixing ratios of the searched gases.
     """
     priors, planet, atmosphere = scenario.nuisances, scenario.planet, scenario.atmosphere
     clouds = _WIDTHS * priors.cloud_top_dex
@@ -73,11 +81,9 @@ def domain_of(scenario: Scenario, *, temperature: bool = False, wider: Mapping[s
     }
     if temperature:
         ranges["temperature"] = _around(atmosphere.temperature_k, priors.temperature_fraction)
-    wider = dict(wider or {})
-    visited = wider.pop("mixing_ratio", None)
-    ratios = {case.gases: _union(_decades(case.mixing_ratios[0], decades), visited) for case in scenario.cases}
+    wider, ratios = wider or {}, dict(mixing_ratios or {})
     for case in scenario.cases:
-        ratios[case.gases] = _union(ratios[case.gases], _decades(case.mixing_ratios[0], decades))
+        ratios[case.gases] = _union(_decades(case.mixing_ratios[0], decades), ratios.get(case.gases))
     return Domain(ranges=ranges | {n: _union(r, ranges.get(n)) for n, r in wider.items()}, mixing_ratios=ratios)
 
 

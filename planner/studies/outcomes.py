@@ -3,8 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from enum import StrEnum
 
-__all__ = ["Driver", "TransitSpread"]
+import numpy as np
+from numpy.typing import NDArray
+
+__all__ = ["Driver", "LimitCurve", "LimitPoint", "LimitResult", "Obstacle", "TransitSpread"]
+
+Array = NDArray[np.float64]
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -38,3 +44,69 @@ class TransitSpread:
     drivers: tuple[Driver, ...]
     """Shares of the variance of the draws' ranks in significance after ``transits_asked``, largest first; they add to
     less than 1: the rest is interplay, and what a curve of second order misses."""
+
+
+class Obstacle(StrEnum):
+    """Why no mixing ratio is detectable, however many transits."""
+
+    CLOUDS = "clouds too high"
+    CONFUSION = "confusion"
+    FLOOR = "floor"
+    NO_BAND = "no band in range"
+
+
+@dataclass(frozen=True, kw_only=True)
+class LimitPoint:
+    """What some transits reach; ``None`` where no mixing ratio of the range does."""
+
+    transits: int
+    hours: float
+    """Charged."""
+    detectable_ratio: float | None
+    """Smallest mixing ratio that passes the threshold with the chance asked for."""
+    upper_limit_ratio: float | None
+    """What is left of the range when nothing is seen: larger ratios are excluded at the stated confidence."""
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class LimitCurve:
+    """One gas, or set of gases, with one mode. Ratios are those of the first gas; a set keeps its proportions."""
+
+    gas: str
+    mode: str
+    stated_ratios: tuple[float, ...]
+    """Those of the scenario."""
+    points: tuple[LimitPoint, ...]
+    at_best: LimitPoint
+    """With all transits on offer."""
+    detectable_at_all: float | None
+    """After infinitely many transits."""
+    obstacle: Obstacle | None
+    """Set where that is ``None``."""
+    obstacle_words: str
+    ratios: Array
+    """``(ratio,)``, ascending: the curve of growth."""
+    feature_ppm: Array
+    """Largest share of the gas in a usable bin, ``(ratio,)``."""
+    snr_one_transit: Array
+    snr_on_offer: Array
+    """After all transits on offer, ``(ratio,)``."""
+    scale_height_ppm: float
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class LimitResult:
+    """Limits on every gas of a scenario with every mode."""
+
+    title: str
+    invented: bool
+    threshold_sigma: float
+    power: float
+    confidence: float
+    """Of the upper limits, one-sided."""
+    curves: tuple[LimitCurve, ...]
+    line_data: tuple[str, ...]
+    assumptions: tuple[str, ...]
+    nuisances: tuple[tuple[str, str], ...]
+    cautions: tuple[str, ...]
+    version: str

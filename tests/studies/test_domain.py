@@ -21,7 +21,11 @@ def test_two_prior_widths_either_way(narrow):
 
 def test_wider_ranges_are_held(narrow):
     """What a study visits besides stretches the ranges and never narrows them."""
-    domain = domain_of(narrow, wider={"mixing_ratio": (1e-9, 1e-6), "cloud_top": (1e-6, 1e-2), "radius": (0.5, 2.0)})
+    domain = domain_of(
+        narrow,
+        wider={"cloud_top": (1e-6, 1e-2), "radius": (0.5, 2.0)},
+        mixing_ratios={("N2O",): (1e-9, 1e-6)},
+    )
     assert domain.mixing_ratios[("N2O",)] == pytest.approx((1e-9, 1e-3), rel=2e-3)
     assert domain.ranges["cloud_top"] == (1e-6, domain_of(narrow).ranges["cloud_top"][1])
     assert domain.ranges["radius"] == (0.5, 2.0)
