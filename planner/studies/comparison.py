@@ -1,8 +1,8 @@
 """Embedded lists against a folder of real data: where the data are complete, which windows to judge, all verdicts.
 
 Line files are trusted over the intervals that ``coverage.toml`` beside them declares, else over the range in their
-name (``CO2_2100-2300_hitran2012.par``), else over their own runs of lines. Where files of one gas overlap, the newer
-edition counts. Measured cross-sections are trusted where they exceed their noise.
+name (``CO2_2100-2300_hitran2012.par``), else over their own runs of lines. Measured cross-sections are trusted where
+they exceed their noise.
 """
 
 from __future__ import annotations
@@ -15,7 +15,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from planner.spectroscopy.accuracyfile import JudgedWindow
-from planner.spectroscopy.coverage import Interval, inside, subtract, union
+from planner.spectroscopy.coverage import Interval, inside, union
 from planner.spectroscopy.files.folder import DataFiles, LineFile
 from planner.spectroscopy.files.xsc import CrossSectionTable
 from planner.spectroscopy.lines import Lines
@@ -103,12 +103,9 @@ def judge_all(jobs: Sequence[Job], progress: Progress | None = None) -> tuple[Ju
 def _line_jobs(
     constants: Constants, embedded: Lines | None, line_files: Sequence[LineFile], files: DataFiles
 ) -> Iterator[Job]:
-    taken: list[Interval] = []
-    for file in sorted(line_files, key=lambda file: (-_year(_edition(file, files)), file.path.name)):
+    for file in line_files:
         lines = file.lines.where(file.lines.molecule == constants.molecule.hitran_number)
-        complete = subtract(_complete(file, files, constants, lines, embedded), taken)
-        taken += complete
-        for interval in complete:
+        for interval in _complete(file, files, constants, lines, embedded):
             here = lines.where(inside(lines.wavenumber_per_cm, [interval]))
             for window in band_windows(here.wavenumber_per_cm, here.intensity_cm, interval):
                 yield Job(
@@ -142,11 +139,6 @@ def _edition(file: LineFile, files: DataFiles) -> str:
     named = next((row.edition for row in files.declared.get(file.path.name, ()) if row.edition), None)
     found = re.search(r"hitran[_-]?(\d{4})", file.path.name, re.IGNORECASE)
     return named or (f"HITRAN{found[1]}" if found else "")
-
-
-def _year(edition: str) -> int:
-    found = re.search(r"\d{4}", edition)
-    return int(found[0]) if found else 0
 
 
 # ---------------------------------------------------------------- measured cross-sections

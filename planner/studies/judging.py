@@ -46,9 +46,9 @@ _FINE_STEP_PER_CM = 0.02
 _SMOOTH_STEP_PER_CM = 0.05
 _SUM_FROM_CM = 1e-20
 _SUM_TOLERANCE = 0.10
-_END_PER_CM = 25.0
-_END_SHARE = 0.1
-"""A window holds whole bands if less than this share of its intensity lies within 25 per cm of its ends."""
+_END_PER_CM = 10.0
+_END_SHARE = 0.05
+"""A window holds whole bands if less than this share of its intensity lies within 10 per cm of its ends."""
 _LEAST_FACTOR = 1.05
 """Real lists are not better than this themselves (HITRAN gives 2 to 10 % for strong bands)."""
 _SIGMAS_AT_90 = 1.645
@@ -211,13 +211,17 @@ def smooth_sum_cm(constants: Constants, window_per_cm: Interval) -> float:
 
 
 def _alike(embedded: Lines, real: Lines, window: Interval) -> Lines:
-    """The embedded lines that the real list would hold: in its run of lines, of its isotopologues, above its cut."""
+    """The embedded lines that the real list would hold: in its run of lines, of its isotopologues, above its cut.
+
+    Random lines, which name no levels, stand for all lines of their bins together and are not cut.
+    """
     run = next(run for run in runs(real.wavenumber_per_cm) if run[0] <= window[0] and run[1] >= window[1])
     here = real.where(inside(real.wavenumber_per_cm, [window]))
     keep = np.zeros(len(embedded), dtype=bool)
     for isotopologue in np.unique(real.isotopologue):
         cut = cut_off_cm(here.intensity_cm[here.isotopologue == isotopologue])
-        keep |= (embedded.isotopologue == isotopologue) & (embedded.intensity_cm >= cut)
+        strong = (embedded.intensity_cm >= cut) | (embedded.upper_global == "")
+        keep |= (embedded.isotopologue == isotopologue) & strong
     return embedded.where(keep & inside(embedded.wavenumber_per_cm, [(run[0] - _SHIFT_PER_CM, run[1] + _SHIFT_PER_CM)]))
 
 

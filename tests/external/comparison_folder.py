@@ -14,6 +14,7 @@ from __future__ import annotations
 import gzip
 import re
 import sys
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -38,6 +39,20 @@ range_per_cm = [400.0, 7760.0]
 name = "O2_full400-16000_hitran2012.par.gz"
 gas = "O2"
 range_per_cm = [8009.0, 16000.0]
+# Of methanol HITRAN2012 holds the CO stretch; beyond, only stray lines of its wing, where other bands take over.
+[[file]]
+name = "CH3OH_full400-10000_hitran2012.par.gz"
+gas = "CH3OH"
+range_per_cm = [400.0, 1083.0]
+# Beyond 2446 HITRAN2012 stops at J = 15, though higher J carry most of what there is.
+[[file]]
+name = "PH3_full400-10000_hitran2012.par.gz"
+gas = "PH3"
+range_per_cm = [400.0, 2446.0]
+[[file]]
+name = "PH3_full400-10000_hitran2012.par.gz"
+gas = "PH3"
+range_per_cm = [2700.0, 10000.0]
 [[file]]
 name = "HF_4034-4114_sfit.par.gz"
 gas = "HF"
@@ -57,6 +72,8 @@ name = "OCS_4034-4114_sfit.par.gz"
 gas = "OCS"
 range_per_cm = [4105.5, 4114.2]
 """
+BEAM_PATH = {"SO2_NISTquantIR": (2270.0, 2400.0)}
+"""Where a spectrum shows the carbon dioxide of the air in the beam and not the gas."""
 SELECTED = "selected"
 """In the name of files that hold some bands of a stretch only: nothing to compare with."""
 TRUE_PRESSURE_TORR = {"C5H8_isoprene": 760.0, "CHF3_HFC23": 760.0}
@@ -72,8 +89,19 @@ def make_comparison_folder(reference: Path, out: Path) -> Path:
     (out / "coverage.toml").write_text(COMPLETE)
     for path in sorted((reference / "xsc").glob("*.gz")):
         table = read_columns(path) if path.name.endswith(".txt.gz") else read_even_grid(path)
-        (out / f"{path.name.split('.aerxs')[0].split('.txt')[0]}.xsc").write_text(format_xsc(table))
+        name = path.name.split(".aerxs")[0].split(".txt")[0]
+        blocked = next((stretch for start, stretch in BEAM_PATH.items() if name.startswith(start)), None)
+        parts = [table] if blocked is None else [cut(table, 0.0, blocked[0]), cut(table, blocked[1], np.inf)]
+        (out / f"{name}.xsc").write_text("".join(format_xsc(part) for part in parts))
     return out
+
+
+def cut(table: CrossSectionTable, low: float, high: float) -> CrossSectionTable:
+    """The part of a table between two wavenumbers."""
+    nu = table.wavenumber_per_cm
+    inside = (nu >= low) & (nu <= high)
+    ends = {"from_per_cm": round(float(nu[inside][0]), 4), "to_per_cm": round(float(nu[inside][-1]), 4)}
+    return replace(table, cross_section_cm2=table.cross_section_cm2[inside], **ends)
 
 
 def read_even_grid(path: Path) -> CrossSectionTable:
@@ -95,9 +123,7 @@ def read_columns(path: Path) -> CrossSectionTable:
     return _table(path, (wavenumber[0], wavenumber[-1]), values, 296.0, 760.0)
 
 
-def _table(
-    path: Path, ends: tuple[float, float], values: np.ndarray, kelvin: float, torr: float
-) -> CrossSectionTable:
+def _table(path: Path, ends: tuple[float, float], values: np.ndarray, kelvin: float, torr: float) -> CrossSectionTable:
     return CrossSectionTable(
         formula=path.name.split("_")[0],
         from_per_cm=round(float(ends[0]), 4),
