@@ -93,7 +93,7 @@ class Measurement:
 
     def snr(self, transits: float) -> float:
         """Expected significance after a number of transits (may be fractional); 0 for an empty template."""
-        return self._distance(1.0 / transits)
+        return self._distance(1.0 / transits) if self.template_ppm.any() else 0.0
 
     def snr_limit(self) -> float:
         """Best attainable significance, after infinitely many transits; infinite where no floor bounds it."""

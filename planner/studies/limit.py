@@ -154,7 +154,7 @@ class _Growth:
 
     def _largest_snr(self, sight: Sight) -> float:
         pairs = zip(sight.measurements, self.views, strict=True)
-        return max(_snr(measurement, view.on_offer(self.scenario)) for measurement, view in pairs)
+        return max(measurement.snr(view.on_offer(self.scenario)) for measurement, view in pairs)
 
 
 def _span(scenario: Scenario, gases: tuple[str, ...]) -> tuple[float, float]:
@@ -171,7 +171,7 @@ def _curve(growth: _Growth, index: int, transits: Sequence[int], confidence: flo
     exceeded = float(special.ndtri(confidence))
 
     def point(number: int) -> LimitPoint:
-        snr = np.array([_snr(measurement, number) for measurement in measurements])
+        snr = np.array([measurement.snr(number) for measurement in measurements])
         return LimitPoint(
             transits=number,
             hours=number * view.charged_hours,
@@ -180,7 +180,7 @@ def _curve(growth: _Growth, index: int, transits: Sequence[int], confidence: flo
         )
 
     on_offer = view.on_offer(scenario)
-    best = np.array([_limit(measurement) for measurement in measurements])
+    best = np.array([measurement.snr_limit() for measurement in measurements])
     at_all = first_reach(growth.ratios, best, wanted)
     features = np.array([np.abs(m.template_ppm).max(initial=0.0) for m in measurements])
     obstacle, words = (None, "") if at_all is not None else _obstacle(growth, index, wanted, float(features.max()))
@@ -195,8 +195,8 @@ def _curve(growth: _Growth, index: int, transits: Sequence[int], confidence: flo
         obstacle_words=words,
         ratios=growth.ratios,
         feature_ppm=features,
-        snr_one_transit=np.array([_snr(measurement, 1) for measurement in measurements]),
-        snr_on_offer=np.array([_snr(measurement, on_offer) for measurement in measurements]),
+        snr_one_transit=np.array([measurement.snr(1) for measurement in measurements]),
+        snr_on_offer=np.array([measurement.snr(on_offer) for measurement in measurements]),
         scale_height_ppm=scenario.scale_height_ppm(growth.case),
     )
 
@@ -206,21 +206,13 @@ def _obstacle(growth: _Growth, index: int, wanted: float, feature_ppm: float) ->
     cloud = growth.scenario.atmosphere.cloud
     if cloud is not None:
         clear = growth.seen(growth.ratios, cloud_top=np.inf)
-        found = first_reach(growth.ratios, np.array([_limit(s.measurements[index]) for s in clear]), wanted)
+        found = first_reach(growth.ratios, np.array([s.measurements[index].snr_limit() for s in clear]), wanted)
         if found is not None:
             return Obstacle.CLOUDS, f"under a clear sky {found:.2g} would be detectable, given transits enough"
     if feature_ppm < _NO_SIGNAL_PPM:
         return Obstacle.NO_BAND, f"no share of the gas exceeds {_NO_SIGNAL_PPM:g} ppm"
-    known = np.array([_limit(measurement.known()) for measurement in growth.measurements(index)])
+    known = np.array([measurement.known().snr_limit() for measurement in growth.measurements(index)])
     found = first_reach(growth.ratios, known, wanted)
     if found is not None:
         return Obstacle.CONFUSION, f"were all else known, {found:.2g} would be detectable, given transits enough"
     return Obstacle.FLOOR, f"at most {known.max():.2g} sigma, however many transits"
-
-
-def _snr(measurement: Measurement, transits: int) -> float:
-    return measurement.snr(transits) if measurement.template_ppm.size else 0.0
-
-
-def _limit(measurement: Measurement) -> float:
-    return measurement.snr_limit() if measurement.template_ppm.size else 0.0

@@ -8,7 +8,7 @@ from enum import StrEnum
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["Driver", "LimitCurve", "LimitPoint", "LimitResult", "Obstacle", "TransitSpread"]
+__all__ = ["Driver", "LimitCurve", "LimitPoint", "LimitResult", "MapAxis", "MapResult", "Obstacle", "TransitSpread"]
 
 Array = NDArray[np.float64]
 
@@ -105,6 +105,61 @@ class LimitResult:
     confidence: float
     """Of the upper limits, one-sided."""
     curves: tuple[LimitCurve, ...]
+    line_data: tuple[str, ...]
+    assumptions: tuple[str, ...]
+    nuisances: tuple[tuple[str, str], ...]
+    cautions: tuple[str, ...]
+    version: str
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class MapAxis:
+    """One axis of a map.
+
+    Attributes
+    ----------
+    name, label, unit : str
+        As in `planner.studies.vary.PARAMETERS`.
+    logarithmic : bool
+    values : (step,)
+        Ascending.
+    stated : float or None
+        That of the scenario, if it lies on the axis.
+    """
+
+    name: str
+    label: str
+    unit: str
+    logarithmic: bool
+    values: Array
+    stated: float | None
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class MapResult:
+    """Transits over two numbers of a scenario, all else as it stands. Arrays have shape ``(y, x)`` unless stated."""
+
+    title: str
+    invented: bool
+    gas: str
+    mode: str
+    x: MapAxis
+    y: MapAxis
+    threshold_sigma: float
+    power: float
+    transits_on_offer: int
+    charged_hours_per_transit: float
+    transits_unrounded: Array
+    """Infinite where no number of transits is enough."""
+    snr_limit: Array
+    """After infinitely many transits; infinite where nothing bounds it."""
+    snr_one_transit: Array
+    levels: tuple[int, ...]
+    """Numbers of transits worth a contour, ascending."""
+    snr_wanted: float
+    """Expected significance that passes the threshold with the chance asked for."""
+    snr_after: Array
+    """``(level, y, x)``: expected significance after each number of transits."""
     line_data: tuple[str, ...]
     assumptions: tuple[str, ...]
     nuisances: tuple[tuple[str, str], ...]

@@ -150,10 +150,10 @@ def summary(
     """
     goal = scenario.goal
     target = target_snr(goal.threshold_sigma, goal.power)
-    transits = np.array([_transits(measurement, target) for measurement in measurements])
+    transits = np.array([measurement.transits_for(target) or np.inf for measurement in measurements])
     asked = min(required or on_offer, on_offer)
-    significance = np.array([_snr(measurement, asked) for measurement in measurements])
-    best = np.array([_snr(measurement, on_offer) for measurement in measurements])
+    significance = np.array([measurement.snr(asked) for measurement in measurements])
+    best = np.array([measurement.snr(on_offer) for measurement in measurements])
     low, middle, high = np.quantile(transits, _QUANTILES, method="inverted_cdf")
     shares = sorted(zip(variance_shares(quantiles, significance), names, strict=True), reverse=True)
     return TransitSpread(
@@ -252,15 +252,6 @@ def _haze(scenario: Scenario) -> list[Prior]:
         return [Prior(name="haze", words=f"{width:g} dex", value=lambda z: float(factor * 10 ** (width * z)))]
     words = f"one-sided: scattering up by {width:g} dex over that of the air at one sigma (there is none)"
     return [Prior(name="haze", words=words, value=lambda z: float(10 ** (width * z) - 1), one_sided=True)]
-
-
-def _transits(measurement: Measurement, target: float) -> float:
-    found = measurement.transits_for(target) if measurement.template_ppm.size else None
-    return np.inf if found is None else found
-
-
-def _snr(measurement: Measurement, transits: int) -> float:
-    return measurement.snr(transits) if measurement.template_ppm.size else 0.0
 
 
 def _whole(transits: float) -> int | None:
