@@ -59,6 +59,8 @@ class GasSource:
         Measured cross-sections; inside their intervals nothing else of the gas counts.
     covers_per_cm : tuple of (from, to)
         Where the data can be trusted to hold what matters, ascending and disjoint.
+    imported_per_cm : tuple of (from, to)
+        Where files stand for the gas, at least for its main isotopologue, ascending and disjoint.
     provenance : tuple of str
         One sentence per source used.
     partial : tuple of str
@@ -73,6 +75,7 @@ class GasSource:
     constants: Constants | None
     measured: MeasuredBands | None
     covers_per_cm: tuple[Interval, ...]
+    imported_per_cm: tuple[Interval, ...]
     provenance: tuple[str, ...]
     partial: tuple[str, ...]
     digest: str
@@ -194,6 +197,12 @@ class LineLibrary:
                 [
                     *(constants.covers_per_cm if constants else ()),
                     *(interval for segment in segments for interval in segment.intervals),
+                    *(measured.intervals if measured else ()),
+                ]
+            ),
+            imported_per_cm=union(
+                [
+                    *(interval for segment in segments if segment.isotopologue == 1 for interval in segment.intervals),
                     *(measured.intervals if measured else ()),
                 ]
             ),
