@@ -144,7 +144,8 @@ def _show(result: ChoiceResult) -> None:
 
     from planner.report.choices import choice_view
 
-    Console(highlight=False).print(choice_view(result))
+    console = Console(highlight=False)
+    console.print(choice_view(result, console.width))
 
 
 def _write_all(result: ChoiceResult, folder: Path) -> None:

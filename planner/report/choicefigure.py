@@ -21,7 +21,7 @@ from matplotlib.transforms import Bbox
 
 from planner.report.choices import bits_text
 from planner.report.figure import STYLE, WIDTH_MM, add_heading, gas_label, made_by
-from planner.report.words import count_text, hours_text, ratio_text
+from planner.report.words import count_text, ratio_text
 from planner.studies.choices import Choice, ChoiceResult
 from planner.studies.results import Verdict
 
@@ -71,8 +71,12 @@ def worth_figure(result: ChoiceResult) -> Figure:
 
 
 def chart_figure(result: ChoiceResult) -> Figure:
-    """Transits that each gas needs with each mode, gases in the order of their worth."""
-    gases = list(dict.fromkeys(choice.gas for choice in result.choices))
+    """Transits that each gas needs with each mode, gases in the order of their worth.
+
+    Gases that are alike either way and out of reach are left out.
+    """
+    every = dict.fromkeys(choice.gas for choice in result.choices)
+    gases = [gas for gas in every if _tells(gas, result) or _ever(gas, result)] or list(every)
     modes = list(dict.fromkeys(choice.mode for choice in sorted(result.choices, key=lambda c: c.mode)))
     by_place = {(choice.gas, choice.mode): choice for choice in result.choices}
     left, top, bottom = 40.0, 21.0, 13.0
@@ -132,7 +136,7 @@ def _scale(axes: Axes, choices: Sequence[Choice], result: ChoiceResult) -> None:
     axes.axvspan(axes.get_xlim()[0], result.hours, color="0.95", lw=0, zorder=0)
     axes.axvline(result.hours, color="0.35", lw=0.8, dashes=(4, 2), zorder=0)
     axes.annotate(
-        f"{hours_text(result.hours)} h given", (result.hours, 1), (0, 2), xycoords=("data", "axes fraction"),
+        f"{result.hours:.4g} h given", (result.hours, 1), (0, 2), xycoords=("data", "axes fraction"),
         textcoords="offset points", ha="center", va="bottom", fontsize=7.0, color="0.25",
     )  # fmt: skip
     axes.set_xlabel(
@@ -149,6 +153,7 @@ def _label_marks(figure: Figure, axes: Axes, choices: Sequence[Choice]) -> None:
     per_mm = figure.dpi / 25.4
     places = [axes.transData.transform((_hours(choice), _bits(choice))) for choice in choices]
     taken = [Bbox.from_bounds(x - 1.1 * per_mm, y - 1.1 * per_mm, 2.2 * per_mm, 2.2 * per_mm) for x, y in places]
+    taken += _bars(axes, choices)
     frame = axes.get_window_extent(renderer)
     for choice, (x, y) in zip(choices, places, strict=True):
         text = axes.text(0, 0, gas_label(choice.gas), fontsize=7.5, transform=None, va="center", zorder=4)
@@ -173,6 +178,15 @@ def _label_marks(figure: Figure, axes: Axes, choices: Sequence[Choice]) -> None:
             if np.hypot(dx, dy) > 3.5 else None,
         )  # fmt: skip
         taken.append(label.get_window_extent(renderer))
+
+
+def _bars(axes: Axes, choices: Sequence[Choice]) -> list[Bbox]:
+    """Where the lines of the opinions are, on the canvas."""
+    boxes = []
+    for choice in choices:
+        ends = [axes.transData.transform((_hours(choice), bits)) for bits in choice.bits_spread]
+        boxes.append(Bbox([ends[0] - [1, 0], ends[1] + [1, 0]]))
+    return boxes
 
 
 def _list_beside(figure: Figure, result: ChoiceResult, modes: Sequence[str]) -> None:
@@ -233,7 +247,7 @@ def _draw_cell(axes: Axes, column: int, row: int, choice: Choice) -> None:
     shade, dark = _shade(choice)
     axes.add_patch(Rectangle((column, row), 1, 1, facecolor=str(shade), edgecolor="white", lw=0.8))
     if verdict in (Verdict.NO_BAND, Verdict.SATURATED):
-        text, weight = "no band" if verdict is Verdict.NO_BAND else "saturated", "normal"
+        text, weight = "no signal" if verdict is Verdict.NO_BAND else "saturated", "normal"
     elif counts.transits_required is None:
         text, weight = "never" + (" (floor)" if verdict is Verdict.FLOOR else " (confusion)"), "normal"
     else:
@@ -278,6 +292,6 @@ def _frame_chart(axes: Axes, modes: Sequence[str], rows: int, width: float) -> N
 def _chart_note(result: ChoiceResult) -> str:
     return (
         f"Transits for {result.threshold_sigma:g}σ with a chance of {100 * result.power:g} %, all unknowns "
-        f"marginalised. Bold: within {hours_text(result.hours)} h.\nBits about {result.hypothesis} in that time; the "
+        f"marginalised. Bold: within {result.hours:.4g} h.\nBits about {result.hypothesis} in that time; the "
         "presences and priors behind them are judgement."
     )

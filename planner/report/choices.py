@@ -20,24 +20,27 @@ _RANKED = 20
 _WORTH_TELLING = 0.01
 """Share of the best: what is worth less is named in a sentence."""
 _PATTERNS = 8
+_WIDE = 92
+_WIDE_ONLY = ("all\nknown", "yes/no\nbits")
+"""Columns that a narrow terminal goes without."""
 
 
 def choice_text(result: ChoiceResult, width: int = 100) -> str:
     """What `choice_view` shows on a plain terminal of this width."""
     file = io.StringIO()
-    Console(file=file, width=width, force_terminal=False, color_system=None).print(choice_view(result))
+    Console(file=file, width=width, force_terminal=False, color_system=None).print(choice_view(result, width))
     return "\n".join(line.rstrip() for line in file.getvalue().splitlines()) + "\n"
 
 
-def choice_view(result: ChoiceResult) -> Group:
-    """A choice as something a rich console prints."""
+def choice_view(result: ChoiceResult, width: int) -> Group:
+    """A choice as something a rich console of this width prints."""
     letters = mode_letters(result)
     modes = "; ".join(f"{letter} {mode}" for mode, letter in letters.items())
     ranked = telling(result)
     return Group(
         _headline(result),
         Text(f"Modes: {modes}."),
-        *_titled("Worth, for the hours given", _ranking(ranked, letters), _NOTE),
+        *_titled("What it is worth in the hours given", _ranking(ranked, letters, width), _NOTE),
         _rest(result, ranked),
         *_titled("Which gas wins, over the opinions", _winners(result)),
         *_titled("Patterns: several gases in one mode", _patterns(result, letters), _PATTERN_NOTE),
@@ -55,9 +58,9 @@ def choice_view(result: ChoiceResult) -> Group:
 
 
 _NOTE = (
-    "transits: at the mixing ratio shown, all unknowns marginalised, and (in brackets) with all but the gas known. "
-    "bits: what the measured amplitude tells about the hypothesis; yes/no: what a bare detection tells. opinions: "
-    "16 and 84 % of them give less. chance: of the hypothesis after a detection, and after a null, over the same."
+    "transits: at the mixing ratio shown, all unknowns marginalised; all known: with only the gas unknown. bits: what "
+    "the measured amplitude tells about the hypothesis; yes/no: what a bare detection tells. opinions: 16 and 84 % of "
+    "them give less. chance: of the hypothesis after a detection, and after a null, between 16 and 84 % of opinions."
 )
 _PATTERN_NOTE = (
     "each alone: in the order of the gases. A gas that can go costs less than a twentieth of the bits when left out; "
@@ -139,28 +142,33 @@ def _titled(title: str, table: Table, note: str = "") -> list[RenderableType]:
     return [Text(), Text(title, style="bold underline"), table, *([Text(note, style="dim")] if note else [])]
 
 
-def _ranking(choices: Sequence[Choice], letters: Mapping[str, str]) -> Table:
+def _ranking(choices: Sequence[Choice], letters: Mapping[str, str], width: int) -> Table:
     table = _table()
-    for heading, least, justify in (
-        ("\ngas", 7, "left"), ("\n", 1, "left"), ("mixing\nratio", 7, "right"), ("\ntransits", 11, "right"),
-        ("S/N in\nthe h", 6, "right"), ("\nbits", 5, "right"), ("opinions\n16-84 %", 11, "right"),
-        ("yes/no\nbits", 6, "right"), ("chance\nif seen", 9, "right"), ("if not\nseen", 9, "right"),
-    ):  # fmt: skip
-        table.add_column(heading, justify=justify, no_wrap=True, min_width=least)  # type: ignore[arg-type]
+    columns = (
+        ("\ngas", 6), ("\n", 1), ("mixing\nratio", 7), ("\ntransits", 8), ("all\nknown", 5), ("S/N in\nthe h", 6),
+        ("\nbits", 5), ("opinions\n16-84 %", 10), ("yes/no\nbits", 6), ("chance\nif seen", 9), ("if not\nseen", 9),
+    )  # fmt: skip
+    shown = [heading for heading, _ in columns if width >= _WIDE or heading not in _WIDE_ONLY]
+    for heading, least in columns:
+        if heading in shown:
+            left = heading in ("\ngas", "\n")
+            table.add_column(heading, justify="left" if left else "right", no_wrap=True, min_width=least)
     for choice in choices:
-        marginalised, known = choice.plan.marginalised, choice.plan.all_known
-        table.add_row(
+        counts, known = choice.plan.marginalised, choice.plan.all_known
+        cells: tuple[str | Text, ...] = (
             Text(gas_text(choice.gas), style="bold"),
             letters[choice.mode],
             ratio_text(choice.mixing_ratio),
-            f"{count_text(marginalised.transits_required)} ({count_text(known.transits_required)})",
+            count_text(counts.transits_required),
+            Text(count_text(known.transits_required), style="dim"),
             snr_text(choice.snr),
             Text(bits_text(float(choice.worth.amplitude_bits)), style="bold"),
             "-".join(bits_text(end) for end in choice.bits_spread),
-            bits_text(float(choice.worth.detection_bits)),
+            Text(bits_text(float(choice.worth.detection_bits)), style="dim"),
             _span(choice.after_detection_spread),
             _span(choice.after_null_spread),
         )
+        table.add_row(*(cell for cell, (heading, _) in zip(cells, columns, strict=True) if heading in shown))
     return table
 
 

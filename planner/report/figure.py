@@ -28,7 +28,18 @@ from planner.report.points import Points, simulated_points
 from planner.report.words import count_text, gas_text, hours_text, ratio_text
 from planner.studies.results import BandShare, BinnedSpectrum, PlanResult, PlanRow, Verdict
 
-__all__ = ["check_figure_name", "choose_rows", "plan_figure", "spectra_figure", "write_figure"]
+__all__ = [
+    "STYLE",
+    "WIDTH_MM",
+    "add_heading",
+    "check_figure_name",
+    "choose_rows",
+    "gas_label",
+    "made_by",
+    "plan_figure",
+    "spectra_figure",
+    "write_figure",
+]
 
 Array = NDArray[np.float64]
 
@@ -53,7 +64,7 @@ _OTHERS = (
     ((2.5, 1.0), "#c77700"),
     ((8.0, 2.0), "#3d8fa6"),
 )
-_STYLE: dict[Any, Any] = {
+STYLE: dict[Any, Any] = {
     "font.family": "sans-serif",
     "font.sans-serif": ["DejaVu Sans"],
     "font.size": 7.5,
@@ -102,7 +113,7 @@ def plan_figure(result: PlanResult, rows: Sequence[int] | None = None, *, seed: 
         transits = _transits_shown(row, result.transits_available)
         title = _plan_title(row, transits)
         panels.append(_Panel(spectrum=result.spectra[index], title=title, bands=row.best_bands, transits=transits))
-    return _figure(panels, result.title, _made(result.version, result.invented), seed)
+    return _figure(panels, result.title, made_by(result.version, result.invented), seed)
 
 
 def spectra_figure(
@@ -118,7 +129,7 @@ def spectra_figure(
         _Panel(spectrum=spectrum, title=f"{_search(spectrum)}; points for {_transits(transits)}", transits=transits)
         for spectrum in largest.values()
     ]
-    return _figure(panels, title, _made(version, invented), seed)
+    return _figure(panels, title, made_by(version, invented), seed)
 
 
 def write_figure(figure: Figure, path: str | Path) -> None:
@@ -134,7 +145,7 @@ def write_figure(figure: Figure, path: str | Path) -> None:
     kind = path.suffix.lower()
     dates = {".pdf": {"CreationDate": None}, ".svg": {"Date": None}, ".png": None}  # no clock in the file
     data = io.BytesIO()
-    with matplotlib.rc_context(_STYLE):
+    with matplotlib.rc_context(STYLE):
         figure.savefig(data, format=kind[1:], dpi=300, metadata=dates[kind])
     write_bytes(path, data.getvalue())
 
@@ -177,12 +188,12 @@ def _rank(row: PlanRow) -> tuple[float, ...]:
 
 def _figure(panels: Sequence[_Panel], title: str, made: str, seed: int) -> Figure:
     others = _other_gases(panels)
-    with matplotlib.rc_context(_STYLE):
+    with matplotlib.rc_context(STYLE):
         figure, axes = _frame(len(panels))
         for index, (one, panel) in enumerate(zip(axes, panels, strict=True)):
             _draw_panel(one, panel, others, np.random.default_rng([seed, index]))
         _add_legend(figure, others, unusable=not all(panel.spectrum.usable.all() for panel in panels))
-        _add_heading(figure, title, made)
+        add_heading(figure, title, made)
     return figure
 
 
@@ -277,14 +288,15 @@ def _plan_title(row: PlanRow, transits: int) -> str:
 
 
 def _search(row: PlanRow | BinnedSpectrum) -> str:
-    return f"{_math(row.gas)}, {ratio_text(row.mixing_ratio)}, {row.mode}"
+    return f"{gas_label(row.gas)}, {ratio_text(row.mixing_ratio)}, {row.mode}"
 
 
 def _transits(transits: int) -> str:
     return f"{count_text(transits)} transit{'' if transits == 1 else 's'}"
 
 
-def _made(version: str, invented: bool) -> str:
+def made_by(version: str, invented: bool) -> str:
+    """What made a figure, and whether its target exists."""
     return f"limbcast {version}" + ("; the target is invented" if invented else "")
 
 
@@ -341,7 +353,7 @@ def _scale_axes(axes: Axes, spectrum: BinnedSpectrum, points: Points) -> None:
     right.set_ylabel("Scale heights")
 
 
-def _add_heading(figure: Figure, title: str, made: str) -> None:
+def add_heading(figure: Figure, title: str, made: str) -> None:
     """Title on the left; on the right what made the figure and whether the target exists."""
     m, height = MARGINS_MM, figure.get_figheight() * 25.4
     top = 1 - 1.5 / height
@@ -349,7 +361,7 @@ def _add_heading(figure: Figure, title: str, made: str) -> None:
     figure.text(1 - m["right"] / WIDTH_MM, top, made, ha="right", va="top", fontsize=7.0, color="0.25")
 
 
-def _math(gas: str) -> str:
+def gas_label(gas: str) -> str:
     """The name of a gas, or of each gas of a set, with the numbers of a formula lowered."""
     names = [(formula, gas_text(formula)) for formula in gas.split(" + ")]
     return " + ".join(re.sub(r"(\d+)", r"$_{\1}$", name) if name == formula else name for formula, name in names)
@@ -359,7 +371,7 @@ def _add_legend(figure: Figure, others: dict[str, tuple[tuple[float, ...], str]]
     handles: list[Line2D | Patch] = [
         Line2D([], [], color="black", lw=1.1, label="all gases"),
         Patch(facecolor=_SEARCHED, alpha=0.45, label="share of the searched gas"),
-        *(Line2D([], [], color=c, dashes=d, lw=0.9, label=f"share of {_math(g)}") for g, (d, c) in others.items()),
+        *(Line2D([], [], color=c, dashes=d, lw=0.9, label=f"share of {gas_label(g)}") for g, (d, c) in others.items()),
         Line2D([], [], color="black", marker="o", ms=2.4, mfc="white", mew=0.6, lw=0.6, label="simulated observation"),
         Patch(facecolor="black", label="best bands"),
         *([Patch(**_UNUSABLE, label="not usable")] if unusable else []),

@@ -5,7 +5,8 @@ The JSON holds ``format`` (``"limbcast odds 1"``), ``version``, ``title``, ``inv
 2.5, 50 and 97.5 % points of the opinions; ``odds`` (the same of the posterior odds, null for a certainty),
 ``prior_because``, ``weighed`` (list of ``what``, ``ratio``), ``prior_width_dex``, ``evidence_width_dex``,
 ``evidence_dex``, ``even_prior``, ``rests_on_prior``, ``next`` (list of ``gas``, ``could_see``, ``if_found``,
-``if_not``, ``moves_dex``, ``because``), ``relations``, ``likelihood_words`` (lower, higher), ``level``, ``opinions``, ``cautions``.
+``if_not``, ``moves_dex``, ``because``), ``relations``, ``likelihood_words`` (lower, higher), ``level``,
+``opinions``, ``cautions``.
 """
 
 from __future__ import annotations
@@ -121,7 +122,8 @@ def _headline(result: OddsResult) -> Text:
     text.append(f"Chance after the findings: {_chance(low)} to {_chance(high)}", style="bold")
     text.append(
         f" (95 % of {result.opinions} opinions; the middle one {_chance(middle)})\nbefore: "
-        f"{_chance(result.prior[0])} to {_chance(result.prior[2])} (judgement: {result.prior_because})\nodds: {_odds(low)} to {_odds(high)}"
+        f"{_chance(result.prior[0])} to {_chance(result.prior[2])} (judgement: {result.prior_because})\n"
+        f"odds: {_odds(low)} to {_odds(high)}"
     )
     return text
 
@@ -162,7 +164,8 @@ def _weighed(result: OddsResult) -> Table:
 def _sources(result: OddsResult) -> list[str]:
     told = [
         f"the findings move the odds by {result.evidence_dex:+.1f} decades (middle opinion); judging them otherwise "
-        f"moves the answer over {result.evidence_width_dex:.1f} decades, the prior alone over {result.prior_width_dex:.1f}",
+        f"moves the answer over {result.evidence_width_dex:.1f} decades, the prior alone over "
+        f"{result.prior_width_dex:.1f}",
         f"the findings leave the hypothesis even for whoever held it at {_chance(result.even_prior)} before",
     ]
     if result.rests_on_prior:

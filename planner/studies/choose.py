@@ -29,7 +29,7 @@ from planner.studies.beliefs import (
 from planner.studies.choices import Choice, ChoiceResult, Pattern
 from planner.studies.nuisances import prior_widths
 from planner.studies.patterns import Candidate, find_patterns
-from planner.studies.plan import CAUTIONS, assumptions, cautions_about_star, plan_row
+from planner.studies.plan import CAUTIONS, assumptions, cautions_about_star
 from planner.studies.survey import Survey, snr_after
 from planner.studies.workshop import Progress, Workshop
 
@@ -142,7 +142,7 @@ class _Study:
         certain = target_snr(goal.threshold_sigma, _EXCLUDED_WITH)
         sight, curve = self.survey.sights[gas], self.survey.curves[gas, index]
         views = self.opinions[gas, index]
-        row = plan_row(self.workshop, sight, index)
+        row = self.survey.rows[gas, index]
         resembling, unique = self.survey.rivals(gas, index)
         kinds = (occurrence(belief.presence(True)), occurrence(belief.presence(False)))
         return Choice(
@@ -216,12 +216,12 @@ class _Study:
         )
 
     def _line_data(self) -> list[str]:
-        """Sources of the gases that were seen, and of the air."""
+        """Sources of the gases that were seen, and of the rest of the air."""
         library, opacities = self.workshop.library, self.workshop.opacities
-        gases = [gas for gas in dict.fromkeys([*self.beliefs, *self.scenario.air()]) if opacities.has_data(gas)]
-        sources = [library.gas(gas) for gas in gases]
-        sentences = [sentence for source in sources for sentence in (*source.provenance, *source.partial)]
-        return [*sentences, *library.pair_provenance(gases), *opacities.broadening_notes]
+        rest = [gas for gas in self.scenario.air() if gas not in self.beliefs and opacities.has_data(gas)]
+        sentences = [s for gas in rest for s in (*library.gas(gas).provenance, *library.gas(gas).partial)]
+        pairs = library.pair_provenance([*self.beliefs, *rest])
+        return [*self.survey.line_data, *sentences, *pairs, *opacities.broadening_notes]
 
 
 _DRAWN = (

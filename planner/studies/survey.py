@@ -22,6 +22,8 @@ from planner.scenario.records import Case
 from planner.studies.beliefs import MOST_RATIO, believed_gas, span
 from planner.studies.choices import Resembling
 from planner.studies.nuisances import Direction, directions
+from planner.studies.plan import plan_row
+from planner.studies.results import PlanRow
 from planner.studies.workshop import Progress, Sight, Workshop, measurement_of
 
 __all__ = ["Curve", "Survey", "snr_after"]
@@ -36,6 +38,8 @@ _TRACE = 0.02
 _NO_GAS = Case(gases=(), mixing_ratios=())
 _MOST_SNR = 1e4
 """What an S/N without any limit is taken as."""
+_AT_ONCE = 8
+"""Gases whose tables and lists are held in memory together: 0.1 GB each with three modes."""
 _SAME_LN = 1e-3
 """Mixing ratios closer than this in their logarithm count as one."""
 _NOTICED_SNR = 0.5
@@ -71,6 +75,10 @@ class Survey:
     sights : dict of gas to Sight
         At the references.
     curves : dict of (gas, mode's position) to Curve
+    rows : dict of (gas, mode's position) to PlanRow
+        At the references.
+    line_data : list of str
+        Sentences on the sources of the gases.
     """
 
     def __init__(self, workshop: Workshop, hypothesis: str, transits: Sequence[int], progress: Progress) -> None:
@@ -78,6 +86,8 @@ class Survey:
         self.transits = transits
         self.sights: dict[str, Sight] = {}
         self.curves: dict[tuple[str, int], Curve] = {}
+        self.rows: dict[tuple[str, int], PlanRow] = {}
+        self.line_data: list[str] = []
         self._hypothesis, self._progress = hypothesis, progress
         self._shapes: dict[str, tuple[Array, ...]] = {}
 
@@ -91,8 +101,11 @@ class Survey:
             others = [self._sight(gas, ratio, nuisances) for ratio in ratios]
             for index in range(len(self.transits)):
                 self.curves[gas, index] = self._curve(ratios, others, self.sights[gas], index)
+                self.rows[gas, index] = plan_row(self.workshop, self.sights[gas], index)
             self._shapes[gas] = self.sights[gas].templates_ppm
-            self.workshop.opacities.let_go()
+            source = self.workshop.library.gas(gas)
+            self.line_data += [*source.provenance, *source.partial]
+            self._let_go(all_of_it=number % _AT_ONCE == _AT_ONCE - 1)
         for other in dict.fromkeys(other for gas in gases for other in sharing_bands(gas)):
             if other not in self._shapes and self.workshop.opacities.has_data(other):
                 self._shapes[other] = self._shape(other)
@@ -138,6 +151,13 @@ class Survey:
             f"{' and '.join(leading)}",
         )
 
+    def _let_go(self, all_of_it: bool = False) -> None:
+        """Free the tables of the whole grid; now and then also those on few samples and the lists of lines."""
+        self.workshop.opacities.let_go()
+        if all_of_it:
+            self.workshop.thin.opacities.let_go()
+            self.workshop.library.gas.cache_clear()
+
     @cached_property
     def _common(self) -> list[Direction]:
         return self._directions(_NO_GAS)
@@ -161,7 +181,7 @@ class Survey:
         """Share of a gas at its reference, per mode."""
         case = Case(gases=(gas,), mixing_ratios=(self.reference(gas),))
         spectrum = self.workshop.thin.binned(case, shares_of=[gas])
-        self.workshop.opacities.let_go()
+        self._let_go(all_of_it=True)
         return tuple(part.shares_ppm[gas] for part in spectrum)
 
     def _nodes(self, gas: str) -> Array:
@@ -184,7 +204,7 @@ class Survey:
     def _thinning_error(self, sight: Sight) -> float:
         gas = sight.case.gases[0]
         whole = self.workshop.model.binned(sight.case, shares_of=[gas])
-        self.workshop.opacities.let_go()
+        self._let_go()
         worst = 0.0
         for index, (measurement, usable) in enumerate(zip(sight.measurements, sight.usable, strict=True)):
             transits = max(self.transits[index], 1)
