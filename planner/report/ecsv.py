@@ -80,7 +80,8 @@ def spectra_table(spectra: Sequence[BinnedSpectrum], meta: Mapping[str, Any] | N
     """Spectra one below the other, a row per bin.
 
     ``share_<GAS>_ppm`` is the gas's share; it is masked in the spectra of air that lacks the gas. ``depth_ppm`` is
-    the transit depth with all gases, ``scale_height_ppm`` the depth of one scale height.
+    the transit depth with all gases, ``scale_height_ppm`` the depth of one scale height. ``contamination_ppm``, there
+    if the scenario states spots or faculae, is what they add to the depth.
     """
     gases = list(dict.fromkeys(gas for spectrum in spectra for gas in spectrum.shares_ppm))
     counts = [spectrum.from_um.size for spectrum in spectra]
@@ -92,7 +93,8 @@ def spectra_table(spectra: Sequence[BinnedSpectrum], meta: Mapping[str, Any] | N
         table[name] = Column(_joined(spectra, name), unit=unit)
     for gas in gases:
         table[f"share_{gas}_ppm"] = _share(spectra, gas)
-    for name in ("noise_one_transit_ppm", "floor_ppm"):
+    surface = ["contamination_ppm"] if any(s.contamination_ppm is not None for s in spectra) else []
+    for name in (*surface, "noise_one_transit_ppm", "floor_ppm"):
         table[name] = Column(_joined(spectra, name), unit="1e-6")
     table["usable"] = _joined(spectra, "usable")
     heights = np.repeat([spectrum.scale_height_ppm for spectrum in spectra], counts)

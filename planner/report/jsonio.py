@@ -42,6 +42,11 @@ the six above with ``_all_known``       the same with everything but the gas kno
 ``uncovered``                           list of ``gas``, ``from_um``, ``to_um``: stretches without data
 ``saturated``                           list of ``from_um``, ``to_um``
 ``cautions``                            list of sentences
+``star``                                null, or what spots and faculae would do if not thought of: ``stated`` (by the
+                                        scenario; else those usual for such a star), ``sigma`` of the gas feigned after
+                                        ``transits`` (negative: hidden), ``of_the_gas`` (over the gas's own), ``alike``
+                                        (cosine of the shapes beside all other unknowns), ``serious`` (one sigma and
+                                        a fifth of the gas, or more)
 ``rivals``                              list of ``gas``, ``mixing_ratio``, ``snr_left`` of ``snr`` after ``transits``:
                                         gases of the catalogue that the air is not said to hold, each by itself
                                         unknown to that width; empty unless asked for
@@ -124,6 +129,7 @@ def _row(row: PlanRow) -> dict[str, Any]:
         "uncovered": [{"gas": gas, "from_um": a, "to_um": b} for gas, a, b in row.uncovered_um],
         "saturated": [{"from_um": a, "to_um": b} for a, b in row.saturated_um],
         "cautions": list(row.cautions),
+        "star": asdict(row.star) if row.star else None,
         "rivals": [asdict(rival) for rival in row.rivals],
         "remedies": [_remedy(remedy, row) for remedy in row.remedies],
         "simulation": asdict(row.simulation) if row.simulation else None,

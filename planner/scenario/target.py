@@ -39,6 +39,8 @@ from planner.scenario.fields import (
     Switch,
 )
 from planner.scenario.readings import FieldProblem
+from planner.scenario.surface import SurfaceRegion
+from planner.star.heterogeneity import Region, usual_faculae, usual_spots
 
 __all__ = ["Atmosphere", "Cloud", "Haze", "Planet", "Star"]
 
@@ -59,6 +61,8 @@ class Star(Record):
     """File with the user's own spectrum; ``None`` for the built-in one."""
     spectrum_at_earth: Switch = False
     """Whether that spectrum is the flux that arrives here; otherwise only its shape counts."""
+    given_spots: SurfaceRegion | None = Field(default=None, alias="spots")
+    given_faculae: SurfaceRegion | None = Field(default=None, alias="faculae")
 
     @model_validator(mode="after")
     def _one_source_of_mass(self) -> Star:
@@ -72,6 +76,30 @@ class Star(Record):
         if self.spectrum_at_earth and self.spectrum is None:
             raise FieldProblem("expected a spectrum as well, got none", ("spectrum_at_earth",))
         return self
+
+    @model_validator(mode="after")
+    def _regions_on_the_disc(self) -> Star:
+        spots, faculae = self.spots, self.faculae
+        if spots is not None and spots.temperature_k >= self.temperature_k:
+            raise FieldProblem(_not("cooler", self.temperature_k, spots.temperature_k), ("spots", "temperature"))
+        if faculae is not None and faculae.temperature_k <= self.temperature_k:
+            raise FieldProblem(_not("warmer", self.temperature_k, faculae.temperature_k), ("faculae", "temperature"))
+        total = sum(region.fraction for region in (spots, faculae) if region is not None)
+        if total > 1:
+            place = "spots" if spots is not None else "faculae"
+            message = f"expected spots and faculae that cover at most 1 of the disc together, got {total:.4g}"
+            raise FieldProblem(message, (place, "covered_fraction"))
+        return self
+
+    @property
+    def spots(self) -> Region | None:
+        """Spots outside the chord; ``None`` for none."""
+        return self.given_spots.filled(usual_spots(self.temperature_k)) if self.given_spots else None
+
+    @property
+    def faculae(self) -> Region | None:
+        """Faculae outside the chord; ``None`` for none."""
+        return self.given_faculae.filled(usual_faculae(self.temperature_k)) if self.given_faculae else None
 
     @property
     def radius_m(self) -> float:
@@ -180,3 +208,7 @@ class Atmosphere(Record):
             )
             raise FieldProblem(message, ("cloud", "top"))
         return self
+
+
+def _not(wanted: str, photosphere_k: float, region_k: float) -> str:
+    return f"expected {wanted} than the photosphere, {photosphere_k:g} K, got {region_k:g} K"

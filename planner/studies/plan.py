@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import replace
 from math import ceil
 from pathlib import Path
@@ -14,14 +15,18 @@ from planner.detection.significance import Measurement, target_snr
 from planner.instrument.binning import Bins
 from planner.scenario.records import Case, Scenario
 from planner.star.flux import star_cautions
+from planner.studies.contamination import bin_factors, mimic_cautions, mimicry, region_words, usual_caution
+from planner.studies.linecautions import line_cautions
 from planner.studies.nuisances import prior_widths
 from planner.studies.observe import ModeView, source_of_light
 from planner.studies.remedies import Adviser
-from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, Verdict
+from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, StarMimic, Verdict
 from planner.studies.simulation import simulate_search
 from planner.studies.workshop import Progress, Sight, Workshop, see
 
 __all__ = ["CAUTIONS", "Sight", "Workshop", "assumptions", "cautions_about_star", "plan", "plan_row", "see"]
+
+Array = NDArray[np.float64]
 
 CAUTIONS = (
     "These are estimates: confirm exposure settings and noise with the observatory's own tools and staff before "
@@ -34,6 +39,7 @@ _NO_SIGNAL_PPM = 0.1
 """A share that nowhere exceeds this counts as no band in range."""
 _MISSION_YEARS = 5.0
 _BAND_INFORMATION = 0.8
+_NOTHING_SEEN = (Verdict.NO_BAND, Verdict.SATURATED)
 _CONFUSION_TRANSITS = 100.0
 """Transits at which confusion is quoted where even perfect knowledge does not suffice."""
 
@@ -89,8 +95,8 @@ def plan(
         spectra=tuple(spectra),
         line_data=(*workshop.line_data(), *workshop.store.notices),
         assumptions=assumptions(workshop),
-        nuisances=prior_widths(scenario),
-        cautions=(*CAUTIONS, *cautions_about_star(workshop)),
+        nuisances=(*prior_widths(scenario), *region_words(scenario.star)),
+        cautions=(*CAUTIONS, *cautions_about_star(workshop), *_surface_cautions(scenario, rows)),
         version=__version__,
     )
 
@@ -103,6 +109,9 @@ def plan_row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
     marginalised = _counts(measurement, target, scenario, view)
     transits = known.transits_unrounded or _CONFUSION_TRANSITS
     verdict = _verdict(sight, index, known, marginalised, target, view.on_offer(scenario))
+    mimic = _mimic(workshop, sight, index, marginalised) if verdict not in _NOTHING_SEEN else None
+    best_bands = _best_bands(view, sight.usable[index], measurement)
+    about_lines = line_cautions(workshop.library, sight.case.gases, best_bands)
     return PlanRow(
         gas=sight.case.label,
         mixing_ratio=sight.case.mixing_ratios[0],
@@ -110,19 +119,31 @@ def plan_row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
         verdict=verdict,
         marginalised=marginalised,
         all_known=known,
-        best_bands=_best_bands(view, sight.usable[index], measurement),
+        best_bands=best_bands,
         confusion=_confusion(measurement, transits),
         confused_from=measurement.known().snr(transits),
         confused_to=measurement.snr(transits),
         uncovered_um=_uncovered(workshop, sight.case, view),
         saturated_um=view.noise.saturated_um,
-        cautions=(),
+        cautions=(*(mimic_cautions(mimic) if mimic else ()), *about_lines),
+        star=mimic,
+    )
+
+
+def _mimic(workshop: Workshop, sight: Sight, index: int, counts: Counts) -> StarMimic:
+    view, usable = workshop.views[index], sight.usable[index]
+    return mimicry(
+        sight.measurements[index],
+        sight.spectrum[index].depth_ppm[usable],
+        workshop.scenario.star,
+        view.bins.centre_um[usable],
+        counts.transits_required or view.on_offer(workshop.scenario),
     )
 
 
 def _tried(row: PlanRow, workshop: Workshop, sight: Sight, index: int, draws: int) -> PlanRow:
     """The row with its rates tried on simulated observations, the same ones every time."""
-    if not row.best_bands or row.verdict in (Verdict.NO_BAND, Verdict.SATURATED):
+    if not row.best_bands or row.verdict in _NOTHING_SEEN:
         return row
     bins, usable = workshop.views[index].bins, sight.usable[index]
     simulation = simulate_search(
@@ -228,7 +249,17 @@ def binned_spectrum(workshop: Workshop, sight: Sight, index: int) -> BinnedSpect
         floor_ppm=np.sqrt(np.diag(view.floor_ppm2)),
         usable=sight.usable[index],
         scale_height_ppm=workshop.scenario.scale_height_ppm(sight.case),
+        contamination_ppm=_contamination(workshop, sight, index),
     )
+
+
+def _contamination(workshop: Workshop, sight: Sight, index: int) -> Array | None:
+    """What spots and faculae as stated add to the depth in each bin."""
+    star = workshop.scenario.star
+    if star.spots is None and star.faculae is None:
+        return None
+    factor = bin_factors(star, workshop.views)[index]
+    return np.asarray(sight.spectrum[index].depth_ppm * (1 - 1 / factor))
 
 
 def cautions_about_star(workshop: Workshop) -> tuple[str, ...]:
@@ -236,6 +267,12 @@ def cautions_about_star(workshop: Workshop) -> tuple[str, ...]:
     spans = [view.mode.span_um for view in workshop.views]
     star = source_of_light(workshop.scenario)
     return star_cautions(star, min(a for a, _ in spans), max(b for _, b in spans))
+
+
+def _surface_cautions(scenario: Scenario, rows: Sequence[PlanRow]) -> tuple[str, ...]:
+    """What the usual spots and faculae are, where the scenario states none and they would matter."""
+    silent = any(row.star is not None and row.star.serious and not row.star.stated for row in rows)
+    return (usual_caution(scenario.star),) if silent else ()
 
 
 def assumptions(workshop: Workshop) -> tuple[str, ...]:

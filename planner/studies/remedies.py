@@ -20,6 +20,7 @@ from planner.errors import RangeError
 from planner.instrument.modefiles import list_modes, read_mode
 from planner.scenario.records import Case, Scenario
 from planner.star.flux import photon_flux
+from planner.studies.contamination import bin_factors
 from planner.studies.forward import ForwardModel
 from planner.studies.observe import ModeView, source_of_light
 from planner.studies.results import PlanRow, Remedy, RemedyKind, Verdict
@@ -219,7 +220,8 @@ class Adviser:
         else:
             there, absent = model.binned(case), model.binned(case, transparent=case.gases)
             template = there[search.index].depth_ppm - absent[search.index].depth_ppm
-        return template[search.here.usable]
+        factor = bin_factors(self._workshop.scenario.star, [search.here.view])[0]
+        return (template * factor)[search.here.usable]
 
     def _clearer_sky(self, search: _Search) -> Remedy:
         """The cloud top that brings the search within reach, or what no cloud at all gives."""

@@ -19,6 +19,7 @@ __all__ = [
     "RemedyKind",
     "Rival",
     "Simulation",
+    "StarMimic",
     "Verdict",
 ]
 
@@ -132,6 +133,23 @@ class Rival:
 
 
 @dataclass(frozen=True, kw_only=True)
+class StarMimic:
+    """What spots and faculae outside the chord would do to the search, were they not thought of."""
+
+    stated: bool
+    """Those of the scenario; otherwise those usual for such a star were tried."""
+    serious: bool
+    """They would feign or hide at least one sigma and a fifth of the gas."""
+    transits: int
+    sigma: float
+    """Significance of the gas that they would feign, after that many transits; negative where they hide it."""
+    of_the_gas: float
+    """The same over the significance of the gas itself."""
+    alike: float
+    """Cosine between both shapes, beside all other unknowns: 1 for the same, -1 for the opposite."""
+
+
+@dataclass(frozen=True, kw_only=True)
 class PlanRow:
     """One gas at one mixing ratio with one mode."""
 
@@ -158,6 +176,7 @@ class PlanRow:
     """Gases of the catalogue that were tried, dearest first."""
     remedies: tuple[Remedy, ...] = ()
     """What would help, the most first of each kind."""
+    star: StarMimic | None = None
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -180,6 +199,8 @@ class BinnedSpectrum:
     """False where saturated or not covered."""
     scale_height_ppm: float
     """Depth change of one scale height."""
+    contamination_ppm: NDArray[np.float64] | None = None
+    """What spots and faculae of the star add to the depth; ``None`` where the scenario states none."""
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)

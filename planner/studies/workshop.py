@@ -15,6 +15,7 @@ from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.opacity import Opacities
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
+from planner.studies.contamination import bin_factors, contaminated, region_directions
 from planner.studies.forward import BinnedDepth, ForwardModel
 from planner.studies.nuisances import Direction, directions
 from planner.studies.observe import ModeView, observing_grid, view_modes
@@ -112,10 +113,12 @@ def see(setting: Setting, case: Case) -> Sight:
     """The spectrum of a case, its template and nuisances, in the bins of every mode."""
     model, views = setting.model, setting.views
     others = [gas for gas in model.scenario.air(case) if gas not in case.gases]
-    spectrum = model.binned(case, shares_of=[*case.gases, *others])
-    null = model.binned(case, shares_of=others, transparent=case.gases)
+    factors = bin_factors(model.scenario.star, views)
+    spectrum = _through(factors, model.binned(case, shares_of=[*case.gases, *others]))
+    null = _through(factors, model.binned(case, shares_of=others, transparent=case.gases))
     templates = [_template(case, there, absent) for there, absent in zip(spectrum, null, strict=True)]
     nuisances = directions(setting.thin, case, null, views)
+    nuisances += region_directions(model.scenario.star, null, views)
     usable = [np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views]
     return Sight(
         case=case,
@@ -124,6 +127,15 @@ def see(setting: Setting, case: Case) -> Sight:
         templates_ppm=tuple(templates),
         spectrum=spectrum,
     )
+
+
+def _through(factors: Sequence[Array], spectrum: Sequence[BinnedDepth]) -> tuple[BinnedDepth, ...]:
+    """A spectrum as spots and faculae of the star make it look.
+
+    Directions by steps of the forward model go without the factor: it changes them by the per cent that it differs
+    from 1, and nobody knows their prior widths as well.
+    """
+    return tuple(contaminated(part, factor) for part, factor in zip(spectrum, factors, strict=True))
 
 
 def _template(case: Case, spectrum: BinnedDepth, null: BinnedDepth) -> Array:

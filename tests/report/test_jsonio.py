@@ -33,6 +33,7 @@ ROW_KEYS = {
     "cautions",
     "confused_from",
     "confused_to",
+    "star",
     "rivals",
     "remedies",
     "simulation",

@@ -24,6 +24,7 @@ from planner.scenario import (
     read_scenario,
     starting_scenario,
 )
+from planner.scenario.surface import SurfaceRegion
 
 DEMO = (data_folder("configs") / "scenarios" / "demo.toml").read_text()
 
@@ -209,8 +210,20 @@ def test_every_key_is_documented():
     documented = {
         key for row in re.findall(r"^\| (`.*?`) \|", text, re.MULTILINE) for key in re.findall(r"`(\w+)`", row)
     }
-    records = [Scenario, Star, Planet, Atmosphere, Cloud, Haze, Candidate, Goal, Noise, Nuisances, Bins]
+    records = [Scenario, Star, SurfaceRegion, Planet, Atmosphere, Cloud, Haze, Candidate, Goal, Noise, Nuisances, Bins]
     keys = {field.alias or name for record in records for name, field in record.model_fields.items()}
     # "haze" is a table of the atmosphere and a key of the nuisances
-    tables = {"star", "planet", "atmosphere", "cloud", "candidates", "goal", "noise", "nuisances", "bins"}
+    tables = {
+        "star",
+        "spots",
+        "faculae",
+        "planet",
+        "atmosphere",
+        "cloud",
+        "candidates",
+        "goal",
+        "noise",
+        "nuisances",
+        "bins",
+    }
     assert documented == keys - tables

@@ -5,7 +5,15 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from planner.star import contamination_factor, region_contrast, usual_spot_temperature_k
+from planner.star import (
+    Region,
+    contamination_factor,
+    disc_factor,
+    region_contrast,
+    usual_faculae,
+    usual_spot_temperature_k,
+    usual_spots,
+)
 from planner.star.model import blackbody_photons, package_table
 
 GRID_UM = np.geomspace(0.6, 12.0, 200)
@@ -62,3 +70,34 @@ def test_usual_spot_temperature() -> None:
     assert usual_spot_temperature_k(3000.0) == pytest.approx(2580.0)
     assert usual_spot_temperature_k(5250.0) == pytest.approx(3814.5)
     assert usual_spot_temperature_k(3665.0) == pytest.approx(usual_spot_temperature_k(3666.0), abs=1.0)
+
+
+def test_usual_regions_by_type() -> None:
+    """TRAPPIST-1 as published at its own temperature; fewer spots on warmer stars; held beyond the table."""
+    assert (usual_spots(2566.0).fraction, usual_faculae(2566.0).fraction) == (0.08, 0.54)
+    assert usual_spots(2000.0).fraction == 0.08
+    assert usual_spots(3060.0).fraction > usual_spots(4440.0).fraction > usual_spots(6000.0).fraction == 0.006
+    assert usual_spots(5250.0).temperature_error_k == 300.0
+    assert usual_spots(2650.0).temperature_error_k == pytest.approx(0.07 * 2650.0)
+    assert usual_faculae(2650.0).temperature_k == 2750.0
+
+
+def test_disc_with_both_regions() -> None:
+    """The factor is that of the published formula with the contrasts of both regions; nothing there is a factor 1."""
+    spots, faculae = usual_spots(3000.0), usual_faculae(3000.0)
+    expected = contamination_factor(
+        spots.fraction,
+        faculae.fraction,
+        region_contrast(3000.0, spots.temperature_k, GRID_UM),
+        region_contrast(3000.0, faculae.temperature_k, GRID_UM),
+    )
+    assert np.array_equal(disc_factor(3000.0, spots, faculae, GRID_UM), expected)
+    assert np.array_equal(disc_factor(3000.0, None, None, GRID_UM), np.ones(200))
+    assert np.all(disc_factor(3000.0, spots, None, GRID_UM) > 1)
+    assert np.all(disc_factor(3000.0, None, faculae, GRID_UM) < 1)
+
+
+def test_region_without_contrast_changes_nothing() -> None:
+    """A region like the photosphere is not seen."""
+    same = Region(temperature_k=3000.0, temperature_error_k=0.0, fraction=0.5, fraction_error=0.0)
+    assert disc_factor(3000.0, same, None, GRID_UM) == pytest.approx(1.0)
