@@ -114,9 +114,16 @@ class Reduction(_Quoted):
     """What another reduction of the same data gave."""
 
     by: Name
+    sees: Switch = True
+    """Whether it sees the feature; false where only words to that effect were published."""
     later: Switch = False
     """Whether it was published after the claim, by others."""
     source: OptionalWords = None
+
+    @property
+    def left_sigma(self) -> float | None:
+        """As quoted, or nothing where it sees nothing; None where it sees the feature and gives no figure."""
+        return self.sigma if self.sees else 0.0
 
 
 class Claim(Record):

@@ -83,7 +83,9 @@ def parse_observed(text: str, where: str) -> ObservedSpectrum:
     names, detector = _detectors(table, where)
     depth, error = (_column(table, name, "ppm", where) for name in ("depth", "error"))
     if np.any(error <= 0):
-        raise ScenarioError(f'{where}: column "error": expected errors above zero in every row, got {error.min():g} ppm')
+        raise ScenarioError(
+            f'{where}: column "error": expected errors above zero in every row, got {error.min():g} ppm'
+        )
     from_um, to_um = _edges(table, detector, where)
     _check_bins(from_um, to_um, detector, where)
     order = np.lexsort((from_um, detector))
@@ -141,7 +143,7 @@ def _column(table: Table, name: str, unit: str, where: str) -> Array:
     """A column of finite numbers in a unit."""
     import astropy.units as u
 
-    from planner.scenario.readings import _MORE_UNITS  # noqa: PLC2701
+    from planner.scenario.readings import _MORE_UNITS
 
     if name not in table.colnames:
         raise ScenarioError(f'{where}: expected {_HOW}; no column "{name}"')

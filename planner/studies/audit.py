@@ -114,7 +114,12 @@ def _bench(
 
 
 def _line_data(bench: Bench | None) -> tuple[str, ...]:
-    return bench.model.opacities.broadening_notes if bench is not None else ()
+    """What is used of the claimed gas and of the gases in the air."""
+    if bench is None:
+        return ()
+    gases = dict.fromkeys([bench.gas, *bench.scenario.atmosphere.absorbers])
+    known = [bench.library.gas(gas) for gas in gases if bench.model.opacities.has_data(gas)]
+    return tuple(sentence for source in known for sentence in (*source.provenance, *source.partial))
 
 
 def _assumptions(bench: Bench | None) -> tuple[str, ...]:
@@ -132,7 +137,9 @@ def _assumptions(bench: Bench | None) -> tuple[str, ...]:
         f"mixing ratio in use: {bench.mixing_ratio:.3g}",
     ]
     if not bench.on_data:
-        sentences.append("no spectrum: the expected one stands in for it, with errors that make it as significant as claimed")
+        sentences.append(
+            "no spectrum: the expected one stands in for it, with errors that make it as significant as claimed"
+        )
     if bench.scenario.atmosphere.temperature_k > _LISTS_UP_TO_K:
         sentences.append(
             f"embedded line lists are made for up to {_LISTS_UP_TO_K:g} K: above, hot bands are missing and windows "

@@ -42,11 +42,12 @@ __all__ = ["MOST_RATIO", "Bench", "floor_of", "height_ppm", "make_bench"]
 Array = NDArray[np.float64]
 Progress = Callable[[str, float], None]
 
-MOST_RATIO = 0.04
+MOST_RATIO = 0.01
 """Most of a gas that is tried: a trace. More of it changes the air itself and is another claim."""
 _LEAST_RATIO = 1e-10
 _PER_DECADE = 1
 _RESOLVING_POWER = 100.0
+_NOISE_SAMPLES = 20_000
 _SAMPLES_PER_BIN = 60
 """Of the forward model: the sampling noise of a bin is then about 0.2 scale heights."""
 _LEVEL_PPM = 1e4
@@ -81,6 +82,7 @@ class Bench:
     one_transit_ppm: Array | None
     observed: ObservedSpectrum | None
     model: ForwardModel
+    library: LineLibrary
 
     # -- what the air does --------------------------------------------------------------------------------------
 
@@ -124,7 +126,7 @@ class Bench:
         """As claimed, else what makes the claimed height, else what the catalogue takes for a rival."""
         stated, amplitude = self.claim.claim.mixing_ratio, self.claim.claim.amplitude_ppm
         if stated is not None:
-            return min(stated, MOST_RATIO)
+            return stated
         if amplitude is not None:
             return self.ratio_for(amplitude) or MOST_RATIO
         return min(rival_ratio(self.gas), MOST_RATIO)
@@ -246,25 +248,16 @@ def make_bench(
     """
     mode = read_mode(claim.search.mode) if claim.search.mode is not None else None
     scenario = claim.scenario((claim.search.mode or "near-infrared-prism",))
-    bins, detectors = _bins(claim, mode, observed)
+    bins, detectors, white = _bins(claim, scenario, mode, observed)
     grid = LogGrid.covering(float(bins.from_um.min()), float(bins.to_um.max()))
     photons = photon_flux(source_of_light(scenario), grid.wavelength_um)
-    white = None
-    if mode is not None and observed is None:
-        noise = transit_noise(
-            mode, bins, grid.wavelength_um, photons,
-            in_transit_s=3600 * scenario.transit_duration_h, out_of_transit_s=3600 * scenario.out_of_transit_h,
-        )  # fmt: skip
-        kept = np.isfinite(noise.depth_error_ppm) & ~noise.saturated
-        if not kept.any():
-            raise RangeError(f"{mode.name}: every bin from {claim.claim.from_um:g} to {claim.claim.to_um:g} um saturates")
-        bins, white = _some(bins, kept), noise.depth_error_ppm[kept]
     narrowest = float(bins.width_ln.min()) * SAMPLES_PER_UNIT_LN
     index = np.arange(0, grid.count, max(1, int(narrowest / _SAMPLES_PER_BIN)))
     weights = np.tile(photons[index] * grid.wavelength_um[index], (int(bins.detector.max()) + 1, 1))
     store = Store()
+    library = LineLibrary(store, lines_folder)
     opacities = Opacities(
-        LineLibrary(store, lines_folder),
+        library,
         store,
         grid,
         air=scenario.air(),
@@ -284,6 +277,7 @@ def make_bench(
         one_transit_ppm=white,
         observed=observed,
         model=ForwardModel(scenario, opacities, [means]),
+        library=library,
     )
 
 
@@ -292,21 +286,36 @@ def floor_of(bench: Bench) -> Array | None:
     return floor_covariance(bench.mode, bench.bins) if bench.mode is not None and not bench.on_data else None
 
 
-def _bins(claim: Claim, mode: Mode | None, observed: ObservedSpectrum | None) -> tuple[Bins, tuple[str, ...]]:
+def _bins(
+    claim: Claim, scenario: Scenario, mode: Mode | None, observed: ObservedSpectrum | None
+) -> tuple[Bins, tuple[str, ...], Array | None]:
+    """Bins of the spectrum, or usable ones of the mode or plain ones in the claimed range; with them, names of the
+    detectors, and the white noise of one transit where it can be predicted."""
     if observed is not None:
         bins = Bins(detector=observed.detector, from_um=observed.from_um, to_um=observed.to_um)
-        return bins, observed.detectors
+        return bins, observed.detectors, None
     low, high = claim.claim.from_um, claim.claim.to_um
     if mode is None:
         edges = np.geomspace(low, high, max(2, ceil(_RESOLVING_POWER * log(high / low))) + 1)
-        return Bins(detector=np.zeros(edges.size - 1), from_um=edges[:-1], to_um=edges[1:]), ("the spectrum",)
-    power = claim.search.bin_resolving_power or _RESOLVING_POWER
-    bins = make_bins(mode, min(power, _RESOLVING_POWER))
+        plain = Bins(detector=np.zeros(edges.size - 1), from_um=edges[:-1], to_um=edges[1:])
+        return plain, ("the spectrum",), None
+    bins = make_bins(mode, _RESOLVING_POWER)
+    wavelength = np.geomspace(*mode.span_um, _NOISE_SAMPLES)
+    wavelength[[0, -1]] = mode.span_um  # rounding must not leave the ends out
+    noise = transit_noise(
+        mode,
+        bins,
+        wavelength,
+        photon_flux(source_of_light(scenario), wavelength),
+        in_transit_s=3600 * scenario.transit_duration_h,
+        out_of_transit_s=3600 * scenario.out_of_transit_h,
+    )
     inside = (bins.centre_um >= low) & (bins.centre_um <= high)
-    if inside.sum() < 2:
-        raise RangeError(f"{mode.name}: expected at least two bins from {low:g} to {high:g} um, got {int(inside.sum())}")
-    return _some(bins, inside), tuple(detector.name for detector in mode.detectors)
-
-
-def _some(bins: Bins, kept: NDArray[np.bool_]) -> Bins:
-    return replace(bins, detector=bins.detector[kept], from_um=bins.from_um[kept], to_um=bins.to_um[kept])
+    kept = inside & np.isfinite(noise.depth_error_ppm) & ~noise.saturated
+    if kept.sum() < 2:
+        raise RangeError(
+            f"{mode.name}: expected at least two usable bins from {low:g} to {high:g} um, got {int(kept.sum())} "
+            f"({int((inside & noise.saturated).sum())} saturate)"
+        )
+    chosen = replace(bins, detector=bins.detector[kept], from_um=bins.from_um[kept], to_um=bins.to_um[kept])
+    return chosen, tuple(detector.name for detector in mode.detectors), noise.depth_error_ppm[kept]

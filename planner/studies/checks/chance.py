@@ -15,7 +15,9 @@ from planner.studies.checks.findings import NEEDED_SIGMA, Check, Finding, Outcom
 
 __all__ = ["check_evidence", "check_trials"]
 
-_WHY_TRIALS = "Who looks for many gases in many bands with many models finds something by chance; that has to be paid for."
+_WHY_TRIALS = (
+    "Who looks for many gases in many bands with many models finds something by chance; that has to be paid for."
+)
 _WHY_EVIDENCE = (
     "A significance is not a probability that the gas is there: even the most favourable reading moves the odds by a "
     "bounded factor only."
@@ -23,6 +25,7 @@ _WHY_EVIDENCE = (
 _MODERATE_LN = STRENGTHS[1][0]
 _LEAST_PROBABILITY = 1e-300
 _PLACES_PER_WIDTH = 3
+_ROUNDING = 1e-6
 
 
 def check_trials(claim: Claim, bench: Bench | None) -> Finding:
@@ -49,11 +52,16 @@ def check_trials(claim: Claim, bench: Bench | None) -> Finding:
         says += f"; a feature of this width anywhere in the range: {100 * scan:.2g} %"
     return Finding(
         check=Check.TRIALS,
-        outcome=Outcome.FAILED if left < NEEDED_SIGMA else Outcome.PASSED,
+        outcome=Outcome.FAILED if left < NEEDED_SIGMA - _ROUNDING else Outcome.PASSED,
         tested=tested,
         says=says,
         why=_WHY_TRIALS,
-        figures={"trials": trials, "local_probability": local, "overall_probability": overall, "scan_probability": scan},
+        figures={
+            "trials": trials,
+            "local_probability": local,
+            "overall_probability": overall,
+            "scan_probability": scan,
+        },
         left_sigma=left,
     )
 
@@ -62,7 +70,9 @@ def _room(sigma: float) -> str:
     """How many trials the claim could bear, where it does not say how many there were."""
     local, needed = one_sided_probability(sigma), one_sided_probability(NEEDED_SIGMA)
     if local >= needed:
-        return f"the claim does not say how many gases, bands or models were tried; {sigma:.3g} sigma bear none beside it"
+        return (
+            f"the claim does not say how many gases, bands or models were tried; {sigma:.3g} sigma bear none beside it"
+        )
     count = needed / max(local, _LEAST_PROBABILITY)
     bears = f"about {count:.2g}" if count < 1e6 else "more than a million"
     return f"the claim does not say how many gases, bands or models were tried; {sigma:.3g} sigma bear {bears}"

@@ -6,12 +6,26 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from enum import StrEnum
 
-__all__ = ["FALLS_BELOW", "NEEDED_SIGMA", "AuditResult", "Check", "Finding", "Outcome", "Standing", "judge"]
+from planner.detection.evidence import sigma_of_bayes_bound
+
+__all__ = [
+    "FALLS_BELOW",
+    "NEEDED_SIGMA",
+    "AuditResult",
+    "Check",
+    "Finding",
+    "Outcome",
+    "Standing",
+    "judge",
+    "takes_too_much",
+]
 
 NEEDED_SIGMA = 3.0
 """What must be left of a claim once one thing is allowed for: the least that is called evidence (common practice)."""
-FALLS_BELOW = 2.0
-"""Below this nothing is left to speak of: one search in forty ends here by chance."""
+FALLS_BELOW = sigma_of_bayes_bound(1.0)
+"""Below this, 2.02 sigma, nothing is left to speak of: the odds move by less than e whatever one believed, which is
+inconclusive on Jeffreys' scale."""
+_TELLING_LOSS = 0.1
 
 
 class Check(StrEnum):
@@ -58,6 +72,8 @@ class Finding:
     figures: Mapping[str, float | str | None] = field(default_factory=dict)
     left_sigma: float | None = None
     """Significance that is left of the claim once this is allowed for; None where the check is not about that."""
+    decides: bool = True
+    """Whether it can sink a claim by itself. That another gas makes the shape leaves the feature as real as it was."""
     on_data: bool = False
     """Whether it ran on the spectrum itself, and not on the numbers of the claim."""
 
@@ -85,18 +101,24 @@ class AuditResult:
         return next(finding for finding in self.findings if finding.check is check)
 
 
+def takes_too_much(left_sigma: float, sigma: float) -> bool:
+    """Whether what is left is too little, and this check, not the claim itself, is the cause."""
+    return left_sigma < NEEDED_SIGMA and left_sigma < (1 - _TELLING_LOSS) * sigma
+
+
 def judge(gas: str, sigma: float | None, findings: tuple[Finding, ...]) -> tuple[Standing, str, Check | None]:
     """Standing, verdict as a sentence, and the weakest link.
 
-    The weakest link is the check that leaves the least; among those that leave nothing, the first. A claim falls where
-    a check leaves less than `FALLS_BELOW`, and is not settled where a check has failed but leaves more.
+    The weakest link is the check that leaves the least, one that decides before others. A claim falls where a deciding
+    check leaves less than `FALLS_BELOW`, and is not settled where a check has failed otherwise.
     """
     failed = [finding for finding in findings if finding.outcome is Outcome.FAILED]
     missing = [finding.check.value for finding in findings if finding.outcome is Outcome.UNTESTED]
     untested = f" Not tested: {', '.join(missing)}." if missing else ""
     if failed:
-        weakest = min(failed, key=_left)
-        standing = Standing.FALLS if _left(weakest) < FALLS_BELOW else Standing.OPEN
+        sinking = [finding for finding in failed if finding.decides and _left(finding) < FALLS_BELOW]
+        weakest = min(sinking or failed, key=_left)
+        standing = Standing.FALLS if sinking else Standing.OPEN
         head = f"As given, the detection of {gas} {standing.value}"
         if standing is Standing.OPEN:
             head = f"As given, the detection of {gas} is {standing.value}"

@@ -6,7 +6,7 @@ import numpy as np
 
 from planner.claims.records import Claim
 from planner.studies.checks.bench import Bench
-from planner.studies.checks.findings import NEEDED_SIGMA, Check, Finding, Outcome
+from planner.studies.checks.findings import NEEDED_SIGMA, Check, Finding, Outcome, takes_too_much
 
 __all__ = ["check_offsets", "check_reductions"]
 
@@ -45,7 +45,7 @@ def check_offsets(claim: Claim, bench: Bench | None) -> Finding:
         says += "; which bins belong to which detector is not told, so offsets cannot be tested"
     return Finding(
         check=Check.OFFSETS,
-        outcome=Outcome.FAILED if left < NEEDED_SIGMA else Outcome.PASSED,
+        outcome=Outcome.FAILED if takes_too_much(left, full) else Outcome.PASSED,
         tested=tested,
         says=says,
         why=_WHY,
@@ -64,13 +64,16 @@ def _left(bench: Bench, more_ppm: list[np.ndarray]) -> float:
 def check_reductions(claim: Claim) -> Finding:
     """Whether all reductions that are told of see the feature."""
     tested = "agreement of independent reductions of the same data"
-    told = [(reduction, reduction.sigma) for reduction in claim.reductions if reduction.sigma is not None]
+    told = [(reduction, reduction.left_sigma) for reduction in claim.reductions if reduction.left_sigma is not None]
     if not told:
         says = "no other reduction is told of"
         return Finding(check=Check.REDUCTIONS, outcome=Outcome.UNTESTED, tested=tested, says=says, why=_WHY_REDUCTIONS)
     least, sigma = min(told, key=lambda item: item[1])
+    agree = sum(value >= NEEDED_SIGMA for _, value in told)
     after = ", published later" if least.later else ""
-    says = f"{len(told)} told of; {least.by}{after}, sees {sigma:.2g} sigma"
+    seen = f"sees {sigma:.2g} sigma" if sigma > 0 else "sees nothing"
+    says = f"of {len(told)} told of, {least.by}{after}, {seen}"
+    says += f"; {agree} of them {NEEDED_SIGMA:g} sigma or more" if agree and sigma < NEEDED_SIGMA else ""
     return Finding(
         check=Check.REDUCTIONS,
         outcome=Outcome.FAILED if sigma < NEEDED_SIGMA else Outcome.PASSED,
@@ -79,4 +82,5 @@ def check_reductions(claim: Claim) -> Finding:
         why=_WHY_REDUCTIONS,
         figures={f"{reduction.by} (sigma)": value for reduction, value in told},
         left_sigma=sigma,
+        decides=all(value < NEEDED_SIGMA for _, value in told),
     )

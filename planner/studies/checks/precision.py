@@ -8,7 +8,7 @@ import numpy as np
 
 from planner.detection.significance import Measurement
 from planner.studies.checks.bench import Bench, floor_of
-from planner.studies.checks.findings import NEEDED_SIGMA, Check, Finding, Outcome
+from planner.studies.checks.findings import Check, Finding, Outcome, takes_too_much
 
 __all__ = ["check_noise"]
 
@@ -33,9 +33,10 @@ def check_noise(bench: Bench | None) -> Finding:
     figures |= {"snr_photons": photons, "snr_with_floor": practice, "claimed_sigma": sigma}
     left = min(sigma, practice)
     impossible = sigma > _TOLERANCE * photons or bin_ratio < 1 / _TOLERANCE
-    failed = impossible or left < NEEDED_SIGMA <= sigma
+    failed = impossible or takes_too_much(left, sigma)
     says = (
-        f"{sigma:.3g} sigma are claimed; were all else known, {transits} transit{'s' * (transits > 1)} could give "
+        f"{sigma:.3g} sigma are claimed; on {bench.height_ppm:.3g} ppm, were all else known, "
+        f"{transits} transit{'s' * (transits > 1)} could give "
         f"{photons:.3g} by photons and {practice:.3g} with the floor"
     )
     if impossible and bin_ratio < 1 / _TOLERANCE:

@@ -14,13 +14,13 @@ from planner.catalogue.records import GasRecord
 from planner.errors import RangeError
 from planner.report.words import gas_text
 from planner.studies.checks.bench import Bench, height_ppm
-from planner.studies.checks.findings import FALLS_BELOW, NEEDED_SIGMA, Check, Finding, Outcome
+from planner.studies.checks.findings import Check, Finding, Outcome
 
 __all__ = ["AS_WELL", "Rivalry", "check_rivals", "try_all"]
 
 Array = NDArray[np.float64]
 
-AS_WELL = FALLS_BELOW
+AS_WELL = 2.0
 """A rival within so many sigma of the gas (a difference in chi-squared of four) does as well."""
 _RATIOS = (1e-7, 1e-5, 1e-3)
 """Amounts at which the shape of a rival is tried: thin, middling, saturated."""
@@ -104,12 +104,16 @@ def check_rivals(bench: Bench | None, rivalry: Rivalry | None) -> Finding:
     says = f"of {len(rivalry.beyond)} gases tried "
     if as_well:
         more = f" and {len(as_well) - _NAMED} more" if len(as_well) > _NAMED else ""
-        says += f"{len(as_well)} do as well within {AS_WELL:g} sigma: {', '.join(map(gas_text, as_well[:_NAMED]))}{more}"
+        says += (
+            f"{len(as_well)} do as well within {AS_WELL:g} sigma: {', '.join(map(gas_text, as_well[:_NAMED]))}{more}"
+        )
     else:
         says += f"none does as well; the nearest, {gas_text(first)}, leaves {least:.2g} sigma"
     if pairs:
         a, b = pairs[0]
-        says += f"; and {len(pairs)} pair{'s' * (len(pairs) > 1)} of the others, such as {gas_text(a)} with {gas_text(b)}"
+        says += (
+            f"; and {len(pairs)} pair{'s' * (len(pairs) > 1)} of the others, such as {gas_text(a)} with {gas_text(b)}"
+        )
     if rivalry.not_tried:
         says += f" (not tried, no data at this temperature: {', '.join(map(gas_text, rivalry.not_tried))})"
     figures: dict[str, float | str | None] = {
@@ -122,11 +126,12 @@ def check_rivals(bench: Bench | None, rivalry: Rivalry | None) -> Finding:
     }
     return Finding(
         check=Check.RIVALS,
-        outcome=Outcome.FAILED if least < min(NEEDED_SIGMA, AS_WELL) else Outcome.PASSED,
+        outcome=Outcome.FAILED if least < AS_WELL else Outcome.PASSED,
         tested=tested,
         says=says,
         why=_WHY,
         figures=figures,
         left_sigma=least,
+        decides=False,
         on_data=bench.on_data,
     )

@@ -34,7 +34,7 @@ def check_size(bench: Bench | None) -> Finding:
         return _untested(tested, "star, planet or air are not given")
     amplitude = _amplitude(bench)
     if amplitude is None:
-        return _untested(tested, "no amplitude is given, nor a mixing ratio that would tell it")
+        return _untested(tested, _said_by_ratio(bench))
     own, light, heavy = heights_of(amplitude, bench.scenario)
     most = max(height for _, height in bench.growth)
     needed = bench.ratio_for(amplitude)
@@ -54,7 +54,9 @@ def check_size(bench: Bench | None) -> Finding:
         failed = f"more than the {MOST_HEIGHTS:g} that bands span, {lighter}"
     elif amplitude > _REACH * most:
         failed = f"{name} up to {ratio_text(MOST_RATIO)} makes at most {most:.3g} ppm in this range"
-    says += f"; {failed}" if failed else f"; it takes {_ratio(needed)} of {name} under a clear sky{_beyond(bench, needed)}"
+    says += (
+        f"; {failed}" if failed else f"; it takes {_ratio(needed)} of {name} under a clear sky{_beyond(bench, needed)}"
+    )
     return Finding(
         check=Check.SIZE,
         outcome=Outcome.FAILED if failed else Outcome.PASSED,
@@ -68,12 +70,20 @@ def check_size(bench: Bench | None) -> Finding:
 
 
 def _amplitude(bench: Bench) -> float | None:
-    """Measured on the data where there are any; else as claimed; else as a stated mixing ratio makes it."""
+    """Measured on the data where there are any; else as claimed."""
     if bench.on_data and bench.fits is not None:
         return max(0.0, bench.fits.amplitude(bench.template_ppm)[0]) * bench.height_ppm
-    if bench.claim.claim.amplitude_ppm is not None:
-        return bench.claim.claim.amplitude_ppm
-    return bench.height_ppm if bench.claim.claim.mixing_ratio is not None else None
+    return bench.claim.claim.amplitude_ppm
+
+
+def _said_by_ratio(bench: Bench) -> str:
+    """What a stated mixing ratio would make, where no amplitude is stated."""
+    ratio = bench.claim.claim.mixing_ratio
+    if ratio is None:
+        return "no amplitude is given"
+    own = heights_of(bench.height_ppm, bench.scenario)[0]
+    made = f"{ratio_text(ratio)} would make {bench.height_ppm:.3g} ppm, {own:.2g} scale heights, under a clear sky"
+    return f"no amplitude is given; {made}"
 
 
 def _ratio(ratio: float | None) -> str:

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from planner.star.heterogeneity import contamination_factor, region_contrast, usual_spot_temperature_k
 from planner.studies.checks.bench import Bench, height_ppm
-from planner.studies.checks.findings import NEEDED_SIGMA, Check, Finding, Outcome
+from planner.studies.checks.findings import NEEDED_SIGMA, Check, Finding, Outcome, takes_too_much
 
 __all__ = ["Coverage", "check_star", "star_shapes_ppm", "usual_coverage"]
 
@@ -75,12 +75,12 @@ def check_star(bench: Bench | None) -> Finding:
     says = f"spots up to {100 * most.spots:g} % and faculae up to {100 * most.faculae:g} % swing the depth by up to {swing:.3g} ppm"
     fits = bench.fits_with([spots / 2, faculae / 2])
     if fits is None:
-        return _against_error(bench, tested, says, swing, figures)
+        return _without_significance(bench, tested, says, swing, figures)
     left = min(fits.sigma([bench.template_ppm]), bench.sigma or 0.0)
     says += f" over this range; left unknown they leave {left:.2g} of {bench.sigma:.2g} sigma"
     return Finding(
         check=Check.STAR,
-        outcome=Outcome.FAILED if left < NEEDED_SIGMA else Outcome.PASSED,
+        outcome=Outcome.FAILED if takes_too_much(left, bench.sigma or 0.0) else Outcome.PASSED,
         tested=tested,
         says=says,
         why=_WHY,
@@ -90,20 +90,23 @@ def check_star(bench: Bench | None) -> Finding:
     )
 
 
-def _against_error(
+def _without_significance(
     bench: Bench, tested: str, says: str, swing: float, figures: dict[str, float | str | None]
 ) -> Finding:
-    """Without a significance: the swing against the error of a bin."""
-    error = bench.claim.search.error_per_bin_ppm
-    if error is None:
+    """Without a significance: the swing against the claimed amplitude, else against the error of a bin."""
+    amplitude, error = bench.claim.claim.amplitude_ppm, bench.claim.search.error_per_bin_ppm
+    if amplitude is not None:
+        failed, beside = swing > amplitude, f"{swing / amplitude:.2g} times the claimed amplitude"
+    elif error is not None:
+        failed, beside = swing > NEEDED_SIGMA * error, f"{swing / error:.2g} times the error of a bin"
+    else:
         says += "; the claim gives nothing to hold this against"
         return Finding(check=Check.STAR, outcome=Outcome.UNTESTED, tested=tested, says=says, why=_WHY, figures=figures)
-    failed = swing > NEEDED_SIGMA * error
     return Finding(
         check=Check.STAR,
         outcome=Outcome.FAILED if failed else Outcome.PASSED,
         tested=tested,
-        says=f"{says}, {swing / error:.2g} times the error of a bin",
+        says=f"{says}, {beside}",
         why=_WHY,
         figures=figures,
         left_sigma=0.0 if failed else None,
