@@ -54,6 +54,7 @@ _VISIBLE_SHARE = 0.25
 _TICKS_UM = (0.3, 0.4, 0.5, 0.6, 0.8, 1.0, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 7.0, 8.0, 10.0, 12.0, 15.0, 20.0, 25.0)
 _MINOR_TICKS_UM = [*(0.1 * i for i in range(2, 20)), *(0.5 * i for i in range(4, 12)), *map(float, range(6, 29))]
 _SEARCHED = "#2f6db5"
+_CONTAMINATION: dict[str, Any] = {"color": "0.55", "lw": 1.6}
 _UNUSABLE: dict[str, Any] = {"facecolor": "0.93", "edgecolor": "0.6", "hatch": "//////", "lw": 0.0}
 # dash pattern and colour of the other gases, dark and light in turn
 _OTHERS = (
@@ -192,7 +193,12 @@ def _figure(panels: Sequence[_Panel], title: str, made: str, seed: int) -> Figur
         figure, axes = _frame(len(panels))
         for index, (one, panel) in enumerate(zip(axes, panels, strict=True)):
             _draw_panel(one, panel, others, np.random.default_rng([seed, index]))
-        _add_legend(figure, others, unusable=not all(panel.spectrum.usable.all() for panel in panels))
+        _add_legend(
+            figure,
+            others,
+            unusable=not all(panel.spectrum.usable.all() for panel in panels),
+            spotted=any(panel.spectrum.contamination_ppm is not None for panel in panels),
+        )
         add_heading(figure, title, made)
     return figure
 
@@ -247,6 +253,9 @@ def _draw_panel(
             axes.plot(
                 edges, _stairs(spectrum, base + spectrum.shares_ppm[gas]), color=colour, dashes=dashes, lw=0.9, zorder=3
             )
+    if spectrum.contamination_ppm is not None:
+        bias = spectrum.contamination_ppm - spectrum.contamination_ppm.min()
+        axes.plot(edges, _stairs(spectrum, base + bias), **_CONTAMINATION, zorder=3)
     with_gas = _stairs(spectrum, spectrum.depth_ppm)
     without = _stairs(spectrum, spectrum.depth_ppm - sum(spectrum.shares_ppm[gas] for gas in _searched(spectrum)))
     axes.fill_between(edges, without, with_gas, color=_SEARCHED, alpha=0.45, lw=0, zorder=1)
@@ -367,11 +376,14 @@ def gas_label(gas: str) -> str:
     return " + ".join(re.sub(r"(\d+)", r"$_{\1}$", name) if name == formula else name for formula, name in names)
 
 
-def _add_legend(figure: Figure, others: dict[str, tuple[tuple[float, ...], str]], *, unusable: bool) -> None:
+def _add_legend(
+    figure: Figure, others: dict[str, tuple[tuple[float, ...], str]], *, unusable: bool, spotted: bool
+) -> None:
     handles: list[Line2D | Patch] = [
         Line2D([], [], color="black", lw=1.1, label="all gases"),
         Patch(facecolor=_SEARCHED, alpha=0.45, label="share of the searched gas"),
         *(Line2D([], [], color=c, dashes=d, lw=0.9, label=f"share of {gas_label(g)}") for g, (d, c) in others.items()),
+        *([Line2D([], [], **_CONTAMINATION, label="added by spots, faculae")] if spotted else []),
         Line2D([], [], color="black", marker="o", ms=2.4, mfc="white", mew=0.6, lw=0.6, label="simulated observation"),
         Patch(facecolor="black", label="best bands"),
         *([Patch(**_UNUSABLE, label="not usable")] if unusable else []),
