@@ -80,12 +80,14 @@ def heights(cross_section, mixing_ratio, temperature_k):
 def model(formula, wavenumber, temperature_k):
     """All contour parts of one molecule."""
     parts = tomllib.loads((data_folder("linelists") / f"{formula}.toml").read_text())["part"]
+    parts = [part for part in parts if part["kind"] == "contours"]
     return sum(contour_cross_section(part, wavenumber, temperature_k) for part in parts)
 
 
 def within_fit(formula, wavenumber):
     """The stretch that the main parts were fitted over."""
     parts = tomllib.loads((data_folder("linelists") / f"{formula}.toml").read_text())["part"]
+    parts = [part for part in parts if part["kind"] == "contours"]
     spans = [p["span_per_cm"] for p in parts if p["flag"] == "fitted"]
     return np.any([(wavenumber >= low) & (wavenumber <= high) for low, high in spans], axis=0)
 
