@@ -11,7 +11,7 @@ from planner.spectroscopy.molecules import find_molecule
 
 __all__ = ["WindowQuality", "quality_summary", "window_quality"]
 
-_SLIVER_FRACTION = 0.1
+_SLIVER_FRACTION = 0.05
 """Windows that hold less of a stretch than this are not what it leans on."""
 
 
@@ -47,24 +47,6 @@ class WindowQuality:
         """Half the logarithm of the strength error: what it does to an effective height."""
         return 0.5 * log(self.strength_factor)
 
-    @property
-    def caution(self) -> str | None:
-        """A sentence for the user, None where the window met its marks."""
-        if self.meets:
-            return None
-        where = f"the embedded {self.gas} at {self.from_um:.3g}-{self.to_um:.3g} um"
-        what = (
-            f"misses its marks against {self.basis}"
-            if self.compared
-            else f"was never compared with real spectra and rests on: {self.basis}"
-        )
-        return f"{where} {what}; strength good to a factor {self.strength_factor:.2f} ({self.effect})"
-
-    @property
-    def effect(self) -> str:
-        """The uncertainty in words."""
-        return f"{self.uncertainty_scale_heights:.2f} scale heights"
-
 
 def window_quality(
     formula: str, from_um: float, to_um: float, table: AccuracyTable | None = None
@@ -83,9 +65,8 @@ def window_quality(
     Returns
     -------
     list of WindowQuality
-        Windows that hold at least a tenth of the stretch, or lie in it with at least a tenth of themselves; one that
-        was judged against several sources counts once, by the one that covers most of the stretch. Empty where the
-        list has nothing that shows.
+        Windows that hold at least a twentieth of the stretch; where a part of it was judged against several sources,
+        it counts by the widest window. Empty where the list has nothing that shows.
     """
     table = stored_accuracy() if table is None else table
     gas = find_molecule(formula).formula
@@ -95,11 +76,7 @@ def window_quality(
     for row in _by_precedence(table, gas):
         inside = [(max(low, row.from_per_cm), min(high, row.to_per_cm)) for low, high in free]
         inside = [(low, high) for low, high in inside if high > low]
-        if (
-            sum(high - low for low, high in inside)
-            >= min(least, _SLIVER_FRACTION * (row.to_per_cm - row.from_per_cm))
-            > 0
-        ):
+        if inside and sum(high - low for low, high in inside) >= least:
             found.append(_quality(row, 1e4 / inside[-1][1], 1e4 / inside[0][0]))
             free = subtract(free, inside)
     return sorted(found, key=lambda window: window.from_um)
@@ -107,8 +84,8 @@ def window_quality(
 
 def _by_precedence(table: AccuracyTable, gas: str) -> list[JudgedWindow | UnseenWindow]:
     """A gas's windows, those that were compared first, the widest first among them."""
-    rows: list[JudgedWindow | UnseenWindow] = [row for row in table.judged if row.gas == gas]
-    rows.sort(key=lambda row: row.from_per_cm - row.to_per_cm)
+    judged = [row for row in table.judged if row.gas == gas and row.verdict is not Judgement.NARROW]
+    rows: list[JudgedWindow | UnseenWindow] = [*sorted(judged, key=lambda row: row.from_per_cm - row.to_per_cm)]
     return [*rows, *(row for row in table.unseen if row.gas == gas)]
 
 
@@ -130,7 +107,7 @@ def _quality(row: JudgedWindow | UnseenWindow, from_um: float, to_um: float) -> 
         from_um=from_um,
         to_um=to_um,
         compared=isinstance(row, JudgedWindow),
-        meets=isinstance(row, JudgedWindow) and not row.missed,
+        meets=isinstance(row, JudgedWindow) and row.verdict is Judgement.MEETS,
         strength_factor=row.strength_factor,
         basis=row.compared_with if isinstance(row, JudgedWindow) else row.rests_on,
     )

@@ -34,7 +34,7 @@ def embedded_quality(
 def line_cautions(
     library: LineLibrary, gases: Iterable[str], bands: Sequence[BandShare], table: AccuracyTable | None = None
 ) -> tuple[str, ...]:
-    """A sentence per window that an answer leans on and that misses its marks or was never compared with real spectra.
+    """Sentences on the windows that an answer leans on and that miss their marks or were never compared with spectra.
 
     Parameters
     ----------
@@ -46,12 +46,26 @@ def line_cautions(
     table : AccuracyTable, optional
         By default the one that ships with the lists.
     """
-    found = [
-        window.caution
-        for gas in gases
-        for band in bands
-        if band.share >= _LEANS
-        for window in embedded_quality(library, gas, band.from_um, band.to_um, table)
-        if window.compared or window.strength_factor > _MATTERS
-    ]
-    return tuple(dict.fromkeys(caution for caution in found if caution))
+    groups: dict[tuple[str, bool, str], list[WindowQuality]] = {}
+    for gas in gases:
+        for band in bands:
+            if band.share >= _LEANS:
+                for window in embedded_quality(library, gas, band.from_um, band.to_um, table):
+                    if not window.meets and (window.compared or window.strength_factor > _MATTERS):
+                        groups.setdefault((window.gas, window.compared, window.basis), []).append(window)
+    return tuple(_sentence(windows) for windows in groups.values())
+
+
+def _sentence(windows: Sequence[WindowQuality]) -> str:
+    """What is known of windows of one gas that rest on the same."""
+    first, worst = windows[0], max(windows, key=lambda window: window.strength_factor)
+    where = ", ".join(f"{window.from_um:.3g}-{window.to_um:.3g}" for window in windows)
+    what = (
+        f"misses its marks against real data ({first.basis})"
+        if first.compared
+        else f"was never compared with real spectra; its strength rests on: {first.basis}"
+    )
+    return (
+        f"the embedded {first.gas} at {where} um {what}; good to a factor {worst.strength_factor:.2g}, "
+        f"{worst.uncertainty_scale_heights:.2f} scale heights"
+    )

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.resources import data_folder
-from planner.spectroscopy.accuracyfile import JudgedWindow, UnseenWindow
+from planner.spectroscopy.accuracyfile import JudgedWindow, Judgement, UnseenWindow
 from planner.spectroscopy.claims import claim_of
 from planner.spectroscopy.coverage import Interval, subtract
 from planner.spectroscopy.heights import bin_edges
@@ -46,13 +46,21 @@ class PublishedBand:
     """What the source says of its error, or what is known of such figures."""
     source: str
 
+    @property
+    def reach(self) -> Interval:
+        """Where its sum is taken."""
+        return self.from_per_cm, self.to_per_cm
+
+    def agrees(self, sum_cm: float) -> bool:
+        """Whether a sum lies within its factor."""
+        return 1.0 / self.within_factor <= sum_cm / self.sum_cm <= self.within_factor
+
     def words(self, sum_cm: float) -> str:
         """How a sum compares with it, in words."""
-        ratio = sum_cm / self.sum_cm
-        agrees = 1.0 / self.within_factor <= ratio <= self.within_factor
         return (
-            f"{ratio:.2f} of the published {self.sum_cm:.2g} at {self.from_per_cm:g}-{self.to_per_cm:g} per cm, "
-            f"{'within' if agrees else 'not within'} its factor {self.within_factor:g} ({self.source})"
+            f"{sum_cm / self.sum_cm:.2f} of the published {self.sum_cm:.2g} at {self.from_per_cm:g}-{self.to_per_cm:g} "
+            f"per cm, {'within' if self.agrees(sum_cm) else 'not within'} its factor {self.within_factor:g} "
+            f"({self.source})"
         )
 
 
@@ -95,7 +103,8 @@ def unseen_windows(
     for formula in sorted(formulas):
         constants = read_constants(formula)
         lines = build_lines(constants, store)
-        seen = [(row.from_per_cm, row.to_per_cm) for row in judged if row.gas == formula]
+        mine = [row for row in judged if row.gas == formula and row.verdict is not Judgement.NARROW]
+        seen = [(row.from_per_cm, row.to_per_cm) for row in mine]
         bands = [band for band in published if band.gas == formula]
         for window in _showing(constants, lines, subtract(constants.covers_per_cm, seen)):
             found.append(_row(constants, lines, window, bands))
@@ -132,19 +141,20 @@ def _row(
     constants: Constants, lines: Lines | None, window: Interval, published: Sequence[PublishedBand]
 ) -> UnseenWindow:
     claim = claim_of(constants, lines, window)
-    words = [
-        band.words(sum_cm(lines, reach) + smooth_sum_cm(constants, reach))
-        for band in published
-        for reach in [(band.from_per_cm, band.to_per_cm)]
-        if window[0] <= 0.5 * (reach[0] + reach[1]) < window[1]
-    ]
-    total = sum_cm(lines, window) + smooth_sum_cm(constants, window)
+    mine = [band for band in published if window[0] <= 0.5 * (band.from_per_cm + band.to_per_cm) < window[1]]
+    sums = {band: _sum_cm(constants, lines, band.reach) for band in mine}
+    total = _sum_cm(constants, lines, window)
+    checked = [band.within_factor for band in mine if band.agrees(sums[band]) and sums[band] > 0.5 * total]
     return UnseenWindow(
         gas=constants.molecule.formula,
         from_per_cm=round(window[0], 1),
         to_per_cm=round(window[1], 1),
         sum_cm=float(f"{total:.3g}"),
-        strength_factor=round(claim.strength_factor, 2),
+        strength_factor=round(min([claim.strength_factor, *checked]), 2),
         rests_on=claim.sources[0] if claim.sources else "source not named",
-        published="; ".join(words),
+        published="; ".join(band.words(sums[band]) for band in mine),
     )
+
+
+def _sum_cm(constants: Constants, lines: Lines | None, window: Interval) -> float:
+    return sum_cm(lines, window) + smooth_sum_cm(constants, window)
