@@ -39,6 +39,7 @@ _OFFSETS_MM = [
     for sign in (1, -1)
     for dx, dy in ((1.0, 0.0), (0.85, 0.6), (0.85, -0.6), (0.3, 1.0), (0.3, -1.0))
 ]
+_NOTHING = "No gas that tells anything is detected,\nhowever many transits: see the list"
 _ROW_MM, _CELL_MM = 4.6, 27.0
 
 
@@ -63,6 +64,9 @@ def worth_figure(result: ChoiceResult) -> Figure:
         shown = [choice for choice in result.choices if _is_marked(choice, result)]
         _draw_marks(axes, shown, modes)
         _scale(axes, shown, result)
+        if not shown:
+            axes.set_yticks([])
+            axes.text(0.5, 0.5, _NOTHING, transform=axes.transAxes, ha="center", va="center", linespacing=1.5)
         _label_marks(figure, axes, shown)
         _list_beside(figure, result, modes)
         _legend(figure, modes)

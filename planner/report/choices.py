@@ -90,7 +90,7 @@ def telling(result: ChoiceResult) -> list[Choice]:
 
 def bits_text(bits: float) -> str:
     """Bits to three decimals at most; small ones by their power of ten."""
-    if bits == 0:
+    if bits < 1e-12:  # rounding
         return "0"
     return f"{bits:.3f}" if bits >= 0.0095 else f"{bits:.0e}".replace("e-0", "e-")
 

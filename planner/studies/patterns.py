@@ -36,6 +36,7 @@ _LEAST_GAIN = 0.05
 """A gas joins a set, and stays in it, for at least this share of the information."""
 _LEAST_SNR = 0.3
 """A set is judged with a mode if two of its gases at least can reach this."""
+_ROUNDING_BITS = 1e-12
 _SEARCH_DRAWS = 2000
 _DRAWS = 1500
 _LEVELS = 60
@@ -93,7 +94,7 @@ def find_patterns(
 
 def _greedy(candidates: Sequence[Candidate], prior: float, rng: np.random.Generator) -> tuple[str, ...]:
     """Start from the gas that is worth most, add what tells most beside it; templates taken as uncorrelated."""
-    evidence = {c.gas: _evidence(c, rng) for c in candidates if c.bits > 0}
+    evidence = {c.gas: _evidence(c, rng) for c in candidates if c.bits > _ROUNDING_BITS}
     nothing = Evidence(in_true=np.zeros(_SEARCH_DRAWS), in_false=np.zeros(_SEARCH_DRAWS))
     members: list[str] = []
     whole, bits = nothing, 0.0
@@ -133,9 +134,10 @@ class _Judge:
         self._seen: dict[frozenset[str], list[tuple[Measurement, Array]]] = {}
 
     def pattern(self, gases: tuple[str, ...], index: int, how: str) -> Pattern | None:
-        """The set with one mode; nothing where fewer than two of its gases show."""
+        """The set with one mode; nothing where fewer than two of its gases show, or none tells anything."""
         members = [self._candidates[gas, index] for gas in gases]
-        if sum(bool(member.channel.snr.max() >= _LEAST_SNR) for member in members) < 2:
+        showing = sum(bool(member.channel.snr.max() >= _LEAST_SNR) for member in members)
+        if showing < 2 or not any(member.bits > _ROUNDING_BITS for member in members):
             return None
         measurement, correlation = self._look(gases)[index]
         goal, view = self._survey.scenario.goal, self._survey.workshop.views[index]
