@@ -29,6 +29,8 @@ __all__ = ["Axis", "map_transits"]
 Array = NDArray[np.float64]
 
 _LEVELS = (1, 3, 10, 30, 100, 300, 1000)
+_APART_LN = 0.5
+"""Contours closer to that of the transits on offer than this would run into it."""
 _STEPS = 17
 _DECADES = 3.0
 """Either side of the scenario's mixing ratio, where no axis is given."""
@@ -119,7 +121,7 @@ def _result(
     scenario, view = workshop.scenario, workshop.views[index]
     goal, on_offer = scenario.goal, view.on_offer(scenario)
     wanted = target_snr(goal.threshold_sigma, goal.power)
-    levels = tuple(sorted({*_LEVELS, on_offer}))
+    levels = tuple(sorted([on_offer, *(n for n in _LEVELS if abs(np.log(n / on_offer)) > _APART_LN)]))
     shape = (axes[1].steps, axes[0].steps)
 
     def field(number: Callable[[Measurement], float]) -> Array:
