@@ -16,7 +16,7 @@ from planner.report.simulations import simulations_block
 from planner.report.words import band_text, bands_text, count_text, gas_text, hours_text, ratio_text, snr_text
 from planner.studies.results import PlanResult, PlanRow, Verdict
 
-__all__ = ["plan_text", "plan_view", "records_view"]
+__all__ = ["plan_text", "plan_view", "records_view", "sentences_block"]
 
 _STYLES = {
     Verdict.WITHIN_REACH: "green",
@@ -49,10 +49,10 @@ def plan_view(result: PlanResult, width: int) -> Group:
         *(item for block in blocks for item in block),
         *remedies_block(result.rows),
         *simulations_block(result.rows),
-        *_list("Held unknown, with the width of the prior", [priors] if priors else []),
-        *_list("Assumptions", result.assumptions),
-        *_list("Line data", result.line_data),
-        *_list("Cautions", result.cautions),
+        *sentences_block("Held unknown, with the width of the prior", [priors] if priors else []),
+        *sentences_block("Assumptions", result.assumptions),
+        *sentences_block("Line data", result.line_data),
+        *sentences_block("Cautions", result.cautions),
         Text(f"\nlimbcast {result.version}"),
     )
 
@@ -154,7 +154,8 @@ def _notes(row: PlanRow) -> list[str]:
     return notes + [f"{head}: {caution}" for caution in row.cautions]
 
 
-def _list(title: str, items: Iterable[str]) -> list[RenderableType]:
+def sentences_block(title: str, items: Iterable[str]) -> list[RenderableType]:
+    """A title and a list of sentences under it; nothing where there are none."""
     lines = [_bullet(item) for item in items]
     return [Text(), Text(title, style="bold"), *lines] if lines else []
 
