@@ -33,8 +33,8 @@ class _Names(click.ParamType):
 
 @click.command()
 @click.argument("scenario", type=_FILE)
-@click.option("--gases", type=_Names(), metavar="A,B,...", default=(), help="Gases to weigh; all of the catalogue.")
-@click.option("--modes", type=_Names(), metavar="A,B,...", default=(), help="In place of the scenario's modes.")
+@click.option("--gases", type=_Names(), metavar="A,B,...", help="Gases to weigh; all of the catalogue.")
+@click.option("--modes", type=_Names(), metavar="A,B,...", help="In place of the scenario's modes.")
 @click.option(
     "--hours", type=Measured("a time", "h", "60 h"), help='Charged time with each mode, "60 h"; all transits on offer.'
 )
@@ -45,8 +45,8 @@ class _Names(click.ParamType):
 @click.option("--out", type=_FILE, metavar="DIR", help="Write table, JSON and figures into this folder.")
 def choose(
     scenario: Path,
-    gases: tuple[str, ...],
-    modes: tuple[str, ...],
+    gases: tuple[str, ...] | None,
+    modes: tuple[str, ...] | None,
     hours: float | None,
     hypothesis: str,
     patterns: tuple[tuple[str, ...], ...],
@@ -60,7 +60,7 @@ def choose(
     from planner.scenario import read_scenario
     from planner.studies.choose import choose as study
 
-    read = _with_modes(read_scenario(scenario), modes)
+    read = _with_modes(read_scenario(scenario), modes or ())
     to_stdout = json_file == Path("-")
     if json_file is not None and not to_stdout:
         check_writable(json_file)
@@ -70,7 +70,7 @@ def choose(
         result = study(
             read,
             hypothesis=hypothesis,
-            gases=gases,
+            gases=gases or (),
             hours=hours,
             together=patterns,
             lines_folder=lines_folder,

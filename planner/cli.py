@@ -16,6 +16,7 @@ import click
 from planner import __version__
 from planner.catalogue.command import gases
 from planner.checkcommand import check
+from planner.choosecommands import choose, odds
 from planner.errors import PlannerError
 from planner.linecommands import fetch, import_
 from planner.options import Measured, Stretch, progress_bar
@@ -61,6 +62,8 @@ def cli() -> None:
 
 
 cli.add_command(gases)
+cli.add_command(choose)
+cli.add_command(odds)
 
 
 @cli.command()

@@ -27,7 +27,7 @@ from planner.studies.odds import OddsResult
 __all__ = ["entry_text", "likelihood_words", "odds_json", "odds_text", "odds_view"]
 
 # ends read in the text of Catling et al. 2018, Astrobiology 18, 709; the limits between them from memory
-_WORDS = ((0.9, "very likely"), (0.66, "likely"), (0.33, "inconclusive"), (0.1, "unlikely"), (0.0, "very unlikely"))
+_WORDS = ((0.66, "likely"), (0.33, "inconclusive"), (0.1, "unlikely"))
 _WORDS_FROM = "Catling et al. 2018, Astrobiology 18, 709 (limits of the middle ones from memory)"
 # in our words, after Green et al. 2021, Nature 598, 575, as described in institute news
 _STEPS = (
@@ -95,7 +95,9 @@ def odds_json(result: OddsResult) -> str:
 
 def likelihood_words(chance: float) -> str:
     """The published word for a chance of life: ``very likely`` from 90 % to ``very unlikely`` up to 10 %."""
-    return next((word for least, word in _WORDS[:-1] if chance > least or (chance == least >= 0.9)), _WORDS[-1][1])
+    if chance >= 0.9:
+        return "very likely"
+    return next((word for least, word in _WORDS if chance > least), "very unlikely")
 
 
 def entry_text(entry: Finding | Evidence) -> str:
