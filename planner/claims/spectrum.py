@@ -202,7 +202,8 @@ def _check_bins(from_um: Array, to_um: Array, detector: NDArray[np.int64], where
             raise ScenarioError(f"{where}: row {row + 1}: expected 0 < from < to, got {low:g} to {high:g} um")
         if np.log(high / low) < _NARROWEST_LN:
             raise ScenarioError(
-                f"{where}: row {row + 1}: expected bins of R = {1 / _NARROWEST_LN:.0f} or wider, got {low:g} to {high:g} um"
+                f"{where}: row {row + 1}: expected bins of R = {1 / _NARROWEST_LN:.0f} or wider, got {low:g} to "
+                f"{high:g} um"
             )
     if from_um.min() < 0.2 or to_um.max() > 30:
         raise ScenarioError(

@@ -17,7 +17,7 @@ from planner.studies.checks.elsewhere import Prospect, check_follow_up, look_els
 from planner.studies.checks.findings import FALLS_BELOW, NEEDED_SIGMA, AuditResult, Finding, judge
 from planner.studies.checks.level import check_offsets, check_reductions
 from planner.studies.checks.precision import check_noise
-from planner.studies.checks.rivalry import Rivalry, check_rivals, try_all
+from planner.studies.checks.rivalry import AS_WELL, Rivalry, check_rivals, try_all
 from planner.studies.checks.size import check_size
 from planner.studies.checks.starlight import check_star
 
@@ -125,22 +125,23 @@ def _line_data(bench: Bench | None) -> tuple[str, ...]:
 def _assumptions(bench: Bench | None) -> tuple[str, ...]:
     """What the figures rest on, a sentence each."""
     sentences = [
-        f"a check fails where it leaves less than {NEEDED_SIGMA:g} sigma (for rivals {FALLS_BELOW:g}); a claim does not "
-        f"stand where one leaves less than {FALLS_BELOW:g}",
+        f"a check fails where it leaves less than {NEEDED_SIGMA:g} sigma (for rivals {AS_WELL:g}); a claim does not "
+        f"stand where one leaves less than {FALLS_BELOW:.3g}, unless it is the rivals",
         "significances are one-sided, except for the Bayes factor, whose bound is for two-sided ones",
     ]
     if bench is None:
         return tuple(sentences)
+    temperature_k = bench.scenario.atmosphere.temperature_k
     sentences += [
-        f"isothermal air under a clear sky unless the claim says otherwise, {bench.scenario.atmosphere.temperature_k:g} K; "
-        f"the gas is a trace of at most {MOST_RATIO:g}; the air's unknowns are marginalised with the usual priors",
+        f"isothermal air under a clear sky unless the claim says otherwise, {temperature_k:g} K; the "
+        f"gas is a trace of at most {MOST_RATIO:g}; the air's unknowns are marginalised with the usual priors",
         f"mixing ratio in use: {bench.mixing_ratio:.3g}",
     ]
     if not bench.on_data:
         sentences.append(
             "no spectrum: the expected one stands in for it, with errors that make it as significant as claimed"
         )
-    if bench.scenario.atmosphere.temperature_k > _LISTS_UP_TO_K:
+    if temperature_k > _LISTS_UP_TO_K:
         sentences.append(
             f"embedded line lists are made for up to {_LISTS_UP_TO_K:g} K: above, hot bands are missing and windows "
             "between bands come out too clear"

@@ -246,7 +246,7 @@ def make_bench(
     PlannerError
         If line data or the mode cannot be read or used, or no bin of the mode can.
     """
-    mode = read_mode(claim.search.mode) if claim.search.mode is not None else None
+    mode = _used_part(claim) if claim.search.mode is not None else None
     scenario = claim.scenario((claim.search.mode or "near-infrared-prism",))
     bins, detectors, white = _bins(claim, scenario, mode, observed)
     grid = LogGrid.covering(float(bins.from_um.min()), float(bins.to_um.max()))
@@ -286,6 +286,15 @@ def floor_of(bench: Bench) -> Array | None:
     return floor_covariance(bench.mode, bench.bins) if bench.mode is not None and not bench.on_data else None
 
 
+def _used_part(claim: Claim) -> Mode:
+    """The mode with the detectors that the claimed range touches: ramps then suit what is used of it."""
+    mode, low, high = read_mode(claim.search.mode or ""), claim.claim.from_um, claim.claim.to_um
+    kept = [d for d in mode.detectors if any(a < high and b > low for a, b in d.ranges_um)]
+    if not kept:
+        raise RangeError(f"{mode.name}: no detector sees any of {low:g} to {high:g} um; name the mode that was used")
+    return mode.model_copy(update={"detectors": tuple(kept)})
+
+
 def _bins(
     claim: Claim, scenario: Scenario, mode: Mode | None, observed: ObservedSpectrum | None
 ) -> tuple[Bins, tuple[str, ...], Array | None]:
@@ -297,11 +306,15 @@ def _bins(
     low, high = claim.claim.from_um, claim.claim.to_um
     if mode is None:
         edges = np.geomspace(low, high, max(2, ceil(_RESOLVING_POWER * log(high / low))) + 1)
-        plain = Bins(detector=np.zeros(edges.size - 1), from_um=edges[:-1], to_um=edges[1:])
+        plain = Bins(detector=np.zeros(edges.size - 1, dtype=np.int64), from_um=edges[:-1], to_um=edges[1:])
         return plain, ("the spectrum",), None
-    bins = make_bins(mode, _RESOLVING_POWER)
-    wavelength = np.geomspace(*mode.span_um, _NOISE_SAMPLES)
-    wavelength[[0, -1]] = mode.span_um  # rounding must not leave the ends out
+    every = make_bins(mode, _RESOLVING_POWER)
+    inside = (every.centre_um >= low) & (every.centre_um <= high)
+    if len(np.unique(every.detector[inside])) < len(mode.detectors):
+        raise RangeError(f"{mode.name}: expected a bin on each detector from {low:g} to {high:g} um; widen the range")
+    bins = _some(every, inside)
+    wavelength = np.geomspace(bins.from_um.min(), bins.to_um.max(), _NOISE_SAMPLES)
+    wavelength[[0, -1]] = bins.from_um.min(), bins.to_um.max()  # rounding must not leave the ends out
     noise = transit_noise(
         mode,
         bins,
@@ -310,12 +323,14 @@ def _bins(
         in_transit_s=3600 * scenario.transit_duration_h,
         out_of_transit_s=3600 * scenario.out_of_transit_h,
     )
-    inside = (bins.centre_um >= low) & (bins.centre_um <= high)
-    kept = inside & np.isfinite(noise.depth_error_ppm) & ~noise.saturated
+    kept = np.isfinite(noise.depth_error_ppm) & ~noise.saturated
     if kept.sum() < 2:
         raise RangeError(
             f"{mode.name}: expected at least two usable bins from {low:g} to {high:g} um, got {int(kept.sum())} "
-            f"({int((inside & noise.saturated).sum())} saturate)"
+            f"({int(noise.saturated.sum())} saturate)"
         )
-    chosen = replace(bins, detector=bins.detector[kept], from_um=bins.from_um[kept], to_um=bins.to_um[kept])
-    return chosen, tuple(detector.name for detector in mode.detectors), noise.depth_error_ppm[kept]
+    return _some(bins, kept), tuple(detector.name for detector in mode.detectors), noise.depth_error_ppm[kept]
+
+
+def _some(bins: Bins, kept: NDArray[np.bool_]) -> Bins:
+    return replace(bins, detector=bins.detector[kept], from_um=bins.from_um[kept], to_um=bins.to_um[kept])

@@ -69,9 +69,9 @@ def check_trials(claim: Claim, bench: Bench | None) -> Finding:
 def _room(sigma: float) -> str:
     """How many trials the claim could bear, where it does not say how many there were."""
     local, needed = one_sided_probability(sigma), one_sided_probability(NEEDED_SIGMA)
-    if local >= needed:
+    if local > needed / 2:
         return (
-            f"the claim does not say how many gases, bands or models were tried; {sigma:.3g} sigma bear none beside it"
+            f"the claim does not say how many gases, bands or models were tried; {sigma:.3g} sigma bear no second one"
         )
     count = needed / max(local, _LEAST_PROBABILITY)
     bears = f"about {count:.2g}" if count < 1e6 else "more than a million"

@@ -121,6 +121,6 @@ def _elsewhere(bench: Bench, prospects: Sequence[Prospect]) -> str:
         return ""
     best = max(outside, key=lambda p: p.snr_one_transit)
     return (
-        f"; {band_text(*best.band_um)} um would show {best.height_ppm:.3g} ppm, {best.snr_one_transit:.2g} sigma in one "
-        f"transit with {best.mode}"
+        f"; {band_text(*best.band_um)} um would show {best.height_ppm:.3g} ppm, {best.snr_one_transit:.2g} sigma in "
+        f"one transit with {best.mode}"
     )

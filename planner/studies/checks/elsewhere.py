@@ -158,8 +158,8 @@ def check_follow_up(bench: Bench | None, prospects: Sequence[Prospect]) -> Findi
     count = first.transits_required or 0
     late = f", more than the {on_offer} that the orbit offers in five years" if count > on_offer else ""
     says = (
-        f"soonest: {count_text(count)} transit{'s' * (count > 1)} with {first.mode} ({hours_text(first.hours_required)} h), "
-        f"most by {gas_text(bench.gas)} at {band_text(*first.band_um)} um{late}"
+        f"soonest: {count_text(count)} transit{'s' * (count > 1)} with {first.mode} "
+        f"({hours_text(first.hours_required)} h), most by {gas_text(bench.gas)} at {band_text(*first.band_um)} um{late}"
     )
     if len(reachable) > 1:
         second = reachable[1]

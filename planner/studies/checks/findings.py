@@ -43,6 +43,9 @@ class Check(StrEnum):
     FOLLOW_UP = "follow-up"
 
 
+_CHANCE = (Check.TRIALS, Check.EVIDENCE)
+
+
 class Outcome(StrEnum):
     """How a check ended."""
 
@@ -74,6 +77,8 @@ class Finding:
     """Significance that is left of the claim once this is allowed for; None where the check is not about that."""
     decides: bool = True
     """Whether it can sink a claim by itself. That another gas makes the shape leaves the feature as real as it was."""
+    doubt: bool = False
+    """Whether what could not be tested is a known way to make such a feature."""
     on_data: bool = False
     """Whether it ran on the spectrum itself, and not on the numbers of the claim."""
 
@@ -110,7 +115,8 @@ def judge(gas: str, sigma: float | None, findings: tuple[Finding, ...]) -> tuple
     """Standing, verdict as a sentence, and the weakest link.
 
     The weakest link is the check that leaves the least, one that decides before others. A claim falls where a deciding
-    check leaves less than `FALLS_BELOW`, and is not settled where a check has failed otherwise.
+    check leaves less than `FALLS_BELOW`, and is not settled where a check has failed otherwise. It stands only if a
+    check of more than the arithmetic of chance was passed.
     """
     failed = [finding for finding in findings if finding.outcome is Outcome.FAILED]
     missing = [finding.check.value for finding in findings if finding.outcome is Outcome.UNTESTED]
@@ -124,9 +130,12 @@ def judge(gas: str, sigma: float | None, findings: tuple[Finding, ...]) -> tuple
             head = f"As given, the detection of {gas} is {standing.value}"
         return standing, f"{head}; weakest link, {weakest.check.value}: {weakest.says}.{untested}", weakest.check
     told = [finding for finding in findings if finding.outcome is Outcome.PASSED and finding.left_sigma is not None]
-    if sigma is None or not told:
-        why = "no significance is given" if sigma is None else "too little is given for any check"
-        return Standing.UNTESTED, f"The detection of {gas} cannot be judged: {why}.{untested}", None
+    if sigma is None or all(finding.check in _CHANCE for finding in told):
+        why = "no significance is given" if sigma is None else "nothing but chance could be tested"
+        doubt = next((finding for finding in findings if finding.doubt), None)
+        more = f"; weakest link, {doubt.check.value}: {doubt.says}" if doubt is not None else ""
+        sentence = f"The detection of {gas} cannot be judged: {why}{more}.{untested}"
+        return Standing.UNTESTED, sentence, doubt.check if doubt is not None else None
     weakest = min(told, key=_left)
     sentence = (
         f"The detection of {gas} stands up to every check that could be made; weakest link, {weakest.check.value}: "

@@ -23,12 +23,12 @@ def check_offsets(claim: Claim, bench: Bench | None) -> Finding:
     terms = claim.search.baseline_terms
     if terms is not None and terms > _BASELINE_TERMS:
         says = (
-            f"a baseline of {terms} free terms was fitted and taken out; nothing that is given tells whether it made the "
-            "feature: that takes the spectrum before, or the same fit at other places"
+            f"a baseline of {terms} free terms was fitted and taken out; nothing that is given tells whether it made "
+            "the feature: that takes the spectrum before, or the same fit at other places"
         )
         return Finding(
             check=Check.OFFSETS, outcome=Outcome.UNTESTED, tested=tested, says=says, why=_WHY,
-            figures={"baseline_terms": terms},
+            figures={"baseline_terms": terms}, doubt=True,
         )  # fmt: skip
     if bench is None or bench.fits is None:
         missing = "star, planet or air are not given" if bench is None else "no significance is given"

@@ -104,9 +104,8 @@ def check_rivals(bench: Bench | None, rivalry: Rivalry | None) -> Finding:
     says = f"of {len(rivalry.beyond)} gases tried "
     if as_well:
         more = f" and {len(as_well) - _NAMED} more" if len(as_well) > _NAMED else ""
-        says += (
-            f"{len(as_well)} do as well within {AS_WELL:g} sigma: {', '.join(map(gas_text, as_well[:_NAMED]))}{more}"
-        )
+        named = ", ".join(map(gas_text, as_well[:_NAMED]))
+        says += f"{len(as_well)} {'do' if len(as_well) > 1 else 'does'} as well within {AS_WELL:g} sigma: {named}{more}"
     else:
         says += f"none does as well; the nearest, {gas_text(first)}, leaves {least:.2g} sigma"
     if pairs:

@@ -47,7 +47,8 @@ def check_size(bench: Bench | None) -> Finding:
         "mixing_ratio_needed": needed,
         "mixing_ratio_claimed": bench.claim.claim.mixing_ratio,
     }
-    says = f"{amplitude:.3g} ppm are {own:.2g} scale heights of the stated air ({light:.2g} of H2 and He, {heavy:.2g} of CO2)"
+    others = f"{light:.2g} of H2 and He, {heavy:.2g} of CO2"
+    says = f"{amplitude:.3g} ppm are {own:.2g} scale heights of the stated air ({others})"
     name, failed = gas_text(bench.gas), ""
     if own > MOST_HEIGHTS:
         lighter = "even of the lightest air" if light > MOST_HEIGHTS else "unless the air is lighter than stated"

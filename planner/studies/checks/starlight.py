@@ -29,13 +29,15 @@ class Coverage:
     source: str
 
 
+_LATE_M = "upper ends for TRAPPIST-1, Rackham et al. 2018, ApJ 853, 122"
+_FGK = "Rackham et al. 2019, AJ 157, 96"
 _COVERAGES = (
-    (3000.0, Coverage(spots=0.26, faculae=0.70, source="upper ends for TRAPPIST-1, Rackham et al. 2018, ApJ 853, 122")),
+    (3000.0, Coverage(spots=0.26, faculae=0.70, source=_LATE_M)),
     (3900.0, Coverage(spots=0.10, faculae=0.30, source="judgement, between late M and late K dwarfs")),
-    (5300.0, Coverage(spots=0.04, faculae=0.10, source="spots of late K, Rackham et al. 2019, AJ 157, 96; faculae judgement")),
-    (6000.0, Coverage(spots=0.01, faculae=0.03, source="judgement, between F and K, Rackham et al. 2019, AJ 157, 96")),
-    (np.inf, Coverage(spots=0.001, faculae=0.01, source="spots of F, Rackham et al. 2019, AJ 157, 96; faculae judgement")),
-)  # fmt: skip
+    (5300.0, Coverage(spots=0.04, faculae=0.10, source=f"spots of late K, {_FGK}; faculae judgement")),
+    (6000.0, Coverage(spots=0.01, faculae=0.03, source=f"judgement, between F and K of {_FGK}")),
+    (np.inf, Coverage(spots=0.001, faculae=0.01, source=f"spots of F, {_FGK}; faculae judgement")),
+)
 """By the photosphere's temperature below which they hold."""
 
 
@@ -72,7 +74,8 @@ def check_star(bench: Bench | None) -> Finding:
         "swing_by_faculae_ppm": height_ppm(faculae),
         "error_per_bin_ppm": bench.claim.search.error_per_bin_ppm,
     }
-    says = f"spots up to {100 * most.spots:g} % and faculae up to {100 * most.faculae:g} % swing the depth by up to {swing:.3g} ppm"
+    covers = f"spots up to {100 * most.spots:g} % and faculae up to {100 * most.faculae:g} %"
+    says = f"{covers} swing the depth by up to {swing:.3g} ppm"
     fits = bench.fits_with([spots / 2, faculae / 2])
     if fits is None:
         return _without_significance(bench, tested, says, swing, figures)
