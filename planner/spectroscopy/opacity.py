@@ -89,9 +89,11 @@ class Opacities:
         self._progress = progress or (lambda text, share: None)
         self._node = lru_cache(maxsize=64)(self._build_node)
         self._broadened: dict[str, Broadened] = {}
+        self._has_data: dict[str, bool] = {}
         self._remember()
 
     def _remember(self) -> None:
+        self._rayleigh = lru_cache(maxsize=64)(lambda formula: rayleigh_cross_section(formula, self.wavenumber_per_cm))
         self._gas = lru_cache(maxsize=64)(self._build_gas)
         self._pairs = lru_cache(maxsize=16)(self._build_pairs)
 
@@ -117,6 +119,14 @@ class Opacities:
         chosen._remember()
         return chosen
 
+    def let_go(self) -> None:
+        """Let go of the tables held in memory, 14 MB each on the grid of three modes; the store has them.
+
+        What a selection has taken from them stays with it.
+        """
+        self._node.cache_clear()
+        self._gas.cache_clear()
+
     def gas(self, formula: str, temperature_k: float, mixing_ratio: float = 0.0) -> GasOpacity:
         """What one gas absorbs and scatters by itself at a temperature.
 
@@ -132,11 +142,14 @@ class Opacities:
 
     def has_data(self, formula: str) -> bool:
         """Whether the gas has lines or bands at all (noble gases and homonuclear ones may have none)."""
-        try:
-            self._library.gas(formula)
-        except NoDataError:
-            return False
-        return True
+        if formula not in self._has_data:
+            try:
+                self._library.gas(formula)
+            except NoDataError:
+                self._has_data[formula] = False
+            else:
+                self._has_data[formula] = True
+        return self._has_data[formula]
 
     def pairs(self, formulas: Sequence[str], temperature_k: float) -> list[PairOpacity]:
         """Collision-induced absorption of every known pair among the gases, and the water continuum."""
@@ -152,7 +165,7 @@ class Opacities:
 
     def _build_gas(self, formula: str, temperature_k: float, self_fraction: float) -> GasOpacity:
         wavenumber = self.wavenumber_per_cm
-        flat = rayleigh_cross_section(formula, wavenumber)
+        flat = self._rayleigh(formula)
         source = self._library.gas(formula) if self.has_data(formula) else None
         table = None
         if source is not None:
