@@ -11,7 +11,7 @@ import re
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import Any, Protocol
 
 import matplotlib
 import numpy as np
@@ -32,12 +32,16 @@ __all__ = [
     "STYLE",
     "WIDTH_MM",
     "add_heading",
+    "bin_edges",
+    "bin_stairs",
     "check_figure_name",
     "choose_rows",
+    "draw_points",
     "gas_label",
     "made_by",
     "plan_figure",
     "spectra_figure",
+    "wavelength_axis",
     "write_figure",
 ]
 
@@ -246,22 +250,27 @@ def _draw_panel(
     axes: Axes, panel: _Panel, others: dict[str, tuple[tuple[float, ...], str]], rng: np.random.Generator
 ) -> None:
     spectrum = panel.spectrum
-    edges, base = _edges(spectrum), float(spectrum.depth_ppm.min())
+    edges, base = bin_edges(spectrum), float(spectrum.depth_ppm.min())
     for gas in spectrum.shares_ppm:
         if gas in others and gas not in _searched(spectrum):
             dashes, colour = others[gas]
             axes.plot(
-                edges, _stairs(spectrum, base + spectrum.shares_ppm[gas]), color=colour, dashes=dashes, lw=0.9, zorder=3
+                edges,
+                bin_stairs(spectrum, base + spectrum.shares_ppm[gas]),
+                color=colour,
+                dashes=dashes,
+                lw=0.9,
+                zorder=3,
             )
     if spectrum.contamination_ppm is not None:
         bias = spectrum.contamination_ppm - spectrum.contamination_ppm.min()
-        axes.plot(edges, _stairs(spectrum, base + bias), **_CONTAMINATION, zorder=3)
-    with_gas = _stairs(spectrum, spectrum.depth_ppm)
-    without = _stairs(spectrum, spectrum.depth_ppm - sum(spectrum.shares_ppm[gas] for gas in _searched(spectrum)))
+        axes.plot(edges, bin_stairs(spectrum, base + bias), **_CONTAMINATION, zorder=3)
+    with_gas = bin_stairs(spectrum, spectrum.depth_ppm)
+    without = bin_stairs(spectrum, spectrum.depth_ppm - sum(spectrum.shares_ppm[gas] for gas in _searched(spectrum)))
     axes.fill_between(edges, without, with_gas, color=_SEARCHED, alpha=0.45, lw=0, zorder=1)
     axes.plot(edges, with_gas, color="black", lw=1.1, zorder=2)
     points = simulated_points(spectrum, panel.transits, _GROUPS, rng)
-    _draw_points(axes, points)
+    draw_points(axes, points)
     _mark_unusable(axes, spectrum)
     _scale_axes(axes, spectrum, points)
     axes.set_title(panel.title, loc="left", pad=3)
@@ -274,7 +283,8 @@ def _searched(spectrum: BinnedSpectrum) -> list[str]:
     return spectrum.gas.split(" + ")
 
 
-def _draw_points(axes: Axes, points: Points) -> None:
+def draw_points(axes: Axes, points: Points) -> None:
+    """Simulated observations with their errors."""
     middle = np.sqrt(points.from_um * points.to_um)
     spans = np.array([middle - points.from_um, points.to_um - middle])
     axes.errorbar(
@@ -309,17 +319,26 @@ def made_by(version: str, invented: bool) -> str:
     return f"limbcast {version}" + ("; the target is invented" if invented else "")
 
 
-def _edges(spectrum: BinnedSpectrum) -> Array:
+class OnBins(Protocol):
+    """Anything given on bins."""
+
+    @property
+    def from_um(self) -> Array: ...
+    @property
+    def to_um(self) -> Array: ...
+
+
+def bin_edges(spectrum: OnBins) -> Array:
     """Both ends of every bin, with a NaN where the next bin does not join, for stairs."""
     return _with_gaps(spectrum, np.column_stack([spectrum.from_um, spectrum.to_um]))
 
 
-def _stairs(spectrum: BinnedSpectrum, values: Array) -> Array:
-    """A value per bin as the heights that go with `_edges`."""
+def bin_stairs(spectrum: OnBins, values: Array) -> Array:
+    """A value per bin as the heights that go with `bin_edges`."""
     return _with_gaps(spectrum, np.column_stack([values, values]))
 
 
-def _with_gaps(spectrum: BinnedSpectrum, pairs: Array) -> Array:
+def _with_gaps(spectrum: OnBins, pairs: Array) -> Array:
     apart = ~np.isclose(spectrum.from_um[1:], spectrum.to_um[:-1], rtol=1e-6)
     return np.insert(pairs.ravel(), 2 * (np.flatnonzero(apart) + 1), np.nan)
 
@@ -336,21 +355,13 @@ def _scale_axes(axes: Axes, spectrum: BinnedSpectrum, points: Points) -> None:
     A few points that tell next to nothing must not flatten the rest: those with more than three times the usual error
     may lie outside.
     """
-    low_um, high_um = spectrum.from_um.min(), spectrum.to_um.max()
-    axes.set_xscale("log")
-    axes.set_xlim(low_um / 1.005, high_um * 1.005)
-    axes.xaxis.set_major_locator(FixedLocator([t for t in _TICKS_UM if low_um <= t * 1.001 and t <= high_um * 1.001]))
-    axes.xaxis.set_major_formatter(FuncFormatter(lambda x, _: f"{x:g}"))
-    axes.xaxis.set_minor_locator(FixedLocator(_MINOR_TICKS_UM))
-    axes.xaxis.set_minor_formatter(NullFormatter())
+    wavelength_axis(axes, spectrum)
     base, height = float(spectrum.depth_ppm.min()), spectrum.scale_height_ppm
     telling = points.error_ppm <= 3 * np.median(points.error_ppm) if points.error_ppm.size else np.zeros(0, bool)
     bottom = float(np.min((points.depth_ppm - points.error_ppm)[telling], initial=base))
     top = float(np.max((points.depth_ppm + points.error_ppm)[telling], initial=spectrum.depth_ppm.max()))
     axes.set_ylim(bottom - 0.06 * (top - bottom), top + 0.06 * (top - bottom))
-    axes.set_xlabel("Wavelength (µm)", labelpad=1.5)
     axes.set_ylabel("Transit depth (ppm)")
-    axes.tick_params(which="both", top=True)
 
     def heights(depth: Any) -> Any:
         return (depth - base) / height
@@ -360,6 +371,19 @@ def _scale_axes(axes: Axes, spectrum: BinnedSpectrum, points: Points) -> None:
 
     right = axes.secondary_yaxis("right", functions=(heights, depths))
     right.set_ylabel("Scale heights")
+
+
+def wavelength_axis(axes: Axes, spectrum: OnBins) -> None:
+    """Wavelength in logarithm with plain ticks, from the first bin to the last."""
+    low_um, high_um = spectrum.from_um.min(), spectrum.to_um.max()
+    axes.set_xscale("log")
+    axes.set_xlim(low_um / 1.005, high_um * 1.005)
+    axes.xaxis.set_major_locator(FixedLocator([t for t in _TICKS_UM if low_um <= t * 1.001 and t <= high_um * 1.001]))
+    axes.xaxis.set_major_formatter(FuncFormatter(lambda x, _: f"{x:g}"))
+    axes.xaxis.set_minor_locator(FixedLocator(_MINOR_TICKS_UM))
+    axes.xaxis.set_minor_formatter(NullFormatter())
+    axes.set_xlabel("Wavelength (µm)", labelpad=1.5)
+    axes.tick_params(which="both", top=True)
 
 
 def add_heading(figure: Figure, title: str, made: str) -> None:
