@@ -32,7 +32,8 @@ def choice(gas, mode, bits, transits, tells=True):
     row = PlanRow(
         gas=gas, mixing_ratio=1e-6, mode=mode, verdict=Verdict.WITHIN_REACH if transits else Verdict.FLOOR,
         marginalised=counts(transits), all_known=counts(transits),
-        best_bands=(BandShare(from_um=3.2, to_um=3.4, share=0.8),), confusion=(("CO2", 3.0),), confused_from=5.0, confused_to=3.0,
+        best_bands=(BandShare(from_um=3.2, to_um=3.4, share=0.8),), confusion=(("CO2", 3.0),),
+        confused_from=5.0, confused_to=3.0,
         uncovered_um=(), saturated_um=(), cautions=(),
     )  # fmt: skip
     return Choice(
