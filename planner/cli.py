@@ -20,6 +20,7 @@ from planner.choosecommands import choose, odds
 from planner.errors import PlannerError
 from planner.linecommands import fetch, import_
 from planner.options import Measured, Stretch, progress_bar
+from planner.rangecommands import limit, map_
 
 if TYPE_CHECKING:
     from planner.scenario import Scenario
@@ -64,6 +65,8 @@ def cli() -> None:
 cli.add_command(gases)
 cli.add_command(choose)
 cli.add_command(odds)
+cli.add_command(limit)
+cli.add_command(map_)
 
 
 @cli.command()

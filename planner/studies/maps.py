@@ -14,6 +14,7 @@ from planner import __version__
 from planner.detection.significance import Measurement, target_snr
 from planner.errors import RangeError, ScenarioError
 from planner.scenario.records import Case, Scenario
+from planner.spectroscopy.molecules import find_molecule
 from planner.studies.domain import distinct_cases, domain_of
 from planner.studies.nuisances import prior_widths
 from planner.studies.observe import ModeView
@@ -72,7 +73,8 @@ def map_transits(
     x, y : Axis, optional
         Mixing ratio of the searched gas, and cloud-top pressure, when left out.
     gas : str, optional
-        Formula of a candidate, or formulas of a set joined by `` + ``; the first candidate when left out.
+        Formula or common name of a candidate, or those of a set with plus signs between them; the first candidate
+        when left out.
     mode : str, optional
         Name of one of the scenario's modes; the first when left out.
     lines_folder : Path, optional
@@ -186,9 +188,9 @@ def _case(scenario: Scenario, gas: str | None) -> Case:
     cases = distinct_cases(scenario)
     if gas is None:
         return cases[0]
-    wanted = gas.replace(" ", "")
+    wanted = [find_molecule(name.strip()).formula for name in gas.split("+")]
     for case in cases:
-        if case.label.replace(" ", "") == wanted:
+        if sorted(case.gases) == sorted(wanted):
             return case
     known = ", ".join(case.label for case in cases)
     raise ScenarioError(f"{scenario.place('candidates')}: expected one of {known} for the gas of a map, got {gas}")
