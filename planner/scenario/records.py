@@ -16,7 +16,7 @@ from planner.scenario.beliefs import Beliefs
 from planner.scenario.fields import Name, Record, Switch
 from planner.scenario.locate import heading
 from planner.scenario.readings import COMBINED, FieldProblem, ModeNames, Sets, Tables
-from planner.scenario.search import Bins, Candidate, Case, Goal, Noise, Nuisances
+from planner.scenario.search import Bins, Candidate, Case, Goal, Noise, Nuisances, Spread
 from planner.scenario.target import Atmosphere, Cloud, Haze, Planet, Star
 
 __all__ = [
@@ -31,6 +31,7 @@ __all__ = [
     "Nuisances",
     "Planet",
     "Scenario",
+    "Spread",
     "Star",
 ]
 
@@ -62,6 +63,7 @@ class Scenario(Record):
     goal: Goal
     noise: Noise | None = None
     nuisances: Nuisances = Field(default_factory=Nuisances)
+    spread: Spread = Field(default_factory=Spread)
     bins: Bins = Field(default_factory=Bins)
     beliefs: Beliefs = Field(default_factory=Beliefs)
     """In place of the gas catalogue's, for the choice between gases."""
