@@ -9,6 +9,8 @@ from enum import StrEnum
 import numpy as np
 from numpy.typing import NDArray
 
+from planner.studies.outcomes import TransitSpread
+
 __all__ = [
     "BandShare",
     "BinnedSpectrum",
@@ -177,6 +179,8 @@ class PlanRow:
     remedies: tuple[Remedy, ...] = ()
     """What would help, the most first of each kind."""
     star: StarMimic | None = None
+    spread: TransitSpread | None = None
+    """Over the priors, where that was asked for."""
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -227,3 +231,5 @@ class PlanResult:
     """(name, prior width in words)."""
     cautions: tuple[str, ...]
     version: str
+    spread_priors: tuple[tuple[str, str], ...] = ()
+    """What the spread draws, as the nuisances."""

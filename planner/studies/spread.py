@@ -8,7 +8,7 @@ may truly be; within each, the nuisances are marginalised as ever. Light and noi
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from math import ceil, log2
 
 import numpy as np
@@ -18,17 +18,20 @@ from scipy.stats import qmc, rankdata
 
 from planner.detection.significance import Measurement, target_snr
 from planner.scenario.records import Case, Scenario
+from planner.studies.domain import domain_of
 from planner.studies.nuisances import CLEAR_SKY_DECK_BAR
 from planner.studies.outcomes import Driver, TransitSpread
 from planner.studies.pool import in_threads
-from planner.studies.reduced import Reduced
+from planner.studies.reduced import Reduced, reduce_opacity
+from planner.studies.results import PlanRow
 from planner.studies.vary import shifted_ratio, vary
-from planner.studies.workshop import Progress, see
+from planner.studies.workshop import Progress, Workshop, see
 
-__all__ = ["Prior", "draw_searches", "priors_of", "summary", "variance_shares"]
+__all__ = ["Prior", "add_spread", "draw_searches", "priors_of", "summary", "variance_shares"]
 
 Array = NDArray[np.float64]
 
+SEED = 1
 _QUANTILES = (0.16, 0.5, 0.84)
 _FARTHEST = 3.0
 """Priors end at so many widths; beyond lies one draw in 370."""
@@ -62,6 +65,44 @@ class Prior:
         return self.value(float(np.clip(number, -_FARTHEST, _FARTHEST)))
 
 
+def add_spread(
+    workshop: Workshop, rows: Sequence[PlanRow], *, draws: int, progress: Progress | None = None
+) -> tuple[tuple[PlanRow, ...], tuple[tuple[str, str], ...], str]:
+    """The rows of a plan with their spread, the priors in words, and a sentence on the reduced opacity.
+
+    Parameters
+    ----------
+    workshop : Workshop
+    rows : sequence of PlanRow
+        Case by case, with every mode in turn.
+    draws : int
+        Per case; rounded up to a power of two.
+    progress : callable, optional
+        Called with a text and the share done.
+    """
+    scenario, modes = workshop.scenario, len(workshop.views)
+    reduced = reduce_opacity(workshop, domain_of(scenario, temperature=True), progress=progress)
+    found: list[PlanRow] = []
+    words: dict[str, str] = {}
+    for number, case in enumerate(scenario.cases):
+        priors = priors_of(scenario, case)
+        words |= {prior.name: prior.words for prior in priors}
+        quantiles, searches = draw_searches(reduced, case, draws=draws, seed=SEED, progress=progress)
+        for index, view in enumerate(workshop.views):
+            row = rows[number * modes + index]
+            spread = summary(
+                scenario,
+                [prior.name for prior in priors],
+                quantiles,
+                [search[index] for search in searches],
+                required=row.marginalised.transits_required,
+                on_offer=view.on_offer(scenario),
+                seed=SEED,
+            )
+            found.append(replace(row, spread=spread))
+    return tuple(found), tuple(words.items()), reduced.error.sentence
+
+
 def priors_of(scenario: Scenario, case: Case) -> list[Prior]:
     """Everything that is drawn for a case: names as in the scenario file, the searched gas and absorbers by formula.
 
@@ -87,13 +128,7 @@ def priors_of(scenario: Scenario, case: Case) -> list[Prior]:
 
 
 def draw_searches(
-    reduced: Reduced,
-    scenario: Scenario,
-    case: Case,
-    *,
-    draws: int,
-    seed: int,
-    progress: Progress | None = None,
+    reduced: Reduced, case: Case, *, draws: int, seed: int, progress: Progress | None = None
 ) -> tuple[Array, list[tuple[Measurement, ...]]]:
     """What each mode measures of the gas in every draw.
 
@@ -113,6 +148,7 @@ def draw_searches(
     measurements : list of tuple
         Per draw and mode.
     """
+    scenario = reduced.model.scenario
     priors = priors_of(scenario, case)
     quantiles = qmc.Sobol(len(priors), seed=seed).random_base2(ceil(log2(draws)))
 
@@ -177,7 +213,8 @@ def variance_shares(quantiles: Array, outcome: Array) -> Array:
     Ranks are regressed on the first two Legendre polynomials of every input's quantile together; with polynomials
     that are orthonormal over the inputs the squared coefficients are the variances due to each (a polynomial chaos
     expansion without mixed terms: Sudret 2008, Reliab. Eng. Syst. Saf. 93, 964, from memory). What chance alone would
-    give a coefficient is taken off. Ranks, because transits have no upper end.
+    give a coefficient is taken off. Ranks, because transits have no upper end. All zero where the outcome does not vary
+    or there are no more draws than coefficients.
 
     Parameters
     ----------
@@ -187,17 +224,18 @@ def variance_shares(quantiles: Array, outcome: Array) -> Array:
     """
     draws, inputs = quantiles.shape
     ranks = rankdata(outcome)
-    variance = ranks.var()
-    if variance == 0:
+    if np.ptp(ranks) == 0 or draws <= 2 * inputs + 1:
         return np.zeros(inputs)
     centred = 2 * quantiles - 1
     polynomials = np.hstack([np.sqrt(3) * centred, np.sqrt(5) * (3 * centred**2 - 1) / 2])
     design = np.column_stack([np.ones(draws), polynomials])
     coefficients, *_ = np.linalg.lstsq(design, ranks, rcond=None)
     left = ranks - design @ coefficients
-    by_chance = left @ left / max(draws - design.shape[1], 1) / draws
-    squares = (coefficients[1:] ** 2 - by_chance).reshape(2, inputs).sum(axis=0)
-    shares: Array = np.clip(squares / variance, 0.0, 1.0)
+    by_chance = left @ left / (draws - design.shape[1])
+    squares = np.maximum((coefficients[1:] ** 2 - by_chance / draws).reshape(2, inputs).sum(axis=0), 0.0)
+    explained = max(0.0, 1.0 - by_chance / ranks.var(ddof=1))
+    # over few draws the polynomials are not quite orthonormal: together they get what the regression explains
+    shares: Array = explained * squares / max(squares.sum(), np.finfo(float).tiny)
     return shares
 
 
