@@ -143,8 +143,6 @@ def _column(table: Table, name: str, unit: str, where: str) -> Array:
     """A column of finite numbers in a unit."""
     import astropy.units as u
 
-    from planner.scenario.readings import _MORE_UNITS
-
     if name not in table.colnames:
         raise ScenarioError(f'{where}: expected {_HOW}; no column "{name}"')
     column: Any = table[name]
@@ -153,7 +151,7 @@ def _column(table: Table, name: str, unit: str, where: str) -> Array:
     if column.unit is None:
         raise ScenarioError(f'{where}: column "{name}": expected a unit such as {unit}, got none')
     try:
-        with u.add_enabled_units(_MORE_UNITS):
+        with u.add_enabled_units([u.def_unit("ppm", 1e-6 * u.one)]):  # astropy lacks it
             wanted = u.um if unit == "um" else 1e-6 * u.one
             values = (np.asarray(column, dtype=np.float64) * u.Unit(str(column.unit))).to_value(wanted)
     except (u.UnitConversionError, ValueError, TypeError):

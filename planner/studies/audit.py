@@ -31,6 +31,7 @@ _CAUTIONS = (
     "A detected gas is not detected life or industry: most gases have other sources too.",
 )
 _LISTS_UP_TO_K = 600.0
+_WORTH_TELLING = 0.02
 
 
 def audit(
@@ -137,6 +138,11 @@ def _assumptions(bench: Bench | None) -> tuple[str, ...]:
         f"gas is a trace of at most {MOST_RATIO:g}; the air's unknowns are marginalised with the usual priors",
         f"mixing ratio in use: {bench.mixing_ratio:.3g}",
     ]
+    if bench.uncovered_share > _WORTH_TELLING:
+        share = f"{100 * bench.uncovered_share:.0f} %"
+        sentences.append(
+            f"the data of {gas_text(bench.gas)} leave out {share} of the range, where it counts as transparent"
+        )
     if not bench.on_data:
         sentences.append(
             "no spectrum: the expected one stands in for it, with errors that make it as significant as claimed"

@@ -174,6 +174,11 @@ class Bench:
         plain = self.model.binned(case, transparent=case.gases)[0]
         return moved.depth_ppm - plain.depth_ppm
 
+    @property
+    def uncovered_share(self) -> float:
+        """Share of the samples at which the claimed gas has no data."""
+        return 1.0 - float(np.mean(self.model.opacities.covered(self.gas)))
+
     # -- what was seen ------------------------------------------------------------------------------------------
 
     @property
@@ -197,6 +202,13 @@ class Bench:
         if sigma is None or self.height_ppm == 0:
             return None
         return self._scaled_for(sigma)
+
+    @property
+    def unweighed(self) -> str:
+        """Why there are no errors to fit with, where there are none."""
+        if self.claim.claim.sigma is None:
+            return "no significance is given"
+        return "what is not known of the air makes such a shape: no error makes it as significant as claimed"
 
     def _scaled_for(self, sigma: float) -> Array | None:
         """The shape of the errors times the factor that gives a significance; it falls as errors grow."""
@@ -265,6 +277,12 @@ def make_bench(
         water_continuum=scenario.atmosphere.water_continuum,
         progress=progress,
     ).selection(index, own_tables=True)
+    gas = claim.claim.gas
+    if not (opacities.has_data(gas) and opacities.covered(gas).any()):
+        raise RangeError(
+            f"{gas}: no data from {bins.from_um.min():.3g} to {bins.to_um.max():.3g} um; bring some with --lines, or "
+            "leave out [atmosphere] and judge by chance alone"
+        )
     means = BinMeans(weights, grid.wavelength_um[index], bins)
     shape = 1 / np.sqrt(means(photons[index]) * bins.width_ln) if white is None else white
     return Bench(

@@ -66,7 +66,7 @@ def check_companions(bench: Bench | None, prospects: Sequence[Prospect]) -> Find
     """Which other bands should show, and whether the claim says that they do."""
     tested = "every other band of the gas in the spectrum and in other modes, predicted size against error"
     if bench is None or bench.error_ppm is None:
-        missing = "star, planet or air are not given" if bench is None else "no significance is given"
+        missing = "star, planet or air are not given" if bench is None else bench.unweighed
         return Finding(check=Check.COMPANIONS, outcome=Outcome.UNTESTED, tested=tested, says=missing, why=_WHY)
     bands = bands_in_range(bench)
     others = [band for band in bands if not _claimed(bench, band, bands)]

@@ -31,7 +31,7 @@ def check_offsets(claim: Claim, bench: Bench | None) -> Finding:
             figures={"baseline_terms": terms}, doubt=True,
         )  # fmt: skip
     if bench is None or bench.fits is None:
-        missing = "star, planet or air are not given" if bench is None else "no significance is given"
+        missing = "star, planet or air are not given" if bench is None else bench.unweighed
         return Finding(check=Check.OFFSETS, outcome=Outcome.UNTESTED, tested=tested, says=missing, why=_WHY)
     slope = _WIDE_PPM * np.log(bench.bins.centre_um / bench.bins.centre_um.mean())
     full = bench.sigma or 0.0

@@ -93,7 +93,7 @@ def check_rivals(bench: Bench | None, rivalry: Rivalry | None) -> Finding:
     """How many gases, and pairs of gases, do as well."""
     tested = "every other absorber of the catalogue fitted in place of the gas, one by one and in pairs"
     if bench is None or rivalry is None or bench.fits is None:
-        missing = "star, planet or air are not given" if bench is None else "no significance is given"
+        missing = "star, planet or air are not given" if bench is None else bench.unweighed
         return Finding(check=Check.RIVALS, outcome=Outcome.UNTESTED, tested=tested, says=missing, why=_WHY)
     if not rivalry.beyond:
         says = "no other gas of the catalogue that there are data for absorbs there"

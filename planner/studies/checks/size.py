@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+from scipy import special
+
 from planner.catalogue.read import find_gas, has_gas
 from planner.report.words import gas_text, ratio_text
 from planner.scenario.records import Scenario
 from planner.studies.checks.bench import MOST_RATIO, Bench
-from planner.studies.checks.findings import Check, Finding, Outcome
+from planner.studies.checks.findings import NEEDED_SIGMA, Check, Finding, Outcome
 
 __all__ = ["HEAVIEST_G", "LIGHTEST_G", "MOST_HEIGHTS", "check_size", "heights_of"]
 
@@ -17,6 +19,8 @@ LIGHTEST_G, HEAVIEST_G = 2.3, 43.99
 """Mean molar masses of hydrogen with helium, and of carbon dioxide."""
 _REACH = 1.25
 """Tolerance on what the gas can make: opacities, temperature and sampling are not better known."""
+_POOR = 1e-3
+"""Chance below which a chi-squared counts as a poor fit."""
 _WHY = "A feature larger than the air is tall, or than any amount of the gas can make, is not that gas."
 
 
@@ -50,7 +54,13 @@ def check_size(bench: Bench | None) -> Finding:
     others = f"{light:.2g} of H2 and He, {heavy:.2g} of CO2"
     says = f"{amplitude:.3g} ppm are {own:.2g} scale heights of the stated air ({others})"
     name, failed = gas_text(bench.gas), ""
-    if own > MOST_HEIGHTS:
+    left = 0.0
+    if bench.on_data:
+        figures |= _on_data(bench)
+        says = f"the data give {_measured(bench)}: {says}"
+    if bench.on_data and (bench.sigma or 0.0) < NEEDED_SIGMA:
+        failed, left = "too little to be called a feature", bench.sigma or 0.0
+    elif own > MOST_HEIGHTS:
         lighter = "even of the lightest air" if light > MOST_HEIGHTS else "unless the air is lighter than stated"
         failed = f"more than the {MOST_HEIGHTS:g} that bands span, {lighter}"
     elif amplitude > _REACH * most:
@@ -65,7 +75,7 @@ def check_size(bench: Bench | None) -> Finding:
         says=says,
         why=_WHY,
         figures=figures,
-        left_sigma=0.0 if failed else None,
+        left_sigma=left if failed else None,
         on_data=bench.on_data,
     )
 
@@ -75,6 +85,27 @@ def _amplitude(bench: Bench) -> float | None:
     if bench.on_data and bench.fits is not None:
         return max(0.0, bench.fits.amplitude(bench.template_ppm)[0]) * bench.height_ppm
     return bench.claim.claim.amplitude_ppm
+
+
+def _on_data(bench: Bench) -> dict[str, float]:
+    """How well the air describes the data with the gas in it, and without."""
+    assert bench.fits is not None
+    count = len(bench.bins)
+    return {
+        "measured_sigma": bench.sigma or 0.0,
+        "chi2_per_bin_with_gas": bench.fits.chi2([bench.template_ppm]) / count,
+        "chi2_per_bin_without_gas": bench.fits.empty_chi2 / count,
+    }
+
+
+def _measured(bench: Bench) -> str:
+    """The measured amplitude with its error, and a warning where the air does not describe the data at all."""
+    assert bench.fits is not None
+    amount, error = bench.fits.amplitude(bench.template_ppm)
+    chi2 = bench.fits.chi2([bench.template_ppm])
+    poor = float(special.chdtrc(max(1, len(bench.bins) - 1), chi2)) < _POOR
+    words = f"{amount * bench.height_ppm:.3g} +/- {error * bench.height_ppm:.2g} ppm"
+    return f"{words}, chi-squared {chi2 / len(bench.bins):.2g} a bin{' (a poor fit)' * poor}"
 
 
 def _said_by_ratio(bench: Bench) -> str:
