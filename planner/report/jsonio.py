@@ -18,6 +18,7 @@ key                                     meaning
 ``rows``                                one object per gas, mixing ratio and mode, see below
 ``line_data``, ``assumptions``          lists of sentences
 ``nuisances``                           list of ``name``, ``prior`` (width in words)
+``spread_priors``                       the same of what the spread draws; empty unless asked for
 ``cautions``                            list of sentences
 ======================================  ==============================================================================
 
@@ -62,6 +63,12 @@ the six above with ``_all_known``       the same with everything but the gas kno
                                         ``false_alarm_sigma`` and ``false_alarms_stated``, ``_found``, ``_error`` at it,
                                         ``sigma_anywhere``: local significance that counts as the threshold when the
                                         place of the feature was not chosen in advance
+``spread``                              null, or what draws from the priors gave: ``draws``, ``seed``; ``transits_16``,
+                                        ``transits_50``, ``transits_84`` (null where no number is enough);
+                                        ``unreachable_share`` of the draws; ``chance_asked`` of passing the threshold
+                                        with ``transits_asked`` (by the plan, or those on offer if fewer),
+                                        ``chance_on_offer`` with ``transits_on_offer``; ``drivers``: list of ``name``,
+                                        ``share`` in the variance of the ranks in S/N, largest first
 ======================================  ==============================================================================
 """
 
@@ -98,6 +105,7 @@ def plan_json(result: PlanResult) -> str:
         "line_data": list(result.line_data),
         "assumptions": list(result.assumptions),
         "nuisances": [{"name": name, "prior": prior} for name, prior in result.nuisances],
+        "spread_priors": [{"name": name, "prior": prior} for name, prior in result.spread_priors],
         "cautions": list(result.cautions),
     }
     return json.dumps(tree, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
@@ -133,6 +141,7 @@ def _row(row: PlanRow) -> dict[str, Any]:
         "rivals": [asdict(rival) for rival in row.rivals],
         "remedies": [_remedy(remedy, row) for remedy in row.remedies],
         "simulation": asdict(row.simulation) if row.simulation else None,
+        "spread": asdict(row.spread) if row.spread else None,
     }
 
 

@@ -13,6 +13,7 @@ from rich.text import Text
 
 from planner.report.remedies import remedies_block
 from planner.report.simulations import simulations_block
+from planner.report.spreads import spreads_block
 from planner.report.words import band_text, bands_text, count_text, gas_text, hours_text, ratio_text, snr_text
 from planner.studies.results import PlanResult, PlanRow, Verdict
 
@@ -49,6 +50,7 @@ def plan_view(result: PlanResult, width: int) -> Group:
         *(item for block in blocks for item in block),
         *remedies_block(result.rows),
         *simulations_block(result.rows),
+        *spreads_block(result),
         *sentences_block("Held unknown, with the width of the prior", [priors] if priors else []),
         *sentences_block("Assumptions", result.assumptions),
         *sentences_block("Line data", result.line_data),

@@ -37,6 +37,7 @@ ROW_KEYS = {
     "rivals",
     "remedies",
     "simulation",
+    "spread",
 }
 
 
