@@ -27,6 +27,8 @@ _FITTED_FACTOR, _PUBLISHED_FACTOR, _UNSURE_FACTOR = 1.05, 1.1, 2.0
 
 _SUM_COLUMN = {"linear": 3, "linear-pi": 2, "asymmetric": 3, "symmetric": 3}
 """Column of the sum in the band rows of each kind; upper and lower level come first, the source last."""
+_LABEL_LENGTH = 15
+"""Of HITRAN's records."""
 _REACH_PER_CM = 100.0
 """How far lines without labels are taken to lie from the origin of their band."""
 _REFERENCE_K = 296.0
@@ -139,8 +141,8 @@ def band_rows(part: Mapping[str, Any]) -> Iterator[BandRow]:
 
 
 def plain_label(name: Any) -> str:
-    """A state's name without blanks, marks of mixing and, in NO, the name of the electronic state."""
-    return re.sub(r"^X\d/2|[\s*]", "", str(name).strip())
+    """A state's name, as far as records hold it, without blanks, marks of mixing and the electronic state of NO."""
+    return re.sub(r"^X\d/2|[\s*]", "", str(name)[:_LABEL_LENGTH].strip())
 
 
 def _is_fitted(text: str) -> bool:

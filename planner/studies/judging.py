@@ -41,6 +41,8 @@ _REFERENCE_K = 296.0
 _SHIFT_PER_CM = 0.005
 _STEP_DECADES = 0.25
 _FEW_BELOW = 0.1
+_ROUNDED = 0.999
+"""Records round intensities to four digits."""
 _BOX_PER_CM = 1.0
 _FINE_STEP_PER_CM = 0.02
 _SMOOTH_STEP_PER_CM = 0.05
@@ -220,7 +222,7 @@ def _alike(embedded: Lines, real: Lines, window: Interval) -> Lines:
     keep = np.zeros(len(embedded), dtype=bool)
     for isotopologue in np.unique(real.isotopologue):
         cut = cut_off_cm(here.intensity_cm[here.isotopologue == isotopologue])
-        strong = (embedded.intensity_cm >= cut) | (embedded.upper_global == "")
+        strong = (embedded.intensity_cm >= _ROUNDED * cut) | (embedded.upper_global == "")
         keep |= (embedded.isotopologue == isotopologue) & strong
     return embedded.where(keep & inside(embedded.wavenumber_per_cm, [(run[0] - _SHIFT_PER_CM, run[1] + _SHIFT_PER_CM)]))
 

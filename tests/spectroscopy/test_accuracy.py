@@ -6,8 +6,8 @@ import numpy as np
 import pytest
 from scipy.special import exp1
 
-from planner.spectroscopy.accuracy import WindowScore, alike, compare
-from planner.spectroscopy.heights import effective_heights
+from planner.spectroscopy.accuracy import STRONG_MARKS, WindowScore, alike, compare, compare_cross_sections
+from planner.spectroscopy.heights import effective_heights, grey_heights
 from planner.spectroscopy.lines import Lines
 
 EULER = 0.5772156649015329
@@ -96,3 +96,23 @@ def test_verdict_needs_every_mixing_ratio() -> None:
     }
     assert WindowScore(**fields, percentile_90=np.array([[0.19, 0.24, 0.34]])).passes()
     assert not WindowScore(**fields, percentile_90=np.array([[0.19, 0.24, 0.36]])).passes()
+
+
+def test_heights_of_a_constant_cross_section() -> None:
+    """The quick way for cross-sections that know no pressure agrees with the general one."""
+    sigma = np.geomspace(1e-24, 1e-16, 9)
+    quick = grey_heights(sigma, [1e-6, 1e-4])
+    for value, heights in zip(sigma, quick.T, strict=True):
+        general = effective_heights(None, 2000.0, 2000.1, 1.0, [1e-6, 1e-4], smooth=lambda nu, _, v=value: nu * 0 + v)
+        assert general[:, 0] == pytest.approx(heights, abs=1e-3)
+
+
+def test_measured_cross_sections_are_compared_where_they_exceed_their_noise() -> None:
+    """A factor e is one scale height; bins within five times the noise do not count."""
+    grid = np.linspace(1000.0, 1100.0, 2001)
+    real = np.where(grid < 1050.0, 1e-19, 1e-22)
+    score = compare_cross_sections(np.e * real, real, (1000.0, 1100.0), noise_cm2=1e-22)
+    assert score.bins[0].tolist() == [0, 5, 5]
+    assert score.mean[0, 1:] == pytest.approx([1.0, 1.0], abs=0.05)
+    assert not score.passes(STRONG_MARKS)
+    assert compare_cross_sections(real, real, (1000.0, 1100.0)).passes(STRONG_MARKS)
