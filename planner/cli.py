@@ -88,6 +88,14 @@ cli.add_command(map_)
     is_flag=True,
     help="Work out all that would help: other modes, more of the gas, a clearer sky; and try rivals of the catalogue.",
 )
+@click.option(
+    "--spread",
+    type=click.IntRange(min=32),
+    is_flag=False,
+    flag_value=128,
+    metavar="[N]",
+    help="Transits over the priors, chance of success and what drives it, from N draws; last on the line: 128.",
+)
 def plan(
     scenario: Path,
     lines_folder: Path | None,
@@ -95,6 +103,7 @@ def plan(
     out: Path | None,
     simulated: int | None,
     remedies: bool,
+    spread: int | None,
 ) -> None:
     """How many transits for each gas, with each mode."""
     from planner.report.files import check_writable, make_folder
@@ -107,7 +116,7 @@ def plan(
         check_writable(json_file)
     if out is not None:
         make_folder(out)
-    result = _planned(read, lines_folder, simulated=simulated, remedies=remedies)
+    result = _planned(read, lines_folder, simulated=simulated, remedies=remedies, spread=spread)
     if to_stdout:
         click.echo(plan_json(result), nl=False)
     else:
