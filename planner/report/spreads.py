@@ -13,7 +13,7 @@ from planner.studies.results import PlanResult, PlanRow
 
 __all__ = ["spreads_block"]
 
-_DRIVERS_SHOWN = 3
+_DRIVERS_SHOWN = 4
 
 
 def spreads_block(result: PlanResult) -> list[RenderableType]:
@@ -27,33 +27,47 @@ def spreads_block(result: PlanResult) -> list[RenderableType]:
         f"{rows[0].spread.draws} draws of each search from: {priors}. Chance: of passing the threshold with the "
         "transits asked for, and with all on offer. What drives it: share of the variance of the ranks in S/N."
     )
-    return [head, Text(words), _table(rows)]
+    return [head, Text(words), _numbers(rows), Text(), _drivers(rows)]
 
 
-def _table(rows: Sequence[PlanRow]) -> Table:
-    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="dim")
-    table.add_column("\ngas", min_width=7)
-    table.add_column("mixing\nratio", justify="right", no_wrap=True)
-    table.add_column("\nmode", overflow="fold")
-    table.add_column("transits at\n16, 50, 84 %", justify="right")
-    table.add_column("chance\nas asked", justify="right")
-    table.add_column("chance\nwith all", justify="right")
-    table.add_column("\nwhat drives it", ratio=1)
+def _numbers(rows: Sequence[PlanRow]) -> Table:
+    table = _started()
+    for heading in ("transits\n16 %", "\n50 %", "\n84 %", "chance\nas asked", "chance\nwith all"):
+        table.add_column(heading, justify="right", no_wrap=True)
     for row in rows:
         spread = row.spread
         assert spread is not None
         counts = (spread.transits_16, spread.transits_50, spread.transits_84)
-        drivers = ", ".join(f"{driver.name} {100 * driver.share:.0f} %" for driver in spread.drivers[:_DRIVERS_SHOWN])
         table.add_row(
-            Text(gas_text(row.gas), style="bold"),
-            ratio_text(row.mixing_ratio),
-            row.mode,
-            ", ".join(map(count_text, counts)),
+            *_search(row),
+            *map(count_text, counts),
             _chance(spread.chance_asked, spread.transits_asked),
             _chance(spread.chance_on_offer, spread.transits_on_offer),
-            drivers or "-",
         )
     return table
+
+
+def _drivers(rows: Sequence[PlanRow]) -> Table:
+    table = _started()
+    table.add_column("\nwhat drives it", ratio=1)
+    for row in rows:
+        assert row.spread is not None
+        shown = row.spread.drivers[:_DRIVERS_SHOWN]
+        table.add_row(*_search(row), ", ".join(f"{driver.name} {100 * driver.share:.0f} %" for driver in shown) or "-")
+    return table
+
+
+def _started() -> Table:
+    """An empty table with the columns that say which search a row is."""
+    table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0), header_style="dim")
+    table.add_column("\ngas", min_width=7)
+    table.add_column("mixing\nratio", justify="right", no_wrap=True)
+    table.add_column("\nmode", overflow="fold")
+    return table
+
+
+def _search(row: PlanRow) -> tuple[Text, str, str]:
+    return Text(gas_text(row.gas), style="bold"), ratio_text(row.mixing_ratio), row.mode
 
 
 def _chance(chance: float, transits: int) -> str:

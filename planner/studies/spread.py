@@ -23,7 +23,7 @@ from planner.studies.nuisances import CLEAR_SKY_DECK_BAR
 from planner.studies.outcomes import Driver, TransitSpread
 from planner.studies.pool import in_threads
 from planner.studies.reduced import Reduced, reduce_opacity
-from planner.studies.results import PlanRow
+from planner.studies.results import PlanResult, PlanRow
 from planner.studies.vary import shifted_ratio, vary
 from planner.studies.workshop import Progress, Workshop, see
 
@@ -65,31 +65,30 @@ class Prior:
         return self.value(float(np.clip(number, -_FARTHEST, _FARTHEST)))
 
 
-def add_spread(
-    workshop: Workshop, rows: Sequence[PlanRow], *, draws: int, progress: Progress | None = None
-) -> tuple[tuple[PlanRow, ...], tuple[tuple[str, str], ...], str]:
-    """The rows of a plan with their spread, the priors in words, and a sentence on the reduced opacity.
+def add_spread(workshop: Workshop, result: PlanResult, *, draws: int, progress: Progress | None = None) -> PlanResult:
+    """A plan with the spread of each of its rows.
 
     Parameters
     ----------
     workshop : Workshop
-    rows : sequence of PlanRow
-        Case by case, with every mode in turn.
+        That of the plan.
+    result : PlanResult
+        Its rows go case by case, with every mode in turn.
     draws : int
         Per case; rounded up to a power of two.
     progress : callable, optional
         Called with a text and the share done.
     """
-    scenario, modes = workshop.scenario, len(workshop.views)
+    scenario, rows = workshop.scenario, iter(result.rows)
     reduced = reduce_opacity(workshop, domain_of(scenario, temperature=True), progress=progress)
     found: list[PlanRow] = []
     words: dict[str, str] = {}
-    for number, case in enumerate(scenario.cases):
+    for case in scenario.cases:
         priors = priors_of(scenario, case)
         words |= {prior.name: prior.words for prior in priors}
         quantiles, searches = draw_searches(reduced, case, draws=draws, seed=SEED, progress=progress)
         for index, view in enumerate(workshop.views):
-            row = rows[number * modes + index]
+            row = next(rows)
             spread = summary(
                 scenario,
                 [prior.name for prior in priors],
@@ -100,11 +99,16 @@ def add_spread(
                 seed=SEED,
             )
             found.append(replace(row, spread=spread))
-    return tuple(found), tuple(words.items()), reduced.error.sentence
+    return replace(
+        result,
+        rows=tuple(found),
+        spread_priors=tuple(words.items()),
+        assumptions=(*result.assumptions, reduced.error.sentence),
+    )
 
 
 def priors_of(scenario: Scenario, case: Case) -> list[Prior]:
-    """Everything that is drawn for a case: names as in the scenario file, the searched gas and absorbers by formula.
+    """Everything that is drawn for a case: the searched gas and absorbers by formula.
 
     Widths are those of the nuisances, and of ``[spread]`` for what is no nuisance. Gravity, molar mass and the radii
     are drawn as factors.
@@ -250,6 +254,8 @@ def _values(scenario: Scenario, case: Case, drawn: dict[str, float]) -> dict[str
     radius = drawn.pop("radius", 1.0) * star_radius
     weight = drawn.pop("gravity", 1.0) * drawn.pop("molar mass", 1.0)
     drawn["temperature"] = drawn.pop("temperature", 1.0) * scenario.atmosphere.temperature_k
+    if "cloud top" in drawn:
+        drawn["cloud_top"] = drawn.pop("cloud top")
     if case.label in drawn:
         drawn["mixing_ratio"] = drawn.pop(case.label)
     return drawn | {
@@ -275,10 +281,10 @@ def _cloud(scenario: Scenario) -> list[Prior]:
     if cloud is not None:
         top_bar = cloud.top_bar
         words = f"{width:g} dex in its top pressure"
-        return [Prior(name="cloud_top", words=words, value=lambda z: float(top_bar * 10 ** (width * z)))]
+        return [Prior(name="cloud top", words=words, value=lambda z: float(top_bar * 10 ** (width * z)))]
     depth = float(np.log(base_bar / CLEAR_SKY_DECK_BAR))
     words = f"one-sided: a deck, with its top at {CLEAR_SKY_DECK_BAR:g} bar at one sigma (the sky is clear)"
-    return [Prior(name="cloud_top", words=words, value=lambda z: float(base_bar * np.exp(-depth * z)), one_sided=True)]
+    return [Prior(name="cloud top", words=words, value=lambda z: float(base_bar * np.exp(-depth * z)), one_sided=True)]
 
 
 def _haze(scenario: Scenario) -> list[Prior]:

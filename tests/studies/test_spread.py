@@ -55,7 +55,7 @@ def test_everything_not_known_is_drawn(narrow):
     """One prior for each width that is not zero, in the words of the output."""
     priors = priors_of(narrow, narrow.cases[0])
     assert [prior.name for prior in priors] == [
-        "radius", "temperature", "gravity", "molar mass", "radius of the star", "N2O", "CO", "cloud_top", "haze",
+        "radius", "temperature", "gravity", "molar mass", "radius of the star", "N2O", "CO", "cloud top", "haze",
     ]  # fmt: skip
     assert priors[1].words == "15 %"
     assert "clear" in priors[7].words
@@ -69,8 +69,8 @@ def test_priors_at_their_quantiles(narrow):
     assert priors["temperature"].at(0.5) == pytest.approx(1)
     assert priors["temperature"].at(0.8413447) == pytest.approx(np.exp(0.15), rel=1e-6)
     assert priors["CO"].at(0.1586553) == pytest.approx(1e-6, rel=1e-4)
-    assert priors["cloud_top"].at(0.0) == pytest.approx(1.0)
-    assert priors["cloud_top"].at(0.6826895) == pytest.approx(0.1, rel=1e-5)
+    assert priors["cloud top"].at(0.0) == pytest.approx(1.0)
+    assert priors["cloud top"].at(0.6826895) == pytest.approx(0.1, rel=1e-5)
     assert priors["haze"].at(0.0) == pytest.approx(0.0, abs=1e-12)
     assert priors["haze"].at(0.6826895) == pytest.approx(9.0, rel=1e-5)
 
@@ -99,7 +99,7 @@ def test_hotter_lighter_and_clearer_draws_see_more(narrow, searches):
     design = np.column_stack([np.ones(len(snr)), quantiles - 0.5])
     slopes = dict(zip(names, np.linalg.lstsq(design, snr, rcond=None)[0][1:], strict=True))
     assert min(slopes["temperature"], slopes["N2O"]) > 0
-    assert max(slopes["gravity"], slopes["molar mass"], slopes["cloud_top"], slopes["CO"]) < 0
+    assert max(slopes["gravity"], slopes["molar mass"], slopes["cloud top"], slopes["CO"]) < 0
 
 
 def test_summary_of_the_draws(narrow, searches):
@@ -112,7 +112,7 @@ def test_summary_of_the_draws(narrow, searches):
     shares = [driver.share for driver in spread.drivers]
     assert shares == sorted(shares, reverse=True)
     assert 0.5 < sum(shares) <= 1
-    assert spread.drivers[0].name == "cloud_top"
+    assert spread.drivers[0].name == "cloud top"
 
 
 def test_chance_is_power_averaged(narrow, searches):
