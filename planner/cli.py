@@ -16,6 +16,7 @@ import click
 from planner import __version__
 from planner.catalogue.command import gases
 from planner.checkcommand import check
+from planner.contrastcommand import contrast
 from planner.choosecommands import choose, odds
 from planner.errors import PlannerError
 from planner.linecommands import fetch, import_
@@ -63,6 +64,7 @@ def cli() -> None:
 
 
 cli.add_command(gases)
+cli.add_command(contrast)
 cli.add_command(choose)
 cli.add_command(odds)
 cli.add_command(limit)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import replace
 from math import ceil
 from pathlib import Path
@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from planner import __version__
 from planner.detection.significance import Measurement, target_snr
 from planner.instrument.binning import Bins
-from planner.scenario.records import Case, Scenario
+from planner.scenario.records import Scenario
 from planner.star.flux import star_cautions
 from planner.studies.contamination import bin_factors, mimic_cautions, mimicry, region_words, usual_caution
 from planner.studies.linecautions import line_cautions
@@ -22,10 +22,22 @@ from planner.studies.observe import ModeView, source_of_light
 from planner.studies.remedies import Adviser
 from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, StarMimic, Verdict
 from planner.studies.simulation import simulate_search
-from planner.studies.spread import add_spread
 from planner.studies.workshop import Progress, Sight, Workshop, see
 
-__all__ = ["CAUTIONS", "Sight", "Workshop", "assumptions", "cautions_about_star", "plan", "plan_row", "see"]
+__all__ = [
+    "CAUTIONS",
+    "Sight",
+    "Workshop",
+    "assumptions",
+    "bands_of",
+    "cautions_about_star",
+    "costs_of",
+    "counts_of",
+    "gaps_of",
+    "plan",
+    "plan_row",
+    "see",
+]
 
 Array = NDArray[np.float64]
 
@@ -52,7 +64,6 @@ def plan(
     progress: Progress | None = None,
     simulated: int | None = None,
     remedies: bool = False,
-    spread: int | None = None,
 ) -> PlanResult:
     """Transits, hours and verdict for every case and mode of a scenario.
 
@@ -67,8 +78,6 @@ def plan(
         Observations to simulate of each search, to try the rates that are stated.
     remedies : bool
         Work out all that would help; without, only what takes no further forward model.
-    spread : int, optional
-        Draws from the priors of all that is not known, for the spread of the transits.
 
     Raises
     ------
@@ -85,7 +94,7 @@ def plan(
             row = adviser.advise(plan_row(workshop, sight, index), sight, index)
             rows.append(_tried(row, workshop, sight, index, simulated) if simulated else row)
             spectra.append(binned_spectrum(workshop, sight, index))
-    result = PlanResult(
+    return PlanResult(
         title=scenario.title,
         invented=scenario.invented,
         threshold_sigma=scenario.goal.threshold_sigma,
@@ -103,19 +112,18 @@ def plan(
         cautions=(*CAUTIONS, *cautions_about_star(workshop), *_surface_cautions(scenario, rows)),
         version=__version__,
     )
-    return add_spread(workshop, result, draws=spread, progress=progress) if spread else result
 
 
 def plan_row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
     """What a case comes down to with one mode."""
     scenario, view, measurement = workshop.scenario, workshop.views[index], sight.measurements[index]
     target = target_snr(scenario.goal.threshold_sigma, scenario.goal.power)
-    known = _counts(measurement.known(), target, scenario, view)
-    marginalised = _counts(measurement, target, scenario, view)
+    known = counts_of(measurement.known(), _reach(measurement.known(), target), scenario, view)
+    marginalised = counts_of(measurement, _reach(measurement, target), scenario, view)
     transits = known.transits_unrounded or _CONFUSION_TRANSITS
     verdict = _verdict(sight, index, known, marginalised, target, view.on_offer(scenario))
     mimic = _mimic(workshop, sight, index, marginalised) if verdict not in _NOTHING_SEEN else None
-    best_bands = _best_bands(view, sight.usable[index], measurement)
+    best_bands = bands_of(view, sight.usable[index], measurement.information())
     about_lines = line_cautions(workshop.library, sight.case.gases, best_bands)
     return PlanRow(
         gas=sight.case.label,
@@ -125,10 +133,10 @@ def plan_row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
         marginalised=marginalised,
         all_known=known,
         best_bands=best_bands,
-        confusion=_confusion(measurement, transits),
+        confusion=costs_of(measurement, transits),
         confused_from=measurement.known().snr(transits),
         confused_to=measurement.snr(transits),
-        uncovered_um=_uncovered(workshop, sight.case, view),
+        uncovered_um=gaps_of(workshop, [*sight.case.gases, *scenario.atmosphere.absorbers], view),
         saturated_um=view.noise.saturated_um,
         cautions=(*(mimic_cautions(mimic) if mimic else ()), *about_lines),
         star=mimic,
@@ -163,8 +171,12 @@ def _tried(row: PlanRow, workshop: Workshop, sight: Sight, index: int, draws: in
     return replace(row, simulation=simulation)
 
 
-def _counts(measurement: Measurement, target: float, scenario: Scenario, view: ModeView) -> Counts:
-    unrounded = measurement.transits_for(target) if measurement.template_ppm.size else None
+def _reach(measurement: Measurement, target: float) -> float | None:
+    return measurement.transits_for(target) if measurement.template_ppm.size else None
+
+
+def counts_of(measurement: Measurement, unrounded: float | None, scenario: Scenario, view: ModeView) -> Counts:
+    """Significance of a measurement, and the hours of the real-valued number of transits that it needs."""
     required = None if unrounded is None else max(1, ceil(unrounded - 1e-9))
     in_transit_h = view.transits_each * scenario.transit_duration_h
     return Counts(
@@ -188,17 +200,25 @@ def _verdict(sight: Sight, index: int, known: Counts, marginalised: Counts, targ
     return Verdict.WITHIN_REACH if marginalised.transits_required <= available else Verdict.TOO_MANY
 
 
-def _confusion(measurement: Measurement, transits: float) -> tuple[tuple[str, float], ...]:
+def costs_of(measurement: Measurement, transits: float) -> tuple[tuple[str, float], ...]:
     """What each nuisance alone leaves of the significance that all known would give; the three dearest."""
     full = measurement.known().snr(transits)
     left = sorted(((name, measurement.only(name).snr(transits)) for name in measurement.nuisances), key=lambda c: c[1])
     return tuple((name, snr) for name, snr in left[:3] if snr < 0.98 * full)
 
 
-def _best_bands(view: ModeView, usable: NDArray[np.bool_], measurement: Measurement) -> tuple[BandShare, ...]:
-    """The stretches that hold most of the information: fewest bins with 80 % of it, neighbours joined, best first."""
+def bands_of(view: ModeView, usable: NDArray[np.bool_], shares: Array) -> tuple[BandShare, ...]:
+    """The stretches that hold most of the information: fewest bins with 80 % of it, neighbours joined, best first.
+
+    Parameters
+    ----------
+    view : ModeView
+    usable : (bin,)
+    shares : (usable bin,)
+        Of the information, each from 0; they add up to 1.
+    """
     information = np.zeros(len(view.bins))
-    information[usable] = measurement.information()
+    information[usable] = shares
     order = np.argsort(information)[::-1]
     needed = int(np.searchsorted(np.cumsum(information[order]), _BAND_INFORMATION)) + 1
     chosen = np.zeros(len(view.bins), dtype=bool)
@@ -224,11 +244,12 @@ def _runs(mask: NDArray[np.bool_], detector: NDArray[np.int64]) -> list[NDArray[
     return list(np.split(index, breaks))
 
 
-def _uncovered(workshop: Workshop, case: Case, view: ModeView) -> tuple[tuple[str, float, float], ...]:
+def gaps_of(workshop: Workshop, gases: Iterable[str], view: ModeView) -> tuple[tuple[str, float, float], ...]:
+    """Stretches of a mode that the data of some gases do not cover: gas, from and to in um."""
     wavelength = view.grid.wavelength_um
     seen = view.weights.sum(axis=0) > 0
     found: list[tuple[str, float, float]] = []
-    for gas in [*case.gases, *workshop.scenario.atmosphere.absorbers]:
+    for gas in gases:
         if not workshop.opacities.has_data(gas):
             continue
         missing = np.flatnonzero(seen & ~workshop.opacities.covered(gas))
