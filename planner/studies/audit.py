@@ -64,9 +64,15 @@ def audit(
     bench = _bench(claim, observed, lines_folder, progress)
     rivalry = try_all(bench) if bench is not None and bench.fits is not None else None
     prospects: tuple[Prospect, ...] = ()
+    trouble = None
     if bench is not None and follow_up:
-        prospects = look_elsewhere(bench, rivalry, lines_folder=lines_folder, progress=progress)
-    findings = _findings(claim, bench, rivalry, prospects, follow_up)
+        try:
+            prospects = look_elsewhere(bench, rivalry, lines_folder=lines_folder, progress=progress)
+        except RangeError as error:  # such as a star's own spectrum that not every mode can use: the claim stays judged
+            trouble = str(error)
+    findings = _checks(claim, bench, rivalry, prospects)
+    if follow_up:
+        findings = (*findings, check_follow_up(bench, prospects, trouble))
     name = gas_text(claim.claim.gas)
     standing, verdict, weakest = judge(name, claim.claim.sigma, findings)
     return AuditResult(
@@ -86,10 +92,10 @@ def audit(
     )
 
 
-def _findings(
-    claim: Claim, bench: Bench | None, rivalry: Rivalry | None, prospects: tuple[Prospect, ...], follow_up: bool
+def _checks(
+    claim: Claim, bench: Bench | None, rivalry: Rivalry | None, prospects: tuple[Prospect, ...]
 ) -> tuple[Finding, ...]:
-    found = [
+    return (
         check_size(bench),
         check_noise(bench),
         check_companions(bench, prospects),
@@ -99,8 +105,7 @@ def _findings(
         check_star(bench),
         check_offsets(claim, bench),
         check_reductions(claim),
-    ]
-    return (*found, *([check_follow_up(bench, prospects)] if follow_up else []))
+    )
 
 
 def _bench(

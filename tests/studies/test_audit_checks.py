@@ -290,3 +290,16 @@ def test_follow_up_finds_the_soonest():
     assert first.band_um[0] > 2.2
     assert first.snr_one_transit * first.transits_required**0.5 >= SETTLED_SIGMA * 0.9
     assert first.mode in check_follow_up(bench, prospects).says
+
+
+def test_trouble_elsewhere_leaves_the_claim_judged(monkeypatch):
+    """Where other modes cannot be looked at, the follow-up says why and all else is as it was."""
+
+    def refuse(*args, **more):
+        raise RangeError("star.spectrum: ends at 2 um")
+
+    monkeypatch.setattr(study, "look_elsewhere", refuse)
+    result = study.audit(claim_of())
+    found = result.finding(Check.FOLLOW_UP)
+    assert (found.outcome, found.says) == (Outcome.UNTESTED, "star.spectrum: ends at 2 um")
+    assert result.finding(Check.SIZE).outcome is Outcome.PASSED

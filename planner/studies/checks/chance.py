@@ -80,7 +80,7 @@ def _room(sigma: float) -> str:
 
 def _scan(bench: Bench | None, sigma: float) -> float | None:
     """Chance of such an excess anywhere in the range, for a feature as wide as the claimed one (upcrossings)."""
-    if bench is None or bench.error_ppm is None:
+    if bench is None or bench.error_ppm is None or bench.height_ppm == 0:
         return None
     ln = np.log(bench.bins.centre_um)
     height = bench.template_ppm - bench.template_ppm.min()

@@ -140,11 +140,11 @@ def _prospect(view: ModeView, measured: Measurement, usable: NDArray[np.bool_]) 
     )
 
 
-def check_follow_up(bench: Bench | None, prospects: Sequence[Prospect]) -> Finding:
-    """Mode and number of transits that would settle the claim soonest."""
+def check_follow_up(bench: Bench | None, prospects: Sequence[Prospect], trouble: str | None = None) -> Finding:
+    """Mode and number of transits that would settle the claim soonest; ``trouble`` is why nothing could be found."""
     tested = f"transits in which each mode would see the claimed amount with {SETTLED_SIGMA:g} sigma, rivals unknown"
-    if bench is None:
-        says = "star, planet or air are not given"
+    if bench is None or trouble is not None:
+        says = trouble or "star, planet or air are not given"
         return Finding(check=Check.FOLLOW_UP, outcome=Outcome.UNTESTED, tested=tested, says=says, why=_WHY)
     reachable = [prospect for prospect in prospects if prospect.transits_required is not None]
     figures: dict[str, float | str | None] = {f"{p.mode} (transits)": p.transits_required for p in prospects}
