@@ -29,7 +29,7 @@ Array = NDArray[np.float64]
 _LINKS = (0.1, 0.2, 0.35, 0.5, 0.7, 0.9, 1.1)
 """Correlations from which two templates are treated jointly: the first at which no group exceeds `_LARGEST`."""
 _LARGEST = 3
-_LEVELS = {1: 120, 2: 48, 3: 20}
+_LEVELS = {1: 120, 2: 32, 3: 14}
 """Levels of each member in a group of this size."""
 
 

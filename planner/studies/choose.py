@@ -14,6 +14,7 @@ from planner.catalogue.read import find_gas, read_catalogue, read_hypotheses
 from planner.catalogue.records import Prior
 from planner.detection.significance import target_snr
 from planner.detection.worth import Channel, Worth, entropy_bits, worth
+from planner.errors import RangeError
 from planner.scenario.records import Scenario
 from planner.studies.beliefs import (
     MOST_RATIO,
@@ -88,12 +89,12 @@ def choose(
     asked = [find_gas(gas).formula for gas in gases] or list(read_catalogue())
     asked = list(dict.fromkeys([*asked, *(gas for pattern in sets for gas in pattern)]))
     workshop = Workshop(scenario, lines_folder=lines_folder, progress=progress)
-    possible = [g for g in asked if workshop.opacities.has_data(g) and set(scenario.atmosphere.background) - {g}]
+    possible = [gas for gas in asked if set(scenario.atmosphere.background) - {gas}]
     most = max(view.charged_hours for view in workshop.views)
     study = _Study(workshop, hypothesis, hours or scenario.transits_on_offer * most, progress)
     study.look(possible, seed)
     choices = study.choices()
-    return study.told(choices, study.patterns(sets, choices, seed), [gas for gas in asked if gas not in possible])
+    return study.told(choices, study.patterns(sets, choices, seed), [gas for gas in asked if gas not in study.beliefs])
 
 
 class _Study:
@@ -109,8 +110,11 @@ class _Study:
     def look(self, gases: Sequence[str], seed: int) -> None:
         """See the gases with every mode, and ask every opinion what that is worth."""
         self.survey.look(gases)
-        self.beliefs = {gas: believed_gas(self.scenario.beliefs, gas, self.hypothesis) for gas in gases}
-        self.pairs = [(gas, index) for gas in gases for index in range(len(self.transits))]
+        seen = list(self.survey.sights)
+        if not seen:
+            raise RangeError(f"{', '.join(gases)}: there are no line data for any of these gases; name others")
+        self.beliefs = {gas: believed_gas(self.scenario.beliefs, gas, self.hypothesis) for gas in seen}
+        self.pairs = [(gas, index) for gas in seen for index in range(len(self.transits))]
         self.channels = {
             (gas, index): Channel.make(self.survey.curves[gas, index].at_hours, *span(self.beliefs[gas]))
             for gas, index in self.pairs

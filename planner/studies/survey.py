@@ -90,11 +90,14 @@ class Survey:
         self.line_data: list[str] = []
         self._hypothesis, self._progress = hypothesis, progress
         self._shapes: dict[str, tuple[Array, ...]] = {}
+        self._alike: dict[str, tuple[str, ...]] = {}
 
     def look(self, gases: Sequence[str]) -> None:
-        """See every gas at its reference and along its range, and those that are like it at theirs."""
+        """See every gas that there are data for, at its reference and along its range, and those like it at theirs."""
         for number, gas in enumerate(gases):
             self._progress(f"looking for {gas}", number / len(gases))
+            if not self.workshop.opacities.has_data(gas):
+                continue
             nuisances = self.nuisances_of((gas,))
             self.sights[gas] = self._sight(gas, self.reference(gas), nuisances)
             ratios = self._nodes(gas)
@@ -106,7 +109,8 @@ class Survey:
             source = self.workshop.library.gas(gas)
             self.line_data += [*source.provenance, *source.partial]
             self._let_go(all_of_it=number % _AT_ONCE == _AT_ONCE - 1)
-        for other in dict.fromkeys(other for gas in gases for other in sharing_bands(gas)):
+        self._alike = {gas: sharing_bands(gas) for gas in self.sights}
+        for other in dict.fromkeys(other for alike in self._alike.values() for other in alike):
             if other not in self._shapes and self.workshop.opacities.has_data(other):
                 self._shapes[other] = self._shape(other)
 
@@ -131,7 +135,7 @@ class Survey:
         sight, there = self.sights[gas], self.scenario.air()
         measurement, transits = sight.measurements[index], max(self.transits[index], 1)
         whole = snr_after(measurement, transits)
-        alike = {o: self._shapes[o][index][sight.usable[index]] for o in sharing_bands(gas) if o in self._shapes}
+        alike = {o: self._shapes[o][index][sight.usable[index]] for o in self._alike[gas] if o in self._shapes}
         alike = {other: shape for other, shape in alike.items() if np.any(shape) and other not in there}
         if not alike or whole == 0:
             return None, 1.0
