@@ -41,8 +41,9 @@ def calls(result, monkeypatch):
     """Studies that answer at once, and the list of what they were asked."""
     asked = []
 
-    def plan(scenario, *, lines_folder=None, progress=None, simulated=None, remedies=False):
+    def plan(scenario, *, lines_folder=None, progress=None, simulated=None, remedies=False, spread=None):
         more = [*([simulated] if simulated else []), *(["remedies"] if remedies else [])]
+        more += [("spread", spread)] if spread else []
         asked.append(("plan", scenario.title, lines_folder, *more))
         return result
 
@@ -159,6 +160,14 @@ def test_plan_simulates_when_asked(folder, calls, words, draws):
     assert run("plan", "a.toml", *words).exit_code == 0
     assert calls == [("plan", "My search", None, draws)]
     assert run("plan", "a.toml", "--simulate", "3").exit_code == 2
+
+
+@pytest.mark.parametrize(("words", "draws"), [(["--spread"], 128), (["--spread", "256"], 256)])
+def test_plan_spreads_when_asked(folder, calls, words, draws):
+    """The number of draws may be left out."""
+    assert run("plan", "a.toml", *words).exit_code == 0
+    assert calls == [("plan", "My search", None, ("spread", draws))]
+    assert run("plan", "a.toml", "--spread", "3").exit_code == 2
 
 
 def test_plan_finds_remedies_when_asked(folder, calls):
