@@ -11,6 +11,7 @@ import contextlib
 import difflib
 import io
 import re
+import threading
 import warnings
 from dataclasses import dataclass
 from functools import cache
@@ -31,6 +32,8 @@ __all__ = [
     "partition_sum_range_k",
     "quiet_hapi",
 ]
+
+_ONE_AT_A_TIME = threading.Lock()
 
 # Abridged standard atomic weights, g/mol: Prohaska et al. 2022, Pure Appl. Chem. 94, 573, table 1.
 _ATOMIC_WEIGHT_G = {
@@ -226,7 +229,8 @@ def quiet_hapi() -> ModuleType:
     Importing hapi writes nothing to disk. It prints a page of text and sets ``always`` for user warnings; both are
     undone here. It takes 0.4 s (2.5 s where no compiled files are kept), hence not at start-up.
     """
-    with contextlib.redirect_stdout(io.StringIO()), warnings.catch_warnings():
+    # two threads that redirect stdout at once would leave it redirected for good
+    with _ONE_AT_A_TIME, contextlib.redirect_stdout(io.StringIO()), warnings.catch_warnings():
         warnings.simplefilter("ignore")
         import hapi
     return hapi

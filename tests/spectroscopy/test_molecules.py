@@ -146,3 +146,18 @@ def test_hapi_is_quiet(tmp_path):
     )
     assert (done.returncode, done.stdout, done.stderr) == (0, "", "")
     assert list(tmp_path.iterdir()) == []
+
+
+def test_threads_do_not_lose_stdout():
+    """Two threads that import hapi at once leave stdout where it was."""
+    code = (
+        "import sys, threading\n"
+        "from planner.spectroscopy.molecules import quiet_hapi\n"
+        "before, go = sys.stdout, threading.Barrier(8)\n"
+        "threads = [threading.Thread(target=lambda: (go.wait(), quiet_hapi())) for _ in range(8)]\n"
+        "[thread.start() for thread in threads]\n"
+        "[thread.join() for thread in threads]\n"
+        "sys.__stdout__.write(str(sys.stdout is before))\n"
+    )
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert done.stdout == "True"
