@@ -13,7 +13,7 @@ if TYPE_CHECKING:
     from planner.scenario import Scenario
     from planner.studies.choices import ChoiceResult
 
-__all__ = ["choose", "odds", "write_starting_ledger"]
+__all__ = ["choose", "odds"]
 
 _FILE = click.Path(path_type=Path, readable=False)
 _FILES = ("choice.json", "choice.ecsv", "worth.png", "worth.pdf", "transits.png", "transits.pdf")
@@ -108,23 +108,6 @@ def odds(ledger: Path, json_file: Path | None) -> None:
     Console(highlight=False).print(odds_view(result))
     if json_file is not None:
         write_text(json_file, odds_json(result))
-
-
-def write_starting_ledger(file: Path) -> None:
-    """Write a commented ledger to start from, for ``limbcast new --ledger FILE``.
-
-    Raises
-    ------
-    OutputError
-        If the file is there already, or cannot be written.
-    """
-    from planner.catalogue.ledger import starting_ledger
-    from planner.errors import OutputError
-    from planner.report.files import write_text
-
-    if file.exists():
-        raise OutputError(f"{file}: exists already; choose another name or remove it first")
-    write_text(file, starting_ledger())
 
 
 def _with_modes(scenario: Scenario, modes: tuple[str, ...]) -> Scenario:

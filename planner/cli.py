@@ -16,8 +16,9 @@ import click
 from planner import __version__
 from planner.catalogue.command import gases
 from planner.checkcommand import check
-from planner.contrastcommand import contrast
 from planner.choosecommands import choose, odds
+from planner.claims.command import audit
+from planner.contrastcommand import contrast
 from planner.errors import PlannerError
 from planner.linecommands import fetch, import_
 from planner.options import Measured, Stretch, progress_bar
@@ -67,6 +68,7 @@ cli.add_command(gases)
 cli.add_command(contrast)
 cli.add_command(choose)
 cli.add_command(odds)
+cli.add_command(audit)
 cli.add_command(limit)
 cli.add_command(map_)
 
@@ -145,16 +147,26 @@ def demo(out: Path) -> None:
 
 @cli.command()
 @click.argument("file", type=_FILE)
-def new(file: Path) -> None:
+@click.option("--claim", "kind", flag_value="claim", help="A claim to audit instead.")
+@click.option("--ledger", "kind", flag_value="ledger", help="A ledger of findings to weigh instead.")
+def new(file: Path, kind: str | None) -> None:
     """Write a commented scenario to start from."""
+    from planner.catalogue.ledger import starting_ledger
+    from planner.claims.read import starting_claim
     from planner.errors import OutputError
     from planner.report.files import write_text
     from planner.scenario import starting_scenario
 
     if file.exists():
         raise OutputError(f"{file}: exists already; choose another name or remove it first")
-    write_text(file, starting_scenario())
-    click.echo(f"wrote {file}; next: limbcast plan {file}", err=True)
+    starts = {
+        None: (starting_scenario, "plan"),
+        "claim": (starting_claim, "audit"),
+        "ledger": (starting_ledger, "odds"),
+    }
+    text, command = starts[kind]
+    write_text(file, text())
+    click.echo(f"wrote {file}; next: limbcast {command} {file}", err=True)
 
 
 @cli.command()

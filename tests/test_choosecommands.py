@@ -9,11 +9,9 @@ import pytest
 from click.testing import CliRunner
 
 from planner.catalogue.ledger import read_ledger, starting_ledger
-from planner.choosecommands import write_starting_ledger
 from planner.cli import cli
 from planner.detection.pattern import PatternBits
 from planner.detection.worth import Worth
-from planner.errors import OutputError
 from planner.scenario import starting_scenario
 from planner.studies.choices import Choice, ChoiceResult, Pattern
 from planner.studies.results import BandShare, Counts, PlanRow, Verdict
@@ -136,14 +134,14 @@ def test_bad_input_is_refused_before_the_work(scenario, calls, arguments, messag
 
 def test_odds_of_the_starting_ledger(tmp_path):
     """Table on stdout, JSON in a file."""
-    write_starting_ledger(tmp_path / "l.toml")
+    assert run("new", "--ledger", tmp_path / "l.toml").exit_code == 0
     assert read_ledger(tmp_path / "l.toml").title == "My planet"
     answer = run("odds", tmp_path / "l.toml", "--json", tmp_path / "o.json")
     assert answer.exit_code == 0, answer.output
     assert "Chance after the findings" in answer.output
     assert json.loads((tmp_path / "o.json").read_text())["hypothesis"] == "life"
-    with pytest.raises(OutputError, match="exists already"):
-        write_starting_ledger(tmp_path / "l.toml")
+    again = run("new", "--ledger", tmp_path / "l.toml")
+    assert (again.exit_code, "exists already" in again.output) == (2, True)
 
 
 def test_damaged_ledgers_give_one_message_each(tmp_path):

@@ -12,7 +12,7 @@ from planner.resources import data_folder
 from planner.scenario.locate import heading
 from planner.scenario.readings import nearest
 
-__all__ = ["parse_claim", "read_claim", "starting_claim", "write_starting_claim"]
+__all__ = ["parse_claim", "read_claim", "starting_claim"]
 
 _TOLERANCE_UM = 0.1
 """By how much a claim's range may go beyond its mode: modes are used out to different ends."""
@@ -55,22 +55,6 @@ def parse_claim(text: str, where: str = "claim") -> Claim:
 def starting_claim() -> str:
     """Text of a commented claim to start from."""
     return (data_folder("configs") / "claims" / "starting.toml").read_text(encoding="utf-8")
-
-
-def write_starting_claim(path: str | Path) -> None:
-    """Write `starting_claim` to a new file.
-
-    Raises
-    ------
-    OutputError
-        If the file is there already or cannot be written.
-    """
-    from planner.errors import OutputError
-    from planner.report.files import write_text
-
-    if Path(path).exists():
-        raise OutputError(f"{path}: exists already; choose another name or remove it first")
-    write_text(path, starting_claim())
 
 
 def _from_folder(claim: Claim, folder: Path) -> Claim:

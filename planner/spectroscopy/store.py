@@ -61,6 +61,7 @@ class Store:
         self.limit_bytes = limit_bytes
         self.notices: list[str] = []
         self._writable = True
+        self._size_bytes: int | None = None
 
     def fetch(self, group: str, key: Mapping[str, Any], build: Callable[[], NDArray[Any]]) -> NDArray[Any]:
         """The array for a key: memory-mapped if it is stored, else built, stored and returned.
@@ -130,15 +131,20 @@ class Store:
                 "Set LIMBCAST_STORE to a folder you can write to"
             )
             return
-        self._prune()
+        self._prune(array.nbytes)
 
-    def _prune(self) -> None:
+    def _prune(self, added_bytes: int) -> None:
+        """Keep the store within its limit; the folder is read only when it may have been passed."""
+        if self._size_bytes is not None and self._size_bytes + added_bytes <= self.limit_bytes:
+            self._size_bytes += added_bytes
+            return
         files = sorted(((p.stat().st_mtime, p.stat().st_size, p) for p in self.entries()), reverse=True)
-        total = 0
+        self._size_bytes = 0
         for _, size, path in files:
-            total += size
-            if total > self.limit_bytes:
+            if self._size_bytes + size > self.limit_bytes:
                 path.unlink(missing_ok=True)
+            else:
+                self._size_bytes += size
 
 
 def _checksum(path: Path) -> int:

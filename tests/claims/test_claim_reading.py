@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import pytest
+from click.testing import CliRunner
 
-from planner.claims.read import parse_claim, read_claim, starting_claim, write_starting_claim
-from planner.errors import OutputError, ScenarioError
+from planner.claims.read import parse_claim, read_claim, starting_claim
+from planner.cli import cli
+from planner.errors import ScenarioError
 
 BARE = """\
 title = "CO on a planet"
@@ -43,13 +45,13 @@ def test_ways_to_quote_a_result(lines, sigma, error):
 def test_starting_claim_is_whole(tmp_path):
     """What `new` writes can be read, and makes a scenario; it is never written over another file."""
     path = tmp_path / "claim.toml"
-    write_starting_claim(path)
+    assert CliRunner().invoke(cli, ["new", "--claim", str(path)]).exit_code == 0
     claim = read_claim(path)
     assert path.read_text() == starting_claim()
     assert claim.modelled
     assert claim.scenario(("near-infrared-prism",)).cases[0].gases == ("CH4",)
-    with pytest.raises(OutputError, match="exists already"):
-        write_starting_claim(path)
+    again = CliRunner().invoke(cli, ["new", "--claim", str(path)])
+    assert (again.exit_code, "exists already" in again.output) == (2, True)
 
 
 def test_every_optional_key_of_the_starting_claim_is_real():
