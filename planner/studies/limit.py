@@ -39,7 +39,7 @@ _DECADES = 4.0
 _MOST_RATIO = 0.5
 _LEAST_RATIO = 1e-16
 _NOTHING_SNR = 0.5
-"""The row of mixing ratios goes on downwards until all transits on offer give no more than this."""
+"""The row of mixing ratios goes on downwards until the most transits give no more than this."""
 _NO_SIGNAL_PPM = 0.1
 
 
@@ -75,7 +75,7 @@ def limit(
     reduced = reduce_opacity(workshop, domain_of(scenario, mixing_ratios=spans), progress=progress)
     curves = []
     for case in distinct_cases(scenario):
-        growth = _Growth(reduced, scenario, case, spans[case.gases], progress)
+        growth = _Growth(reduced, scenario, case, spans[case.gases], max(transits), progress)
         curves += [_curve(growth, index, transits, confidence) for index in range(len(workshop.views))]
     return LimitResult(
         title=scenario.title,
@@ -125,17 +125,23 @@ def _crossing(ratios: Array, snr: Array, wanted: float, upper: int) -> float:
 
 
 class _Growth:
-    """A gas at a row of mixing ratios, seen with every mode."""
+    """A gas at a row of mixing ratios, seen with every mode; down to where the most transits see nothing of it."""
 
     def __init__(
-        self, reduced: Reduced, scenario: Scenario, case: Case, span: tuple[float, float], progress: Progress | None
+        self,
+        reduced: Reduced,
+        scenario: Scenario,
+        case: Case,
+        span: tuple[float, float],
+        most_transits: int,
+        progress: Progress | None,
     ) -> None:
         self.scenario, self.case, self.views = scenario, case, reduced.views
-        self._reduced, self._progress = reduced, progress
+        self._reduced, self._most_transits, self._progress = reduced, most_transits, progress
         decades = log10(span[1] / span[0])
         self.ratios = np.geomspace(*span, max(2, round(_PER_DECADE * decades) + 1))
         self.sights = self.seen(self.ratios)
-        while self.ratios[0] > _LEAST_RATIO and self._largest_snr(self.sights[0]) > _NOTHING_SNR:
+        while self.ratios[0] > _LEAST_RATIO and self._is_noticed(self.sights[0]):
             more = self.ratios[0] * 10.0 ** (-np.arange(_PER_DECADE, 0, -1) / _PER_DECADE)
             self.ratios, self.sights = np.concatenate([more, self.ratios]), [*self.seen(more), *self.sights]
 
@@ -152,9 +158,14 @@ class _Growth:
         """With one mode, per mixing ratio."""
         return [sight.measurements[index] for sight in self.sights]
 
-    def _largest_snr(self, sight: Sight) -> float:
-        pairs = zip(sight.measurements, self.views, strict=True)
-        return max(measurement.snr(view.on_offer(self.scenario)) for measurement, view in pairs)
+    def _is_noticed(self, sight: Sight) -> bool:
+        """Whether some transits that are asked about, or endless ones, would make something of it."""
+        goal = self.scenario.goal
+        return any(
+            measurement.snr(max(self._most_transits, view.on_offer(self.scenario))) > _NOTHING_SNR
+            or target_snr(goal.threshold_sigma, goal.power) < measurement.snr_limit() < np.inf
+            for measurement, view in zip(sight.measurements, self.views, strict=True)
+        )
 
 
 def _span(scenario: Scenario, gases: tuple[str, ...]) -> tuple[float, float]:

@@ -80,7 +80,7 @@ class LimitCurve:
     at_best: LimitPoint
     """With all transits on offer."""
     detectable_at_all: float | None
-    """After infinitely many transits."""
+    """After infinitely many transits; 0 where nothing bounds their significance."""
     obstacle: Obstacle | None
     """Set where that is ``None``."""
     obstacle_words: str
