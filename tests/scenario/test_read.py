@@ -25,6 +25,7 @@ from planner.scenario import (
     starting_scenario,
 )
 from planner.scenario.beliefs import Beliefs, GasBelief, PresenceBelief, PriorBelief, Sides
+from planner.scenario.search import Spread
 from planner.scenario.surface import SurfaceRegion
 
 DEMO = (data_folder("configs") / "scenarios" / "demo.toml").read_text()
@@ -52,6 +53,8 @@ def test_starting_scenario_states_the_defaults():
         "cloud_top": start.nuisances.cloud_top_dex,
         "haze": start.nuisances.haze_dex,
         "absorbers": start.nuisances.absorbers_dex,
+        "mixing_ratio": start.spread.mixing_ratio_dex,
+        "star_radius": start.spread.star_radius_fraction * 100,
         "resolving_power": start.bins.resolving_power,
     }.items():
         assert re.search(rf'^# {key} = "?{value:g}\b', starting_scenario(), re.MULTILINE), key
@@ -212,7 +215,7 @@ def test_every_key_is_documented():
         key for row in re.findall(r"^\| (`.*?`) \|", text, re.MULTILINE) for key in re.findall(r"`(\w+)`", row)
     }
     records = [Scenario, Star, SurfaceRegion, Planet, Atmosphere, Cloud, Haze, Candidate, Goal, Noise, Nuisances, Bins]
-    records += [Beliefs, GasBelief, Sides, PriorBelief, PresenceBelief]
+    records += [Spread, Beliefs, GasBelief, Sides, PriorBelief, PresenceBelief]
     keys = {field.alias or name for record in records for name, field in record.model_fields.items()}
     # "haze" is a table of the atmosphere and a key of the nuisances
     tables = {
@@ -226,6 +229,7 @@ def test_every_key_is_documented():
         "goal",
         "noise",
         "nuisances",
+        "spread",
         "bins",
         *("beliefs", "life", "industry", "gases", "if_true", "if_false"),
     }
