@@ -88,7 +88,7 @@ SEARCHES = {
         ["grism-2-to-4-um", "grism-4-to-5-um", "combined"], COOL, SPOTS, EARTH, THIN_AIR,
         '[nuisances]\nrivals = { OCS = "1 ppm" }\n',
     ),
-    "a warm sub-Neptune of a brighter star": text(["grism-4-to-5-um"], WARM, NEPTUNE, HYDROGEN, ratio="30 ppm"),
+    "a warm sub-Neptune of a brighter star": text(["grism-4-to-5-um"], WARM, NEPTUNE, HYDROGEN, ratio="300 ppb"),
     "narrow priors": text(
         ["grism-4-to-5-um"], COOL, EARTH, THIN_AIR,
         '[nuisances]\noffset = "0 ppm"\ncloud_top = "0 dex"\nhaze = "0 dex"\nabsorbers = "0.1 dex"\n',
