@@ -1,8 +1,8 @@
 """One window of an embedded list judged against real data, like with like.
 
-Of an embedded list only the isotopologues that the real file holds count, and of each only lines as strong as those at
-which the file was cut off, so that neither what it leaves out nor its cut is held against the list. Measured
-cross-sections are compared at their own temperature and pressure and held at all heights.
+Of an embedded list only the isotopologues that the real file holds count, and of each, in both lists, only lines as
+strong as those at which the file was cut off, so that neither what it leaves out nor its cut is held against the list.
+Measured cross-sections are compared at their own temperature and pressure and held at all heights.
 """
 
 from __future__ import annotations
@@ -92,7 +92,7 @@ def judge_lines(
     JudgedWindow or None
         None where the real lines show nothing.
     """
-    ours = None if embedded is None else _alike(embedded, real, window_per_cm)
+    ours, real = _alike(embedded, real, window_per_cm)
     marks = MARKS if constants.line_parts else STRONG_MARKS
 
     def smooth(wavenumber_per_cm: Floats, temperature_k: float) -> Floats:
@@ -212,19 +212,27 @@ def smooth_sum_cm(constants: Constants, window_per_cm: Interval) -> float:
     return 0.0 if smooth is None else float(smooth.mean() * (window_per_cm[1] - window_per_cm[0]))
 
 
-def _alike(embedded: Lines, real: Lines, window: Interval) -> Lines:
-    """The embedded lines that the real list would hold: in its run of lines, of its isotopologues, above its cut.
+def _alike(embedded: Lines | None, real: Lines, window: Interval) -> tuple[Lines | None, Lines]:
+    """Both lists in the run of real lines that holds a window: of the real isotopologues, above the real cut-off.
 
-    Random lines, which name no levels, stand for all lines of their bins together and are not cut.
+    Random lines, which name no levels, stand for all lines of their bins together: they are not cut, nor is a real
+    list that is compared with them for the most part.
     """
-    run = next(run for run in runs(real.wavenumber_per_cm) if run[0] <= window[0] and run[1] >= window[1])
-    here = real.where(inside(real.wavenumber_per_cm, [window]))
-    keep = np.zeros(len(embedded), dtype=bool)
+    low, high = next(run for run in runs(real.wavenumber_per_cm) if run[0] <= window[0] and run[1] >= window[1])
+    ours = None
+    if embedded is not None:
+        present = inside(embedded.wavenumber_per_cm, [(low - _SHIFT_PER_CM, high + _SHIFT_PER_CM)])
+        ours = embedded.where(present & np.isin(embedded.isotopologue, np.unique(real.isotopologue)))
+        random = ours.upper_global == ""
+        if sum_cm(ours.where(random), window) > 0.5 * sum_cm(ours, window):
+            return ours, real
+    here = inside(real.wavenumber_per_cm, [window])
+    cuts = np.full(int(real.isotopologue.max()) + 1, np.inf)
     for isotopologue in np.unique(real.isotopologue):
-        cut = cut_off_cm(here.intensity_cm[here.isotopologue == isotopologue])
-        strong = (embedded.intensity_cm >= _ROUNDED * cut) | (embedded.upper_global == "")
-        keep |= (embedded.isotopologue == isotopologue) & strong
-    return embedded.where(keep & inside(embedded.wavenumber_per_cm, [(run[0] - _SHIFT_PER_CM, run[1] + _SHIFT_PER_CM)]))
+        cuts[isotopologue] = cut_off_cm(real.intensity_cm[here & (real.isotopologue == isotopologue)])
+    if ours is not None:
+        ours = ours.where((ours.intensity_cm >= _ROUNDED * cuts[ours.isotopologue]) | random)
+    return ours, real.where(real.intensity_cm >= cuts[real.isotopologue])
 
 
 def _embedded_cross_section(
