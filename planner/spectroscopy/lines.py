@@ -75,12 +75,13 @@ class Lines:
     lower_weight: NDArray[np.float64]
 
     def __post_init__(self) -> None:
-        order = np.argsort(self.wavenumber_per_cm, kind="stable")
+        wavenumber = np.asarray(self.wavenumber_per_cm)
+        order = np.argsort(wavenumber, kind="stable") if np.any(np.diff(wavenumber) < 0) else None
         for field in fields(self):
             value = np.asarray(getattr(self, field.name))
-            if value.shape != order.shape:
-                raise ValueError(f"Lines.{field.name}: expected shape {order.shape}, got {value.shape}")
-            value = value[order]
+            if value.shape != wavenumber.shape:
+                raise ValueError(f"Lines.{field.name}: expected shape {wavenumber.shape}, got {value.shape}")
+            value = value.view() if order is None else value[order]
             value.flags.writeable = False
             object.__setattr__(self, field.name, value)
         for name in _NUMBERS:

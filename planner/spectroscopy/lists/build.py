@@ -179,7 +179,7 @@ _FIELDS = [(name, "<f8") for name in (
     "wavenumber_per_cm", "intensity_cm", "einstein_a_per_s", "air_width_per_cm_atm", "self_width_per_cm_atm",
     "lower_energy_per_cm", "temperature_exponent", "air_shift_per_cm_atm", "upper_weight", "lower_weight",
 )] + [("molecule", "<i2"), ("isotopologue", "<i2")]  # fmt: skip
-_LABELS = [(name, "S15") for name in ("upper_global", "lower_global", "upper_local", "lower_local")]
+_LABELS = [(name, "<U15") for name in ("upper_global", "lower_global", "upper_local", "lower_local")]
 
 
 def table_from_lines(lines: Lines) -> NDArray[Any]:
@@ -192,6 +192,4 @@ def table_from_lines(lines: Lines) -> NDArray[Any]:
 
 def lines_from_table(table: NDArray[Any]) -> Lines:
     """Inverse of :func:`table_from_lines`."""
-    numbers = {name: np.array(table[name]) for name, _ in _FIELDS}
-    labels = {name: table[name].astype("U15") for name, _ in _LABELS}
-    return Lines(**numbers, **labels)
+    return Lines(**{name: table[name] for name, _ in _FIELDS + _LABELS})
