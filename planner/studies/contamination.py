@@ -62,7 +62,13 @@ class _Surface:
             region = replace(region, temperature_k=region.temperature_k + widths * region.temperature_error_k)
         else:
             region = replace(region, fraction=region.fraction + widths * region.fraction_error)
-        return replace(self, **{which: region})
+        return replace(self, spots=region) if which == "spots" else replace(self, faculae=region)
+
+    def has_room(self, name: str, widths: float) -> bool:
+        """Whether the shares of the disc stay shares when one of its numbers is moved."""
+        moved = self.moved(name, widths)
+        shares = [region.fraction for region in (moved.spots, moved.faculae) if region is not None]
+        return min(shares) >= 0 and sum(shares) <= 1
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -201,6 +207,9 @@ def _usual(star: Star) -> _Surface:
 
 
 def _log_slope(surface: _Surface, name: str, wavelength_um: Array) -> Array:
-    """Change of ln(factor) for one prior width."""
-    up, down = (surface.moved(name, sign * _STEP).factor(wavelength_um) for sign in (1, -1))
-    return np.asarray(np.log(up / down) / (2 * _STEP))
+    """Change of ln(factor) for one prior width; from one side only where the disc has no room on the other."""
+    low, high = (step if surface.has_room(name, step) else 0.0 for step in (-_STEP, _STEP))
+    if low == high:
+        return np.zeros_like(wavelength_um)
+    up, down = (surface.moved(name, step).factor(wavelength_um) for step in (high, low))
+    return np.asarray(np.log(up / down) / (high - low))

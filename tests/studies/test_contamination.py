@@ -128,6 +128,20 @@ def test_directions_against_the_factor(spotted):
     assert found["facula temperature"] == pytest.approx(slope, rel=0.02)
 
 
+def test_spots_that_may_not_be_there():
+    """A share of zero with an error is an unknown without a bias; the derivative is taken from above."""
+    workshop, seen = sight("[star.spots]\ncovered_fraction = 0\ncovered_fraction_error = 0.1")
+    assert "spots" in seen.measurements[0].nuisances
+    assert "spot temperature" not in seen.measurements[0].nuisances
+    star, view = workshop.scenario.star, workshop.views[0]
+    found = {d.name: d.per_mode_ppm[0] for d in region_directions(star, seen.spectrum, workshop.views)}
+    few = replace(star.spots, fraction=1e-4)
+    slope = seen.spectrum[0].depth_ppm * (disc_factor(2650.0, few, None, view.bins.centre_um) - 1) / 1e-4 * 0.1
+    assert found["spots"] == pytest.approx(slope, rel=0.01)
+    full = sight("[star.spots]\ncovered_fraction = 1\ncovered_fraction_error = 0.1")[1]
+    assert np.all(np.isfinite(full.measurements[0].directions_ppm))
+
+
 def test_bias_leaves_with_the_spectrum():
     """The part of the depth that the star makes stands beside the spectrum, and only where regions are stated."""
     spectrum = plan(scenario(BOTH)).spectra[0]
