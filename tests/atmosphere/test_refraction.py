@@ -6,7 +6,6 @@ import numpy as np
 import pytest
 
 from planner.atmosphere.refraction import LOSCHMIDT_PER_CM3, refraction_boundary, refractivity
-from planner.errors import LineDataError
 
 SUN_KM, AU_KM = 6.957e5, 1.495978707e8
 
@@ -43,13 +42,13 @@ def test_denser_air_and_farther_stars_raise_the_boundary(make_air):
 
 
 def test_mixture_is_the_mean():
-    """By mixing ratio; trace gases that are not listed count as the mean of the rest."""
+    """By mixing ratio."""
     half = refractivity({"N2": 0.5, "CO2": 0.5})
     assert half == pytest.approx((refractivity({"N2": 1.0}) + refractivity({"CO2": 1.0})) / 2)
-    assert refractivity({"N2": 0.99, "CCl3F": 0.01}) == pytest.approx(refractivity({"N2": 1.0}))
 
 
-def test_unlisted_gases_are_refused():
-    """Too much of a gas without a known index is an error that names it."""
-    with pytest.raises(LineDataError, match=r"5\.0% of others \(CCl3F\); known are N2"):
-        refractivity({"N2": 0.95, "CCl3F": 0.05})
+def test_unlisted_gases_count_as_heavy_ones():
+    """A gas without a listed index bends more than nitrogen, and in proportion to its share."""
+    share = refractivity({"N2": 0.95, "CCl3F": 0.05})
+    assert share == pytest.approx(0.95 * 2.984e-4 + 0.05 * 7e-4)
+    assert share > refractivity({"N2": 1.0})
