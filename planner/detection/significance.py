@@ -26,6 +26,8 @@ _MOST_TRANSITS = 1e7
 """Beyond this many transits a rising curve counts as one that never arrives."""
 _ROUNDING = 1e-13
 """Variances this small beside the largest are rounding errors of zero."""
+_NEGLIGIBLE = 1e-30
+"""A floor whose variance is this share of that of one transit would show after 1e30 of them: there is none."""
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -114,9 +116,10 @@ class Measurement:
         floor = self.floor_ppm2 / np.outer(self.white_ppm, self.white_ppm)
         variances = np.diag(floor)
         if np.count_nonzero(floor) == np.count_nonzero(variances):
-            return variances, columns.T
+            return np.where(variances < _NEGLIGIBLE, 0.0, variances), columns.T
         variances, vectors = linalg.eigh(floor)
-        variances[variances < _ROUNDING * variances[-1]] = 0.0  # a floor common to all bins has a single mode
+        # a floor common to all bins has a single mode
+        variances[variances < max(_ROUNDING * variances[-1], _NEGLIGIBLE)] = 0.0
         return variances, vectors.T @ columns.T
 
     def _distance(self, white_share: float) -> float:

@@ -7,7 +7,7 @@ from itertools import pairwise
 
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from planner.detection.significance import Measurement, one_sided_probability, one_sided_sigma, target_snr
@@ -100,7 +100,13 @@ def test_floor_common_to_all_bins_has_no_limit():
     assert m.snr(1e4) == pytest.approx(slow_snr(m, 1e4), rel=1e-6)
 
 
+def test_floor_beyond_all_transits_is_none():
+    """A floor that is a rounding error of nothing sets no limit, and breaks nothing."""
+    assert measurement(floor=1.5e-157, nuisances=2).snr_limit() == np.inf
+
+
 @given(st.floats(0.5, 20), st.floats(0, 6))
+@example(1.0, 1.5271448138856036e-157)
 @settings(derandomize=True, max_examples=40, deadline=None)
 def test_transits_for_inverts_snr(snr, floor):
     """At the number of transits returned the significance is the one asked for."""
