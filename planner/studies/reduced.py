@@ -33,8 +33,8 @@ _TRAINING = 48
 _TRAINING_PER_CASE = 12
 _CHECKS = 16
 _PROOFS = 16
-_ROUNDS = 2
-"""Bins that fail the proof are fitted again, with the proof among the training, at most so often."""
+_ROUNDS = 3
+"""Bins that fail the proof are fitted again, more closely and to more atmospheres, at most so often."""
 _STRIDE = 4
 """Samples are chosen among every fourth of the grid; the means that they must give are those of all."""
 _AIM = 0.04
@@ -213,7 +213,7 @@ class _Choice:
         count = max(_TRAINING, _TRAINING_PER_CASE * len(self._domain.mixing_ratios))
         training, checks = self._functions(count, seed=1, to_the_ends=True), self._functions(_CHECKS, seed=2)
         every = [(mode, b) for mode, view in enumerate(self.views) for b in range(len(view.bins))]
-        chosen = {place: self._fit(place, training, checks) for place in every}
+        chosen = {place: self._fit(place, training, checks, _AIM) for place in every}
         for number in range(_ROUNDS + 1):
             proofs = self._functions(_PROOFS, seed=3 + number)
             errors = {place: self._errors(place, chosen[place], proofs) for place in every}
@@ -221,7 +221,7 @@ class _Choice:
             if not failed or number == _ROUNDS:
                 break
             training, checks = training.and_also(checks), checks.and_also(proofs)
-            chosen |= {place: self._fit(place, training, checks) for place in failed}
+            chosen |= {place: self._fit(place, training, checks, _AIM / 2 ** (number + 1)) for place in failed}
         rows = [(m, b, i, w) for (m, b), pair in chosen.items() for i, w in zip(*pair, strict=True)]
         return np.array([self._summary(errors), *rows])
 
@@ -230,11 +230,11 @@ class _Choice:
         everything = np.concatenate(list(errors.values()))
         return float(np.abs(everything).max()), float(np.sqrt(np.mean(everything**2))), max(ppm, default=0.0), 0.0
 
-    def _fit(self, place: tuple[int, int], training: _Functions, checks: _Functions) -> Quadrature:
+    def _fit(self, place: tuple[int, int], training: _Functions, checks: _Functions, aim: float) -> Quadrature:
         candidates, share = self._candidates(place)
         values, means = self._in_noise(place, training)
         held_out, held_out_means = self._in_noise(place, checks)
-        index, weights = fit_until(values, share, means, held_out, held_out_means, _AIM)
+        index, weights = fit_until(values, share, means, held_out, held_out_means, aim)
         return candidates[index] * _STRIDE, weights
 
     def _errors(self, place: tuple[int, int], chosen: Quadrature, proofs: _Functions) -> Array:
@@ -271,13 +271,21 @@ class _Choice:
         thin: list[NDArray[np.float32]] = []
         means: list[list[Array]] = [[] for _ in self._means]
         atmospheres = drawn(self._workshop.scenario, self._domain, count, seed, to_the_ends=to_the_ends)
-        for number, (scenario, case) in enumerate(atmospheres):
+        temperature_k = 0.0
+        for number, (scenario, case) in enumerate(sorted(atmospheres, key=_temperature_of)):
+            if scenario.atmosphere.temperature_k != temperature_k:
+                temperature_k = scenario.atmosphere.temperature_k
+                self._workshop.opacities.let_go()  # tables of one temperature at a time
             self._progress("choosing samples", number / count)
             rows = _rows(ForwardModel(scenario, self._workshop.opacities, ()), case)
             thin.append(rows[:, ::_STRIDE].astype(np.float32))
             for part, mean in zip(means, self._means, strict=True):
                 part.append(mean(rows))
         return _Functions(thin=np.concatenate(thin), means=tuple(np.concatenate(part) for part in means))
+
+
+def _temperature_of(atmosphere: tuple[Scenario, Case]) -> float:
+    return atmosphere[0].atmosphere.temperature_k
 
 
 def _rows(model: ForwardModel, case: Case) -> Array:

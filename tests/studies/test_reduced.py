@@ -75,6 +75,18 @@ def test_transits_against_the_full_model(narrow, narrow_workshop, narrow_reduced
         assert few.transits_for(target) == pytest.approx(full.transits_for(target), rel=0.02)
 
 
+def test_combined_modes_share_the_samples_of_their_parts(narrow, narrow_workshop, narrow_reduced):
+    """A combination has the bins of its parts one after the other, and takes no samples of its own."""
+    both = narrow.model_copy(update={"modes": ("grism-4-to-5-um", "grism-2-to-4-um", "combined")})
+    workshop = Workshop(both)
+    reduced = reduce_opacity(workshop, domain_of(both))
+    one, other, combined = reduced.model.binned(both.cases[0])
+    np.testing.assert_array_equal(combined.depth_ppm, np.concatenate([one.depth_ppm, other.depth_ppm]))
+    assert reduced.error.bins == one.depth_ppm.size + other.depth_ppm.size
+    few = see(reduced.of(both), both.cases[0]).measurements[2]
+    assert few.snr(30) == pytest.approx(see(workshop, both.cases[0]).measurements[2].snr(30), rel=0.01)
+
+
 def test_choice_comes_from_the_store(narrow, narrow_workshop, narrow_reduced, monkeypatch):
     """What was chosen once is not chosen again, and another domain is another choice."""
 
