@@ -29,9 +29,9 @@ __all__ = ["Reduced", "ReducedError", "SparseMeans", "Variant", "reduce_opacity"
 
 Array = NDArray[np.float64]
 
-_TRAINING = 48
+_TRAINING = 72
 _TRAINING_PER_CASE = 12
-_CHECKS = 16
+_CHECKS = 24
 _PROOFS = 16
 _ROUNDS = 3
 """Bins that fail the proof are fitted again, more closely and to more atmospheres, at most so often."""
@@ -211,11 +211,12 @@ class _Choice:
     def make(self) -> Array:
         """A row with the errors (worst, typical, worst in ppm), then rows of mode, bin, position and weight."""
         count = max(_TRAINING, _TRAINING_PER_CASE * len(self._domain.mixing_ratios))
-        training, checks = self._functions(count, seed=1, to_the_ends=True), self._functions(_CHECKS, seed=2)
+        training = self._functions(count, seed=1, to_the_ends=True)
+        checks = self._functions(_CHECKS, seed=2)
         every = [(mode, b) for mode, view in enumerate(self.views) for b in range(len(view.bins))]
         chosen = {place: self._fit(place, training, checks, _AIM) for place in every}
         for number in range(_ROUNDS + 1):
-            proofs = self._functions(_PROOFS, seed=3 + number)
+            proofs = self._functions(_PROOFS, seed=3 + number, slopes=True)
             errors = {place: self._errors(place, chosen[place], proofs) for place in every}
             failed = [place for place in every if np.abs(errors[place]).max() > _ALLOWED]
             if not failed or number == _ROUNDS:
@@ -267,7 +268,8 @@ class _Choice:
             noise.append(np.where(view.noise.saturated | ~np.isfinite(variance), np.inf, np.sqrt(variance)))
         return noise
 
-    def _functions(self, count: int, seed: int, *, to_the_ends: bool = False) -> _Functions:
+    def _functions(self, count: int, seed: int, *, to_the_ends: bool = False, slopes: bool = False) -> _Functions:
+        """What so many atmospheres make; slopes double the work, and what fits the depths fits them."""
         thin: list[NDArray[np.float32]] = []
         means: list[list[Array]] = [[] for _ in self._means]
         atmospheres = drawn(self._workshop.scenario, self._domain, count, seed, to_the_ends=to_the_ends)
@@ -277,7 +279,7 @@ class _Choice:
                 temperature_k = scenario.atmosphere.temperature_k
                 self._workshop.opacities.let_go()  # tables of one temperature at a time
             self._progress("choosing samples", number / count)
-            rows = _rows(ForwardModel(scenario, self._workshop.opacities, ()), case)
+            rows = _rows(ForwardModel(scenario, self._workshop.opacities, ()), case, slopes=slopes)
             thin.append(rows[:, ::_STRIDE].astype(np.float32))
             for part, mean in zip(means, self._means, strict=True):
                 part.append(mean(rows))
@@ -288,16 +290,20 @@ def _temperature_of(atmosphere: tuple[Scenario, Case]) -> float:
     return atmosphere[0].atmosphere.temperature_k
 
 
-def _rows(model: ForwardModel, case: Case) -> Array:
+def _rows(model: ForwardModel, case: Case, *, slopes: bool) -> Array:
     """What the significance of a case is made of, sample by sample, ``(function, wavenumber)``, in ppm."""
     scenario = model.scenario
-    others = [gas for gas in scenario.atmosphere.absorbers if gas not in case.gases]
-    width = scenario.nuisances.absorbers_dex * log(10)
     there = model.depth(case, shares_of=case.gases)
-    null = model.depth(case, shares_of=others, transparent=case.gases)
-    rows = [there.depth, null.depth]
-    rows += [model.where_covered(gas, there.depth - there.depth_without[gas]) for gas in case.gases]
-    rows += [width * model.where_covered(gas, null.derivative[gas]) for gas in others]
+    rows = [there.depth, *(model.where_covered(gas, there.depth - there.depth_without[gas]) for gas in case.gases)]
+    if slopes:
+        others = [gas for gas in scenario.atmosphere.absorbers if gas not in case.gases]
+        width = scenario.nuisances.absorbers_dex * log(10)
+        null = model.depth(case, shares_of=others, transparent=case.gases)
+        rows += [null.depth, *(width * model.where_covered(gas, null.derivative[gas]) for gas in others)]
+    elif len(case.gases) == 1:
+        rows.append(there.depth_without[case.gases[0]])
+    else:
+        rows.append(model.depth(case, transparent=case.gases).depth)
     for rival in scenario.nuisances.rivals.items():
         rows.append(model.depth(case, Change(added=(rival,)), transparent=case.gases).depth)
     return np.array(rows) * 1e6
