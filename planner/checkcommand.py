@@ -10,6 +10,8 @@ from planner.options import progress_bar
 
 __all__ = ["check"]
 
+_PIPE_WIDTH = 180
+"""Columns where the output goes to a file or a pipe."""
 _PATH = click.Path(path_type=Path, readable=False)  # our own messages say what is wrong with a path
 
 
@@ -34,7 +36,10 @@ def check(ctx: click.Context, against: Path | None, write: bool) -> None:
         raise click.UsageError("--write stores a table of scores; give --against DIR too")
     with progress_bar() as progress:
         report = study(against, progress)
-    Console(highlight=False).print(check_view(report))
+    console = Console(highlight=False)
+    if not console.is_terminal:
+        console.width = _PIPE_WIDTH
+    console.print(check_view(report, console.width))
     if write:
         from planner.report.accuracypage import write_accuracy
 

@@ -14,18 +14,21 @@ from planner.studies.listrecords import CheckedList, CheckReport
 __all__ = ["check_view"]
 
 _STYLES = {Judgement.MEETS: "green", Judgement.MISSES: "red", Judgement.NARROW: "dim"}
+_WIDE = 150
+"""Columns from which a whole row fits."""
+_KEPT_WHOLE = ("gas", "1/cm", "bins", "90 %", "median", "mean", "verdict", "sum, cm", "factor")
 _KEY = (
     "Differences of effective heights in scale heights, in bins of R = 100; one figure per mixing ratio. "
     "In-sample: the list was fitted to data of this range."
 )
 
 
-def check_view(report: CheckReport) -> Group:
-    """Faults of the lists, then the accuracy table, then what was never compared."""
+def check_view(report: CheckReport, width: int) -> Group:
+    """Faults of the lists, then the accuracy table, then what was never compared, for a console of this width."""
     parts: list[RenderableType] = []
     if report.lists:
         parts += [_lists(report.lists), Text()]
-    parts += _accuracy(report.accuracy)
+    parts += _accuracy(report.accuracy, width >= _WIDE)
     parts += [Text(notice) for notice in report.notices]
     return Group(*parts)
 
@@ -44,7 +47,7 @@ def _lists(lists: Sequence[CheckedList]) -> Table:
     return table
 
 
-def _accuracy(accuracy: AccuracyTable) -> list[RenderableType]:
+def _accuracy(accuracy: AccuracyTable, wide: bool) -> list[RenderableType]:
     if not accuracy.judged and not accuracy.unseen:
         return [Text("No accuracy is stored.")]
     meeting, judged = accuracy.meeting
@@ -54,36 +57,38 @@ def _accuracy(accuracy: AccuracyTable) -> list[RenderableType]:
         Text(f"{meeting} of {judged} windows meet the marks.", style="bold"),
         Text(f"{_KEY} Mixing ratios {said}."),
         Text(),
-        _judged(accuracy.judged),
+        _judged(accuracy.judged, wide),
         Text(),
         Text(f"{len(accuracy.unseen)} band regions never compared with real spectra", style="bold"),
-        _unseen(accuracy.unseen),
+        _unseen(accuracy.unseen, wide),
     ]
 
 
-def _judged(windows: Iterable[JudgedWindow]) -> Table:
-    table = _table("gas", "1/cm", "bins", "90 %", "median", "mean", "sum", "verdict", "in-sample", "lines", "with")
+def _judged(windows: Iterable[JudgedWindow], wide: bool) -> Table:
+    """All columns, or on a narrow console those that a verdict rests on."""
+    more = ("sum", "in-sample", "lines", "compared with") if wide else ()
+    table = _table("gas", "1/cm", "bins", "90 %", "median", "mean", "verdict", *more)
     for row in windows:
-        table.add_row(
+        cells: list[RenderableType] = [
             row.gas,
             f"{row.from_per_cm:.0f}-{row.to_per_cm:.0f}",
             "/".join(map(str, row.bins)),
             *(_figures(values) for values in (row.percentile_90, row.median, row.mean)),
-            f"{row.sum_ratio:.2f}",
             Text(row.verdict.value, style=_STYLES[row.verdict]),
-            "yes" if row.in_sample else "no",
-            f"{row.embedded_lines}/{row.real_lines}",
-            row.compared_with,
-        )
+        ]
+        if wide:
+            sample = "yes" if row.in_sample else "no"
+            cells += [f"{row.sum_ratio:.2f}", sample, f"{row.embedded_lines}/{row.real_lines}", row.compared_with]
+        table.add_row(*cells)
     return table
 
 
-def _unseen(windows: Iterable[UnseenWindow]) -> Table:
-    table = _table("gas", "1/cm", "sum, cm", "good to a factor", "rests on", "against published sums")
+def _unseen(windows: Iterable[UnseenWindow], wide: bool) -> Table:
+    table = _table("gas", "1/cm", "sum, cm", "factor", "rests on", *(["against published sums"] if wide else []))
     for row in windows:
         stretch = f"{row.from_per_cm:.0f}-{row.to_per_cm:.0f}"
-        factor = f"{row.strength_factor:.2f}"
-        table.add_row(row.gas, stretch, f"{row.sum_cm:.2g}", factor, row.rests_on, row.published or "-")
+        cells = [row.gas, stretch, f"{row.sum_cm:.2g}", f"{row.strength_factor:.2f}", row.rests_on]
+        table.add_row(*cells, *([row.published or "-"] if wide else []))
     return table
 
 
@@ -94,5 +99,5 @@ def _figures(values: Iterable[float | None]) -> str:
 def _table(*heads: str) -> Table:
     table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold")
     for head in heads:
-        table.add_column(head, overflow="fold")
+        table.add_column(head, overflow="fold", no_wrap=head in _KEPT_WHOLE)
     return table

@@ -7,6 +7,7 @@ from dataclasses import replace
 from pathlib import Path
 
 import pytest
+from rich.console import Console
 
 from planner.errors import LineDataError, OutputError
 from planner.report import accuracypage
@@ -111,16 +112,18 @@ def test_table_is_not_written_into_an_installed_package(checkout):
     assert sorted(path.name for path in checkout.iterdir()) == ["README.md", "remarks.toml"]
 
 
-def test_terminal_shows_faults_and_scores():
-    """Lists first, then the windows, then what was never compared."""
-    from rich.console import Console
-
+@pytest.mark.parametrize("width", [80, 180])
+def test_terminal_shows_faults_and_scores(width):
+    """Lists first, then the windows, then what was never compared; a narrow console drops the last columns."""
     checked = CheckedList(gas="CO", lines=7, seconds=0.1, faults=("a band is missing",))
-    console = Console(width=200, record=True, file=io.StringIO())
-    console.print(check_view(CheckReport(lists=(checked,), accuracy=TABLE, against=None, notices=("store: full",))))
+    console = Console(width=width, record=True, file=io.StringIO())
+    report = CheckReport(lists=(checked,), accuracy=TABLE, against=None, notices=("store: full",))
+    console.print(check_view(report, width))
     text = console.export_text()
     assert text.index("a band is missing") < text.index("1 of 2 windows") < text.index("never compared")
-    assert "-/0.40/0.10" in text
+    row = next(line for line in text.splitlines() if line.startswith("CO 2000-2300".replace(" ", "  ")))
+    assert "-/0.40/0.10 -/0.10/0.05 -/0.40/0.00 misses" in row
+    assert ("HITRAN2012, CO.par" in row) == (width == 180)
     assert text.rstrip().endswith("store: full")
 
 
