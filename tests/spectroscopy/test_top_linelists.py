@@ -14,7 +14,7 @@ from planner.spectroscopy.lists.build import part_lines, read_constants
 COUNTS = {
     "CH4": 190_000,
     "NH3": 50_000,
-    "PH3": 35_000,
+    "PH3": 40_000,
     "CH3Cl": 85_000,
     "CH3Br": 115_000,
     "C2H6": 50_000,
