@@ -29,7 +29,7 @@ _STYLES = {
 }
 _LEAST_SHARE = 0.005
 _NUISANCES_SHOWN = 2
-_WIDE = 100
+_WIDE = 112
 """Columns from which a verdict fits on one line."""
 
 

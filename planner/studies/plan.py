@@ -22,6 +22,7 @@ from planner.studies.observe import ModeView, source_of_light
 from planner.studies.remedies import Adviser
 from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, StarMimic, Verdict
 from planner.studies.simulation import simulate_search
+from planner.studies.spread import add_spread
 from planner.studies.workshop import Progress, Sight, Workshop, see
 
 __all__ = [
@@ -64,6 +65,7 @@ def plan(
     progress: Progress | None = None,
     simulated: int | None = None,
     remedies: bool = False,
+    spread: int | None = None,
 ) -> PlanResult:
     """Transits, hours and verdict for every case and mode of a scenario.
 
@@ -78,6 +80,8 @@ def plan(
         Observations to simulate of each search, to try the rates that are stated.
     remedies : bool
         Work out all that would help; without, only what takes no further forward model.
+    spread : int, optional
+        Draws from the priors of all that is not known, for the spread of the transits.
 
     Raises
     ------
@@ -94,7 +98,7 @@ def plan(
             row = adviser.advise(plan_row(workshop, sight, index), sight, index)
             rows.append(_tried(row, workshop, sight, index, simulated) if simulated else row)
             spectra.append(binned_spectrum(workshop, sight, index))
-    return PlanResult(
+    result = PlanResult(
         title=scenario.title,
         invented=scenario.invented,
         threshold_sigma=scenario.goal.threshold_sigma,
@@ -112,6 +116,7 @@ def plan(
         cautions=(*CAUTIONS, *cautions_about_star(workshop), *_surface_cautions(scenario, rows)),
         version=__version__,
     )
+    return add_spread(workshop, result, draws=spread, progress=progress) if spread else result
 
 
 def plan_row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
