@@ -4,8 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from planner.detection.significance import Measurement, one_sided_probability, target_snr
 from scipy import stats
+
+from planner.detection.significance import Measurement, one_sided_probability, target_snr
 
 
 def flat(amplitude, white, floor, bins=1):

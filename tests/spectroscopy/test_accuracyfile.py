@@ -65,7 +65,8 @@ def test_share_of_windows_that_meet():
 
 
 @pytest.mark.parametrize(
-    "text", ["[[judged]]\ngas = 1", '[[unseen]]\ngas = "CO"', "judged = 3", format_accuracy(TABLE).replace("misses", "?")]
+    "text",
+    ["[[judged]]\ngas = 1", '[[unseen]]\ngas = "CO"', "judged = 3", format_accuracy(TABLE).replace("misses", "?")],
 )
 def test_broken_tables_are_refused(text: str):
     """With the name of the file and what to do."""

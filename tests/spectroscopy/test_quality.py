@@ -32,7 +32,9 @@ JUDGED = JudgedWindow(
     embedded_lines=10,
     real_lines=10,
 )
-MISSED = replace(JUDGED, from_per_cm=2500.0, to_per_cm=3000.0, verdict=Judgement.MISSES, missed="90 %", strength_factor=2)
+MISSED = replace(
+    JUDGED, from_per_cm=2500.0, to_per_cm=3000.0, verdict=Judgement.MISSES, missed="90 %", strength_factor=2
+)
 NARROW = replace(JUDGED, from_per_cm=3300.0, to_per_cm=3303.0, verdict=Judgement.NARROW)
 UNSEEN = UnseenWindow(
     gas="CO2", from_per_cm=3000.0, to_per_cm=4000.0, sum_cm=1e-20, strength_factor=1.5, rests_on="memory", published=""

@@ -255,8 +255,8 @@ def _block_shifts(count: int, couplings: Sequence[Coupling]) -> list[int]:
                 if known is not None and shifts[other] is None:
                     shifts[other] = known ^ change
     for coupling in couplings:
-        one, other = shifts[coupling.first], shifts[coupling.second]
-        if one is None or other is None or one ^ other != _coupled_block_change(coupling.kind):
+        first, second = shifts[coupling.first], shifts[coupling.second]
+        if first is None or second is None or first ^ second != _coupled_block_change(coupling.kind):
             raise LineDataError(f"coupling {coupling}: contradicts the symmetry that the other couplings imply")
     if None in shifts:
         raise LineDataError(f"state {shifts.index(None)} of the set is coupled to no other: make it a band")
