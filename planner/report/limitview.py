@@ -10,13 +10,9 @@ from rich.text import Text
 
 from planner.report.table import sentences_block
 from planner.report.words import count_text, gas_text, hours_text, ratio_text
-from planner.studies.outcomes import LimitCurve, LimitPoint, LimitResult
+from planner.studies.outcomes import LimitCurve, LimitResult
 
 __all__ = ["limit_view"]
-
-
-_ABREAST = 2
-"""Modes beside each other, for 80 columns."""
 
 
 def limit_view(result: LimitResult) -> Group:
@@ -50,34 +46,35 @@ def _headline(result: LimitResult) -> Text:
 
 
 def _gas_block(gas: str, curves: Sequence[LimitCurve]) -> list[RenderableType]:
-    """What a gas is called and where it was looked for, tables of two modes each, and why there is no limit."""
+    """What a gas is called and where it was looked for, its limits mode by mode, and why there is none."""
     stated = ", ".join(ratio_text(ratio) for ratio in curves[0].stated_ratios)
     tried = ratio_text(float(curves[0].ratios[-1]))
     head = Text(f"{gas_text(gas)}", style="bold underline")
     head.append(f" (in the scenario {stated}; tried up to {tried})", style="not bold not underline")
-    tables = [_table(curves[first : first + _ABREAST]) for first in range(0, len(curves), _ABREAST)]
     notes = [
         f"{curve.mode}: no limit, {curve.obstacle.value}: {curve.obstacle_words}" for curve in curves if curve.obstacle
     ]
-    return [Text(), head, *tables, *map(Text, notes)]
+    return [Text(), head, _table(curves), *map(Text, notes)]
 
 
 def _table(curves: Sequence[LimitCurve]) -> Table:
-    """Transits down, modes across."""
     table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="dim")
-    table.add_column("\ntransits", justify="right", style="bold")
+    table.add_column("mode", overflow="fold")
+    table.add_column("transits", justify="right", style="bold", no_wrap=True)
+    table.add_column("hours", justify="right", no_wrap=True)
+    table.add_column("detectable", justify="right", style="bold", no_wrap=True)
+    table.add_column("excluded", justify="right", no_wrap=True)
     for curve in curves:
-        table.add_column(f"{curve.mode}\nhours", justify="right")
-        table.add_column("\ndetectable", justify="right", no_wrap=True, style="bold")
-        table.add_column("\nexcluded", justify="right", no_wrap=True)
-    for points in zip(*(curve.points for curve in curves), strict=True):
-        table.add_row(count_text(points[0].transits), *(cell for point in points for cell in _cells(point)))
-    table.add_row("no end", *(cell for curve in curves for cell in ("", _ratio(curve.detectable_at_all), "")))
+        for number, point in enumerate(curve.points):
+            table.add_row(
+                "" if number else curve.mode,
+                count_text(point.transits),
+                hours_text(point.hours),
+                _ratio(point.detectable_ratio),
+                _ratio(point.upper_limit_ratio),
+            )
+        table.add_row("", "no end", "", _ratio(curve.detectable_at_all), "")
     return table
-
-
-def _cells(point: LimitPoint) -> tuple[str, str, str]:
-    return hours_text(point.hours), _ratio(point.detectable_ratio), _ratio(point.upper_limit_ratio)
 
 
 def _ratio(ratio: float | None) -> str:
