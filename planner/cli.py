@@ -14,15 +14,15 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from planner import __version__
-from planner.catalogue.command import gases
-from planner.checkcommand import check
-from planner.choosecommands import choose, odds
-from planner.claims.command import audit
-from planner.contrastcommand import contrast
+from planner.commands.audit import audit
+from planner.commands.check import check
+from planner.commands.choose import choose, odds
+from planner.commands.contrast import contrast
+from planner.commands.gases import gases
+from planner.commands.linefiles import fetch, import_
+from planner.commands.options import Measured, Stretch, progress_bar
+from planner.commands.ranges import limit, map_
 from planner.errors import PlannerError
-from planner.linecommands import fetch, import_
-from planner.options import Measured, Stretch, progress_bar
-from planner.rangecommands import limit, map_
 
 if TYPE_CHECKING:
     from planner.scenario import Scenario

@@ -83,5 +83,5 @@ def test_two_planets_are_refused(folder):
 
 def test_help_loads_nothing_heavy():
     """The command imports what it needs when it runs."""
-    heavy = "import sys, planner.contrastcommand; print({'numpy', 'astropy', 'numba', 'pydantic'} & set(sys.modules))"
+    heavy = "import sys, planner.commands.contrast; print({'numpy', 'astropy', 'numba', 'pydantic'} & set(sys.modules))"
     assert subprocess.run([sys.executable, "-c", heavy], check=True, capture_output=True, text=True).stdout == "set()\n"

@@ -9,7 +9,7 @@ import sys
 import pytest
 from click.testing import CliRunner
 
-from planner.catalogue.command import gases
+from planner.commands.gases import gases
 from planner.errors import LineDataError, OutputError, ScenarioError
 
 
@@ -58,6 +58,6 @@ def test_errors_are_those_of_the_tree(arguments: tuple[str, ...], error: type[Ex
 def test_import_is_light() -> None:
     """The command's module brings in neither pydantic nor astropy: help must stay quick."""
     heavy = "{'pydantic', 'astropy', 'numpy', 'rich'}"
-    code = f"import sys, planner.catalogue.command; print(sorted({heavy} & set(sys.modules)))"
+    code = f"import sys, planner.commands.gases; print(sorted({heavy} & set(sys.modules)))"
     shown = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert shown.stdout.strip() == "[]"

@@ -7,8 +7,8 @@ import json
 import pytest
 from click.testing import CliRunner
 
-from planner.claims.command import audit
 from planner.cli import cli
+from planner.commands.audit import audit
 
 BARE = 'title = "CO somewhere"\n[claim]\ngas = "CO"\nfrom = "4.4 um"\nto = "5 um"\nsignificance = 2.5\n'
 BARE += "[search]\ngases_searched = 10\n"

@@ -8,10 +8,10 @@ import click
 import pytest
 from click.testing import CliRunner
 
-from planner.claims.command import audit
 from planner.claims.read import read_claim, starting_claim
 from planner.claims.spectrum import read_observed
 from planner.cli import cli
+from planner.commands.audit import audit
 from planner.errors import ScenarioError
 
 SPECTRUM = "from [um],to [um],depth [ppm],error [ppm]\n" + "".join(

@@ -5,8 +5,8 @@ from __future__ import annotations
 import pytest
 from click.testing import CliRunner
 
+from planner.commands.linefiles import fetch, import_
 from planner.errors import LineDataError
-from planner.linecommands import fetch, import_
 from planner.spectroscopy.hitran import read_par, write_par
 
 

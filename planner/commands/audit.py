@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from planner.options import progress_bar
+from planner.commands.options import progress_bar
 
 __all__ = ["audit"]
 

@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from planner.options import Measured, Stretch, progress_bar
+from planner.commands.options import Measured, Stretch, progress_bar
 
 __all__ = ["fetch", "import_"]
 

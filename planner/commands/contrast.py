@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from planner.options import progress_bar
+from planner.commands.options import progress_bar
 
 if TYPE_CHECKING:
     from planner.studies.contrasts import ContrastResult

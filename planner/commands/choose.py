@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from planner.options import Measured, progress_bar
+from planner.commands.options import Measured, progress_bar
 
 if TYPE_CHECKING:
     from planner.scenario import Scenario

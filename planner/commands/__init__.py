@@ -1,0 +1,1 @@
+"""Commands of the command line, one module per group; each parses, calls a study, renders and exits."""
