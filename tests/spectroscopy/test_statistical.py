@@ -8,7 +8,12 @@ from scipy.special import exp1, gamma, gammaincc
 
 from planner.errors import LineDataError
 from planner.spectroscopy.lines import Lines
-from planner.spectroscopy.lists.statistical import relative_strengths, statistical_lines, with_satellites
+from planner.spectroscopy.lists.statistical import (
+    lower_energies,
+    relative_strengths,
+    statistical_lines,
+    with_satellites,
+)
 
 METHANE = 6
 
@@ -21,8 +26,8 @@ def part(**changes):
         "weakest": 1e-3,
         "self_width_ratio": 1.3,
         "bins": [
-            [2000.0, 2010.0, 3e-21, 20.0, 400.0, 600.0, 0.06, 0.7],
-            [2010.0, 2050.0, 1e-20, 4000.0, 300.0, 450.0, 0.05, 0.8],
+            [2000.0, 2010.0, 3e-21, 20.0, 400.0, 600.0, 250.0, 0.06, 0.7],
+            [2010.0, 2050.0, 1e-20, 4000.0, 300.0, 450.0, 200.0, 0.05, 0.8],
         ],
     } | changes
 
@@ -74,7 +79,7 @@ def test_strengths_are_at_equal_steps():
 
 def test_lower_energies_have_both_means():
     """Weighted with S and with its root the lower energies average to the stated numbers."""
-    rows = [[2010.0, 2050.0, 1e-20, 4000.0, 3000.0, 3200.0, 0.05, 0.8]]
+    rows = [[2010.0, 2050.0, 1e-20, 4000.0, 3000.0, 3200.0, 500.0, 0.05, 0.8]]
     lines = statistical_lines(part(bins=rows, weakest=1e-5), METHANE)
     strong = np.average(lines.lower_energy_per_cm, weights=lines.intensity_cm)
     weak = np.average(lines.lower_energy_per_cm, weights=np.sqrt(lines.intensity_cm))
@@ -82,9 +87,41 @@ def test_lower_energies_have_both_means():
     assert weak == pytest.approx(3200.0, rel=2e-3)
 
 
+@pytest.mark.parametrize(("count", "within"), [(20_000, 0.01), (100, 0.08), (20, 0.12)])
+@pytest.mark.parametrize(
+    ("mean", "mean_sqrt", "spread"), [(300.0, 450.0, 200.0), (800.0, 820.0, 120.0), (250.0, 250.0, 400.0)]
+)
+def test_lower_energies_have_their_spread(mean, mean_sqrt, spread, count, within):
+    """The weighted standard deviation is the stated one, in a bin of few lines within a few per cent."""
+    x = relative_strengths(count, 1e-3)
+    energy = lower_energies(x, mean, mean_sqrt, spread)
+    average = np.average(energy, weights=x)
+    assert average == pytest.approx(mean, rel=1e-12)
+    assert np.sqrt(np.average((energy - average) ** 2, weights=x)) == pytest.approx(spread, rel=within)
+
+
+@pytest.mark.parametrize("temperature_k", [200.0, 400.0])
+def test_bin_of_a_classical_gas_follows_a_power_law(temperature_k):
+    """A mean of (n/2) kT with variance (n/2) (kT)^2 is a gas of n degrees of freedom: its sum goes as T^(n/2).
+
+    The law behind rotational partition functions (Herzberg 1945, Infrared and Raman Spectra, p. 505), here n = 3.
+    """
+    thermal = 296.0 / 1.438776877
+    energy = lower_energies(relative_strengths(20_000, 1e-3), 1.5 * thermal, 1.5 * thermal, np.sqrt(1.5) * thermal)
+    warmer = np.exp(-1.438776877 * energy * (1.0 / temperature_k - 1.0 / 296.0))
+    found = np.average(warmer, weights=relative_strengths(20_000, 1e-3))
+    assert found == pytest.approx((temperature_k / 296.0) ** 1.5, rel=5e-3)
+
+
+def test_without_spread_lower_energies_follow_the_strengths():
+    """No spread beyond what the two means ask for: equal strengths, equal energies."""
+    energy = lower_energies(relative_strengths(500, 1e-3), 3000.0, 3200.0, 0.0)
+    assert np.all(np.diff(energy) < 0)
+
+
 def test_lower_energies_are_never_negative():
     """A steep law is cut at zero."""
-    rows = [[2010.0, 2050.0, 1e-20, 400.0, 100.0, 600.0, 0.05, 0.8]]
+    rows = [[2010.0, 2050.0, 1e-20, 400.0, 100.0, 600.0, 150.0, 0.05, 0.8]]
     assert statistical_lines(part(bins=rows), METHANE).lower_energy_per_cm.min() == 0.0
 
 
@@ -109,16 +146,17 @@ def test_widths_and_labels():
 @pytest.mark.parametrize(
     "row",
     [
-        [2000.0, 1990.0, 1e-21, 20.0, 400.0, 600.0, 0.06, 0.7],
-        [2000.0, 2010.0, -1e-21, 20.0, 400.0, 600.0, 0.06, 0.7],
-        [2000.0, 2010.0, 1e-21, 0.0, 400.0, 600.0, 0.06, 0.7],
-        [2000.0, 2010.0, 1e-21, 20.0, float("nan"), 600.0, 0.06, 0.7],
+        [2000.0, 1990.0, 1e-21, 20.0, 400.0, 600.0, 250.0, 0.06, 0.7],
+        [2000.0, 2010.0, -1e-21, 20.0, 400.0, 600.0, 250.0, 0.06, 0.7],
+        [2000.0, 2010.0, 1e-21, 0.0, 400.0, 600.0, 250.0, 0.06, 0.7],
+        [2000.0, 2010.0, 1e-21, 20.0, float("nan"), 600.0, 250.0, 0.06, 0.7],
+        [2000.0, 2010.0, 1e-21, 20.0, 400.0, 600.0, -250.0, 0.06, 0.7],
         [2000.0, 2010.0, 1e-21],
     ],
 )
 def test_bad_bins(row):
     """A row that makes no sense is named."""
-    with pytest.raises(LineDataError, match="bin 2: expected 8 finite numbers"):
+    with pytest.raises(LineDataError, match="bin 2: expected 9 finite numbers"):
         statistical_lines(part(bins=[part()["bins"][0], row]), METHANE)
 
 
