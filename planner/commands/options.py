@@ -41,10 +41,12 @@ class Stretch(click.ParamType):
         """The two wavenumbers."""
         import astropy.units as u
 
-        low, _, rest = str(value).partition(":")
-        number, _, unit = rest.strip().partition(" ")
+        from planner.scenario.readings import quantity
+
+        low, _, high = str(value).partition(":")
         try:
-            ends = u.Quantity([float(low), float(number)], unit).to_value(u.cm**-1, equivalencies=u.spectral())
+            end = quantity(high)
+            ends = [q.to_value(u.cm**-1, equivalencies=u.spectral()) for q in (float(low) * end.unit, end)]
         except (ValueError, TypeError):
             self.fail(f'expected a range such as "2000:2300 1/cm" or "4.2:4.4 um", got "{value}"', param, ctx)
         return float(min(ends)), float(max(ends))

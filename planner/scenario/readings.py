@@ -39,6 +39,7 @@ __all__ = [
     "Text",
     "Whole",
     "nearest",
+    "quantity",
     "shown",
 ]
 
@@ -56,7 +57,8 @@ _MORE_UNITS = [
     u.def_unit(["minutes", "mins"], u.minute),
     u.def_unit("sigma", u.one),
 ]
-_NUMBER_THEN_UNIT = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?|[+-]?(?:nan|inf))\s*(.*?)\s*", re.ASCII)
+_NUMBER_THEN_UNIT = re.compile(r"([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?|[+-]?(?:nan|inf)) ?(.*)", re.ASCII)
+_NUMBER_GOES_ON = re.compile(r"(?!1 ?/)[.,'_]?\d")  # "1/cm" is a unit
 
 
 class Reading(Protocol):
@@ -91,6 +93,42 @@ def nearest(name: str, known: Any) -> str:
 
 def _refuse(expected: str, value: Any, note: str = "") -> ValueError:
     return ValueError(f"expected {expected}, got {shown(value)}{note}")
+
+
+def quantity(text: str) -> u.Quantity:
+    """One number and one unit, such as ``"250 K"``.
+
+    The unit library multiplies whatever stands side by side, so ``"2 600 K"`` would be 1200 K and ``"4 % ppm"``
+    4e-8: a unit with a number inside, or with more than one name for a plain number, is refused here.
+
+    Raises
+    ------
+    ValueError
+        In a few words, what is wrong; none where the text does not even begin with a number.
+    """
+    match = _NUMBER_THEN_UNIT.fullmatch(" ".join(text.replace("\N{MINUS SIGN}", "-").split()))
+    if match is None:
+        raise ValueError
+    number, name = match.groups()
+    if not name:
+        raise ValueError("the unit is missing")
+    if _NUMBER_GOES_ON.match(name):
+        raise ValueError(f'"{name}" is not a unit; write the number without spaces, with a point for decimals')
+    try:
+        with u.add_enabled_units(_MORE_UNITS):
+            unit = u.Unit(name)
+    except (ValueError, ArithmeticError):
+        raise ValueError(f'"{name}" is not a unit') from None
+    if not _is_one_unit(unit):
+        raise ValueError(f'"{name}" multiplies numbers; write one number and one unit')
+    return float(number) * unit
+
+
+def _is_one_unit(unit: u.UnitBase) -> bool:
+    """Whether a unit is without factors: numbers, or names of numbers (%, ppm) beside other names."""
+    if not isinstance(unit, u.CompositeUnit):
+        return True
+    return unit.scale == 1 and not any(base.is_equivalent(u.one) for base in unit.bases)
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -131,17 +169,13 @@ class Measure:
         return float(f"{number:.15g}")  # 400 ppm is 0.0004, not 0.00039999999999999996
 
     def _parsed(self, value: Any) -> u.Quantity:
-        match = _NUMBER_THEN_UNIT.fullmatch(value) if isinstance(value, str) else None
-        if match is None:
+        if not isinstance(value, str):
             number = isinstance(value, int | float) and not isinstance(value, bool)
             raise _refuse(self.expected, value, " (the unit is missing)" if number else "")
-        if not match[2]:
-            raise _refuse(self.expected, value, " (the unit is missing)")
         try:
-            with u.add_enabled_units(_MORE_UNITS):
-                return float(match[1]) * u.Unit(match[2])
-        except ValueError:
-            raise _refuse(self.expected, value, f' ("{match[2]}" is not a unit)') from None
+            return quantity(value)
+        except ValueError as error:
+            raise _refuse(self.expected, value, f" ({error})" if error.args else "") from None
 
     def _check(self, number: float, value: Any) -> None:
         if not math.isfinite(number):
@@ -251,10 +285,8 @@ class MixingRatio:
 
     def __call__(self, value: Any) -> float:
         if isinstance(value, str | u.Quantity):
-            try:
-                number = Measure(kind="a mixing ratio", unit=u.one, example="350 ppm")(value)
-            except ValueError:
-                raise _refuse(self.expected, value) from None
+            kind = "a mixing ratio above 0 and up to 1"
+            number = Measure(kind=kind, unit=u.one, example="350 ppm", any_sign=True)(value)
         elif isinstance(value, int | float) and not isinstance(value, bool):
             number = float(value)
         else:

@@ -2,12 +2,27 @@
 
 from __future__ import annotations
 
+import re
+from contextlib import suppress
+
 import astropy.units as u
+import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from planner.scenario.readings import Gas, GasAmounts, Measure, MixingRatio, MixingRatios, Number, Sets, nearest, shown
+from planner.scenario.readings import (
+    Gas,
+    GasAmounts,
+    Measure,
+    MixingRatio,
+    MixingRatios,
+    Number,
+    Sets,
+    nearest,
+    quantity,
+    shown,
+)
 
 MASS = Measure(kind="a mass", unit=u.M_earth, example="0.7 M_earth")
 HOURS = Measure(kind="a duration", unit=u.h, example="1.5 h")
@@ -55,6 +70,7 @@ def test_measure_does_not_depend_on_the_unit(value, unit):
         ("0.7 K", 'expected a mass such as "0.7 M_earth", got "0.7 K"'),
         ("0.7 M_erth", r"\(\"M_erth\" is not a unit\)"),
         ("heavy", 'got "heavy"'),
+        ("1 h1000", r"\(\"h1000\" is not a unit\)"),
         ("nan M_earth", "expected a finite value"),
         ("inf M_earth", "expected a finite value"),
         ("1e999 M_earth", "expected a finite value"),
@@ -73,15 +89,79 @@ def test_measure_invalid(value, message):
 
 
 @pytest.mark.parametrize(
+    ("text", "rest"),
+    [
+        ("2 600 K", "600 K"),
+        ("2\u202f600 K", "600 K"),
+        ("2,600 K", ",600 K"),
+        ("2'600 K", "'600 K"),
+        ("2_600 K", "_600 K"),
+        ("2. 6 K", "6 K"),
+        ("2 .6 K", ".6 K"),
+        ("5,0 h", ",0 h"),
+        ("2 10**2 K", "10**2 K"),
+    ],
+)
+def test_numbers_are_written_in_one_piece(text, rest):
+    """The unit library would multiply what stands side by side; here a number that goes on is refused."""
+    with pytest.raises(ValueError, match=f'"{re.escape(rest)}" is not a unit; write the number without spaces'):
+        quantity(text)
+
+
+@pytest.mark.parametrize("text", ["0.04 % ppm", "3 ppm ppm", "50 % %", "5 % K", "5 sqrt(4) K"])
+def test_one_unit(text):
+    """Names of plain numbers beside other names are factors, and refused."""
+    with pytest.raises(ValueError, match="multiplies numbers; write one number and one unit"):
+        quantity(text)
+
+
+@pytest.mark.parametrize(
+    "text", ["4.3 um", "4.3um", "4.3 \u00b5m", "4.3 \u03bcm", "4.3\u00a0um", " 4.3  micron ", "4300 nm"]
+)
+def test_ways_to_write_a_wavelength(text):
+    """Both characters for micro are read, and so are the spaces that text processors put in."""
+    assert quantity(text).to_value(u.um) == pytest.approx(4.3, rel=1e-12)
+
+
+@pytest.mark.parametrize("text", ["60 1/cm", "60 cm-1", "60 / cm", "60 cm^-1"])
+def test_ways_to_write_a_wavenumber(text):
+    """An inverse may begin with its 1."""
+    assert quantity(text) == 60 / u.cm
+
+
+@given(number=st.sampled_from(["1", "2.5e-3"]), unit=st.text("hKm %p1/.,*^()-e'_", max_size=8))
+@settings(derandomize=True, deadline=None, max_examples=300)
+def test_any_text_is_read_or_refused(number, unit):
+    """Whatever stands behind a number, no other error comes out."""
+    with suppress(ValueError):
+        assert np.isfinite(quantity(f"{number} {unit}").value)
+
+
+@pytest.mark.parametrize("text", ["-1.5 mag", "\u22121.5 mag"])
+def test_minus_signs(text):
+    """The minus sign of print is one too."""
+    assert quantity(text) == -1.5 * u.mag
+
+
+@pytest.mark.parametrize(
     ("value", "ratio"),
-    [("350 ppm", 3.5e-4), ("5 ppb", 5e-9), ("2 ppt", 2e-12), ("1 %", 0.01), (1e-6, 1e-6), (1, 1.0)],
+    [
+        ("350 ppm", 3.5e-4),
+        ("5 ppb", 5e-9),
+        ("2 ppt", 2e-12),
+        ("1 %", 0.01),
+        ("1e-3 %", 1e-5),
+        ("400ppm", 4e-4),
+        (1e-6, 1e-6),
+        (1, 1.0),
+    ],
 )
 def test_mixing_ratio(value, ratio):
     """ppt is parts per trillion; decimal values stay decimal."""
     assert MixingRatio()(value) == ratio
 
 
-@pytest.mark.parametrize("value", ["1e-6", "3 bar", 0, -1e-6, 1.5, "200 %", float("nan"), True, "", [1e-6]])
+@pytest.mark.parametrize("value", ["1e-6", "3 bar", "4 0 ppm", 0, -1e-6, 1.5, "200 %", float("nan"), True, "", [1e-6]])
 def test_mixing_ratio_invalid(value):
     """A bare number in quotes, a wrong unit, and anything out of (0, 1] are refused."""
     with pytest.raises(ValueError, match="expected a mixing ratio above 0 and up to 1"):
