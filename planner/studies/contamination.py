@@ -18,7 +18,7 @@ from planner.detection.simulate import matched_filter
 from planner.scenario.target import Star
 from planner.star.heterogeneity import Region, disc_factor, usual_faculae, usual_spots
 from planner.studies.forward import BinnedDepth
-from planner.studies.nuisances import Direction
+from planner.studies.nuisances import Direction, region_words
 from planner.studies.observe import ModeView
 from planner.studies.results import StarMimic
 
@@ -29,7 +29,6 @@ __all__ = [
     "mimic_cautions",
     "mimicry",
     "region_directions",
-    "region_words",
 ]
 
 Array = NDArray[np.float64]
@@ -118,25 +117,6 @@ def region_directions(star: Star, seen: Sequence[BinnedDepth], views: Sequence[M
     ]
 
 
-def region_words(star: Star) -> list[tuple[str, str]]:
-    """Spots and faculae with their widths in words, for the output."""
-    return _words(_stated(star))
-
-
-def _words(surface: _Surface) -> list[tuple[str, str]]:
-    words = []
-    for name, region in (("spots", surface.spots), ("faculae", surface.faculae)):
-        if region is not None:
-            words.append(
-                (
-                    name,
-                    f"{100 * region.fraction:.3g} +/- {100 * region.fraction_error:.3g} % of the disc at "
-                    f"{region.temperature_k:.0f} +/- {region.temperature_error_k:.0f} K",
-                )
-            )
-    return words
-
-
 def mimicry(measurement: Measurement, depth_ppm: Array, star: Star, wavelength_um: Array, transits: float) -> StarMimic:
     """How spots and faculae would pass for the gas, were they not thought of.
 
@@ -190,7 +170,8 @@ def mimic_cautions(mimic: StarMimic) -> tuple[str, ...]:
 
 def usual_caution(star: Star) -> str:
     """What was tried where the scenario is silent, and what to do."""
-    regions = ", ".join(f"{name} {words}" for name, words in _words(_usual(star)))
+    usual = _usual(star)
+    regions = ", ".join(f"{name} {words}" for name, words in region_words(usual.spots, usual.faculae))
     return (
         f"The scenario states neither spots nor faculae; usual ones ({regions}) would matter to some of the searches: "
         "state [star.spots] and [star.faculae] to allow for them."

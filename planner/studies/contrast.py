@@ -25,7 +25,7 @@ from planner.detection.significance import Measurement, target_snr
 from planner.detection.simulate import matched_filter
 from planner.scenario.records import Case, Scenario
 from planner.studies.comparable import amounts_of, check_comparable
-from planner.studies.contamination import bin_factors, contaminated, region_directions, region_words
+from planner.studies.contamination import bin_factors, contaminated, region_directions
 from planner.studies.contrasts import ContrastResult, ContrastRow, ContrastSpectrum
 from planner.studies.forward import BinnedDepth
 from planner.studies.nuisances import Direction, directions, prior_widths
@@ -291,5 +291,4 @@ def _listed(x: _Atmosphere) -> tuple[tuple[str, float], ...]:
 
 def _widths(x: _Atmosphere) -> tuple[tuple[str, str], ...]:
     """Unknowns in words, without the gases that are held."""
-    rows = (*prior_widths(x.workshop.scenario), *region_words(x.scenario.star))
-    return tuple((name, words) for name, words in rows if name not in x.held)
+    return tuple((name, words) for name, words in prior_widths(x.workshop.scenario) if name not in x.held)

@@ -20,10 +20,11 @@ from numpy.typing import NDArray
 from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.molecules import find_molecule
 from planner.spectroscopy.opacity import temperature_nodes
+from planner.star.heterogeneity import Region
 from planner.studies.forward import NO_CHANGE, BinnedDepth, Change, ForwardModel
 from planner.studies.observe import ModeView
 
-__all__ = ["Direction", "directions", "prior_widths"]
+__all__ = ["Direction", "directions", "prior_widths", "region_words"]
 
 Array = NDArray[np.float64]
 
@@ -84,8 +85,22 @@ def prior_widths(scenario: Scenario) -> tuple[tuple[str, str], ...]:
         ("haze", haze),
         *((gas, f"{priors.absorbers_dex:g} dex in mixing ratio") for gas in atmosphere.absorbers),
         *((f"rival {gas}", f"0 to {ratio:.3g}, linear in its share") for gas, ratio in priors.rivals.items()),
+        *region_words(scenario.star.spots, scenario.star.faculae),
     ]
     return tuple(rows)
+
+
+def region_words(spots: Region | None, faculae: Region | None) -> list[tuple[str, str]]:
+    """Spots and faculae with their widths in words; a region that is not there has none."""
+    return [
+        (
+            name,
+            f"{100 * region.fraction:.3g} +/- {100 * region.fraction_error:.3g} % of the disc at "
+            f"{region.temperature_k:.0f} +/- {region.temperature_error_k:.0f} K",
+        )
+        for name, region in (("spots", spots), ("faculae", faculae))
+        if region is not None
+    ]
 
 
 def _offset(scenario: Scenario, views: Sequence[ModeView], mode: int, detector: int) -> Direction:

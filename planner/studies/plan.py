@@ -15,7 +15,7 @@ from planner.detection.significance import Measurement, target_snr
 from planner.instrument.binning import Bins
 from planner.scenario.records import Scenario
 from planner.star.flux import star_cautions
-from planner.studies.contamination import bin_factors, mimic_cautions, mimicry, region_words, usual_caution
+from planner.studies.contamination import bin_factors, mimic_cautions, mimicry, usual_caution
 from planner.studies.linecautions import line_cautions
 from planner.studies.nuisances import prior_widths
 from planner.studies.observe import ModeView, source_of_light
@@ -112,7 +112,7 @@ def plan(
         spectra=tuple(spectra),
         line_data=(*workshop.line_data(), *workshop.store.notices),
         assumptions=assumptions(workshop),
-        nuisances=(*prior_widths(scenario), *region_words(scenario.star)),
+        nuisances=prior_widths(scenario),
         cautions=(*CAUTIONS, *cautions_about_star(workshop), *_surface_cautions(scenario, rows)),
         version=__version__,
     )

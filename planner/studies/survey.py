@@ -21,10 +21,12 @@ from planner.detection.worth import Response
 from planner.scenario.records import Case
 from planner.studies.beliefs import MOST_RATIO, believed_gas, span
 from planner.studies.choices import Resembling
+from planner.studies.contamination import bin_factors, region_directions
+from planner.studies.forward import BinnedDepth
 from planner.studies.nuisances import Direction, directions
 from planner.studies.plan import plan_row
 from planner.studies.results import PlanRow
-from planner.studies.workshop import Progress, Sight, Workshop, measurement_of
+from planner.studies.workshop import Progress, Sight, Workshop, measurement_of, through
 
 __all__ = ["Curve", "Survey", "snr_after"]
 
@@ -169,12 +171,23 @@ class Survey:
     def _directions(self, case: Case) -> list[Direction]:
         thin = self.workshop.thin
         others = [gas for gas in self.scenario.air(case) if gas not in case.gases]
-        null = thin.binned(case, shares_of=others, transparent=case.gases)
-        return directions(thin, case, null, self.workshop.views)
+        views, star = self.workshop.views, self.scenario.star
+        null = through(self._factors, thin.binned(case, shares_of=others, transparent=case.gases))
+        return [*directions(thin, case, null, views), *region_directions(star, null, views)]
+
+    @cached_property
+    def _factors(self) -> tuple[Array, ...]:
+        """What spots and faculae multiply the depth with, per mode."""
+        return bin_factors(self.scenario.star, self.workshop.views)
+
+    def _seen(self, gas: str, ratio: float) -> tuple[BinnedDepth, ...]:
+        """The spectrum with some of a gas, with its share, as the star makes it look."""
+        case = Case(gases=(gas,), mixing_ratios=(ratio,))
+        return through(self._factors, self.workshop.thin.binned(case, shares_of=[gas]))
 
     def _sight(self, gas: str, ratio: float, nuisances: list[Direction]) -> Sight:
         case = Case(gases=(gas,), mixing_ratios=(ratio,))
-        spectrum = self.workshop.thin.binned(case, shares_of=[gas])
+        spectrum = self._seen(gas, ratio)
         templates = tuple(part.shares_ppm[gas] for part in spectrum)
         views = self.workshop.views
         usable = tuple(np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views)
@@ -183,8 +196,7 @@ class Survey:
 
     def _shape(self, gas: str) -> tuple[Array, ...]:
         """Share of a gas at its reference, per mode."""
-        case = Case(gases=(gas,), mixing_ratios=(self.reference(gas),))
-        spectrum = self.workshop.thin.binned(case, shares_of=[gas])
+        spectrum = self._seen(gas, self.reference(gas))
         self._let_go(all_of_it=True)
         return tuple(part.shares_ppm[gas] for part in spectrum)
 
@@ -207,7 +219,7 @@ class Survey:
 
     def _thinning_error(self, sight: Sight) -> float:
         gas = sight.case.gases[0]
-        whole = self.workshop.model.binned(sight.case, shares_of=[gas])
+        whole = through(self._factors, self.workshop.model.binned(sight.case, shares_of=[gas]))
         self._let_go()
         worst = 0.0
         for index, (measurement, usable) in enumerate(zip(sight.measurements, sight.usable, strict=True)):

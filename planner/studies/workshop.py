@@ -20,7 +20,7 @@ from planner.studies.forward import BinnedDepth, ForwardModel
 from planner.studies.nuisances import Direction, directions
 from planner.studies.observe import ModeView, observing_grid, view_modes
 
-__all__ = ["Progress", "Setting", "Sight", "Workshop", "measurement_of", "see"]
+__all__ = ["Progress", "Setting", "Sight", "Workshop", "measurement_of", "see", "through"]
 
 Array = NDArray[np.float64]
 Progress = Callable[[str, float], None]
@@ -114,8 +114,8 @@ def see(setting: Setting, case: Case) -> Sight:
     model, views = setting.model, setting.views
     others = [gas for gas in model.scenario.air(case) if gas not in case.gases]
     factors = bin_factors(model.scenario.star, views)
-    spectrum = _through(factors, model.binned(case, shares_of=[*case.gases, *others]))
-    null = _through(factors, model.binned(case, shares_of=others, transparent=case.gases))
+    spectrum = through(factors, model.binned(case, shares_of=[*case.gases, *others]))
+    null = through(factors, model.binned(case, shares_of=others, transparent=case.gases))
     templates = [_template(case, there, absent) for there, absent in zip(spectrum, null, strict=True)]
     nuisances = directions(setting.thin, case, null, views)
     nuisances += region_directions(model.scenario.star, null, views)
@@ -129,7 +129,7 @@ def see(setting: Setting, case: Case) -> Sight:
     )
 
 
-def _through(factors: Sequence[Array], spectrum: Sequence[BinnedDepth]) -> tuple[BinnedDepth, ...]:
+def through(factors: Sequence[Array], spectrum: Sequence[BinnedDepth]) -> tuple[BinnedDepth, ...]:
     """A spectrum as spots and faculae of the star make it look.
 
     Directions by steps of the forward model go without the factor: it changes them by the per cent that it differs

@@ -18,6 +18,7 @@ from planner.report.choicetable import choice_table
 from planner.scenario import parse_scenario
 from planner.studies import survey
 from planner.studies.choose import choose
+from planner.studies.plan import plan
 
 SCENARIO = """
 title = "Bright (invented)"
@@ -120,6 +121,17 @@ def test_haze_never_helps_when_all_else_is_known(result):
     hazy = industry(text=SCENARIO.replace("[[cand", "[atmosphere.haze]\nfactor = 3000\n[[cand", 1))
     clear = {choice.gas: choice.plan.all_known.snr_one_transit for choice in result.choices}
     assert all(choice.plan.all_known.snr_one_transit <= clear[choice.gas] * (1 + 1e-6) for choice in hazy.choices)
+
+
+def test_spots_are_thought_of_as_in_a_plan():
+    """A gas seen on a spotted star has the S/N that a plan of the same search gives it, thinned samples apart."""
+    spotted = SCENARIO.replace("[planet]", "[star.spots]\n[star.faculae]\n[planet]", 1)
+    (choice,) = industry(text=spotted, gases=("CF4",)).choices
+    same = spotted.replace('"1 ppb"', f"{choice.mixing_ratio:.10e}")
+    (row,) = plan(parse_scenario(same)).rows
+    assert choice.plan.marginalised.snr_one_transit == pytest.approx(row.marginalised.snr_one_transit, rel=0.02)
+    (quiet,) = industry(gases=("CF4",)).choices
+    assert choice.plan.marginalised.snr_one_transit < 0.98 * quiet.plan.marginalised.snr_one_transit
 
 
 def test_beliefs_of_the_scenario_take_the_place_of_the_catalogue(result):

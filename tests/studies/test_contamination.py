@@ -11,7 +11,8 @@ from planner.detection.significance import Measurement
 from planner.detection.simulate import matched_filter
 from planner.scenario import parse_scenario
 from planner.star import disc_factor
-from planner.studies.contamination import mimic_cautions, mimicry, region_directions, region_words, usual_caution
+from planner.studies.contamination import mimic_cautions, mimicry, region_directions, usual_caution
+from planner.studies.nuisances import prior_widths
 from planner.studies.plan import plan
 from planner.studies.workshop import Workshop, see
 
@@ -90,7 +91,7 @@ def test_depth_is_multiplied(quiet, spotted):
 def test_quiet_star_is_untouched(quiet):
     """Without regions there is neither bias nor unknown of them."""
     assert not any("spot" in name or "facula" in name for name in quiet[1].measurements[0].nuisances)
-    assert region_words(quiet[0].scenario.star) == []
+    assert not {"spots", "faculae"} & dict(prior_widths(quiet[0].scenario)).keys()
 
 
 def test_spots_cost_significance(quiet, spotted):
@@ -100,6 +101,16 @@ def test_spots_cost_significance(quiet, spotted):
     assert set(more.nuisances) - set(plain.nuisances) == set(names)
     assert more.snr(50) < plain.snr(50)
     assert more.known(*names).snr(50) == pytest.approx(plain.snr(50), rel=0.05)
+
+
+def test_widths_are_told(spotted):
+    """Every study that lists the unknowns lists spots and faculae with them, share and temperature each with its error."""
+    star, told = spotted[0].scenario.star, dict(prior_widths(spotted[0].scenario))
+    assert told["spots"] == (
+        f"{100 * star.spots.fraction:.3g} +/- {100 * star.spots.fraction_error:.3g} % of the disc at "
+        f"{star.spots.temperature_k:.0f} +/- {star.spots.temperature_error_k:.0f} K"
+    )
+    assert f"{star.faculae.temperature_k:.0f}" in told["faculae"]
 
 
 def test_known_spots_cost_nothing():
