@@ -121,7 +121,8 @@ def map_(
     """Transits over two numbers of a scenario, as a figure.
 
     The numbers go by the names mixing_ratio, temperature (K), mass (Earth masses), radius (Earth radii), molar_mass
-    (g/mol), cloud_top (bar), haze, star_radius (solar radii), and absorbers by their formula.
+    (g/mol), cloud_top (bar), haze, star_radius (solar radii), spots and faculae (share of the disc),
+    spot_temperature and facula_temperature (K), and absorbers by their formula.
     """
     from planner.report.files import make_folder
     from planner.scenario import read_scenario

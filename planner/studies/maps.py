@@ -171,6 +171,7 @@ def _stated(scenario: Scenario, case: Case, name: str) -> float | None:
     """The scenario's own value of a parameter; for a clear sky over a surface a cloud top at the surface."""
     atmosphere = scenario.atmosphere
     cloud = atmosphere.cloud.top_bar if atmosphere.cloud else atmosphere.pressure_bar if atmosphere.surface else None
+    spots, faculae = scenario.star.spots, scenario.star.faculae
     return {
         "mixing_ratio": case.mixing_ratios[0],
         "temperature": atmosphere.temperature_k,
@@ -180,6 +181,10 @@ def _stated(scenario: Scenario, case: Case, name: str) -> float | None:
         "cloud_top": cloud,
         "haze": atmosphere.haze.factor if atmosphere.haze else None,
         "star_radius": scenario.star.radius_rsun,
+        "spots": spots.fraction if spots else None,
+        "spot_temperature": spots.temperature_k if spots else None,
+        "faculae": faculae.fraction if faculae else None,
+        "facula_temperature": faculae.temperature_k if faculae else None,
         **atmosphere.absorbers,
     }[name]
 
@@ -211,7 +216,8 @@ def _checked(scenario: Scenario, case: Case, axes: tuple[Axis, Axis]) -> tuple[P
     for axis in axes:
         parameter = parameter_of(scenario, axis.name)
         if parameter is None or axis.name in case.gases:
-            known = ", ".join([*PARAMETERS, *(gas for gas in scenario.atmosphere.absorbers if gas not in case.gases)])
+            names = [name for name in [*PARAMETERS, *scenario.atmosphere.absorbers] if name not in case.gases]
+            known = ", ".join(name for name in names if parameter_of(scenario, name) is not None)
             raise ScenarioError(f"axis of a map: expected one of {known}, got {axis.name}")
         if not 0 < axis.low < axis.high < np.inf or axis.steps < 2:
             raise RangeError(

@@ -17,7 +17,7 @@ from scipy import special
 from scipy.stats import qmc, rankdata
 
 from planner.detection.significance import Measurement, target_snr
-from planner.scenario.records import Case, Scenario
+from planner.scenario.records import Case, Scenario, Star
 from planner.studies.domain import domain_of
 from planner.studies.nuisances import CLEAR_SKY_DECK_BAR
 from planner.studies.outcomes import Driver, TransitSpread
@@ -128,6 +128,7 @@ def priors_of(scenario: Scenario, case: Case) -> list[Prior]:
         *(_ratio(gas, ratio, decades) for gas, ratio, decades in ratios if decades),
         *_cloud(scenario),
         *_haze(scenario),
+        *_regions(scenario.star),
     ]
 
 
@@ -254,11 +255,9 @@ def _values(scenario: Scenario, case: Case, drawn: dict[str, float]) -> dict[str
     radius = drawn.pop("radius", 1.0) * star_radius
     weight = drawn.pop("gravity", 1.0) * drawn.pop("molar mass", 1.0)
     drawn["temperature"] = drawn.pop("temperature", 1.0) * scenario.atmosphere.temperature_k
-    if "cloud top" in drawn:
-        drawn["cloud_top"] = drawn.pop("cloud top")
     if case.label in drawn:
         drawn["mixing_ratio"] = drawn.pop(case.label)
-    return drawn | {
+    return {name.replace(" ", "_"): value for name, value in drawn.items()} | {
         "star_radius": star.radius_rsun * star_radius,
         "radius": planet.radius_rearth * radius,
         "mass": planet.mass_mearth * weight * radius**2,
@@ -296,6 +295,26 @@ def _haze(scenario: Scenario) -> list[Prior]:
         return [Prior(name="haze", words=f"{width:g} dex", value=lambda z: float(factor * 10 ** (width * z)))]
     words = f"one-sided: scattering up by {width:g} dex over that of the air at one sigma (there is none)"
     return [Prior(name="haze", words=words, value=lambda z: float(10 ** (width * z) - 1), one_sided=True)]
+
+
+def _regions(star: Star) -> list[Prior]:
+    """Shares of the disc and temperatures of spots and faculae; a share is never less than none."""
+    found = []
+    for name, one, region in (("spots", "spot", star.spots), ("faculae", "facula", star.faculae)):
+        if region is None:
+            continue
+        if region.fraction_error:
+            words = f"{100 * region.fraction:.3g} +/- {100 * region.fraction_error:.3g} % of the disc, cut at none"
+            found.append(Prior(name=name, words=words, value=_shifted(region.fraction, region.fraction_error)))
+        if region.temperature_error_k:
+            words = f"{region.temperature_k:.0f} +/- {region.temperature_error_k:.0f} K"
+            shift = _shifted(region.temperature_k, region.temperature_error_k)
+            found.append(Prior(name=f"{one} temperature", words=words, value=shift))
+    return found
+
+
+def _shifted(middle: float, width: float) -> Callable[[float], float]:
+    return lambda z: max(0.0, middle + width * z)
 
 
 def _whole(transits: float) -> int | None:

@@ -10,11 +10,15 @@ import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from planner.scenario.records import Case, Cloud, Haze, Scenario
+from planner.scenario.records import Case, Cloud, Haze, Scenario, Star
+from planner.scenario.surface import SurfaceRegion
+from planner.star.heterogeneity import Region
 
 __all__ = ["PARAMETERS", "Parameter", "parameter_of", "shifted_ratio", "vary"]
 
 _LEAST_BACKGROUND = 1e-3
+_WHOLE_DISC = 1 - 1e-12
+"""A hair less than all, so that rounding does not make it more."""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -40,13 +44,21 @@ PARAMETERS: Mapping[str, Parameter] = {
         Parameter(name="cloud_top", unit="bar", logarithmic=True, label="cloud-top pressure"),
         Parameter(name="haze", unit="", logarithmic=True, label="haze factor"),
         Parameter(name="star_radius", unit="R_sun", logarithmic=False, label="radius of the star"),
+        Parameter(name="spots", unit="", logarithmic=False, label="share of the disc in spots"),
+        Parameter(name="spot_temperature", unit="K", logarithmic=False, label="temperature of spots"),
+        Parameter(name="faculae", unit="", logarithmic=False, label="share of the disc in faculae"),
+        Parameter(name="facula_temperature", unit="K", logarithmic=False, label="temperature of faculae"),
     )
 }
 """By name; besides these, every absorber of a scenario goes by its formula."""
 
+_REGION_OF = {"spots": "spots", "spot_temperature": "spots", "faculae": "faculae", "facula_temperature": "faculae"}
+
 
 def parameter_of(scenario: Scenario, name: str) -> Parameter | None:
     """The parameter of that name, absorbers included; ``None`` if the scenario has none."""
+    if name in _REGION_OF and getattr(scenario.star, _REGION_OF[name]) is None:
+        return None
     if name in scenario.atmosphere.absorbers:
         return Parameter(name=name, unit="", logarithmic=True, label=f"mixing ratio of {name}")
     return PARAMETERS.get(name)
@@ -60,7 +72,8 @@ def vary(scenario: Scenario, case: Case, values: Mapping[str, float]) -> tuple[S
     values : mapping of parameter to float
         In the parameter's unit. ``mixing_ratio`` is that of the first searched gas, the others of a set keep their
         proportion to it. ``cloud_top`` at or below an opaque surface and ``haze`` of zero mean none. With
-        ``radius`` alone the mass stays. Mixing ratios that leave no background are scaled down together.
+        ``radius`` alone the mass stays. Mixing ratios that leave no background are scaled down together, and so are
+        spots and faculae that would cover more than the disc. Those of a region that the star lacks change nothing.
 
     Notes
     -----
@@ -78,7 +91,9 @@ def vary(scenario: Scenario, case: Case, values: Mapping[str, float]) -> tuple[S
     changed = scenario.model_copy(
         update={
             "planet": planet.model_copy(update=size),
-            "star": star.model_copy(update={"radius_rsun": values.get("star_radius", star.radius_rsun)}),
+            "star": star.model_copy(
+                update={"radius_rsun": values.get("star_radius", star.radius_rsun), **_regions(star, values)}
+            ),
             "atmosphere": atmosphere.model_copy(
                 update={
                     "temperature_k": values.get("temperature", atmosphere.temperature_k),
@@ -112,6 +127,33 @@ def _with_room(amounts: Mapping[str, float], case: Case) -> tuple[dict[str, floa
     total = math.fsum(case.mixing_ratios) + math.fsum(x for gas, x in amounts.items() if gas not in case.gases)
     factor = min(1.0, (1 - _LEAST_BACKGROUND) / total)
     return {gas: factor * x for gas, x in amounts.items()}, _with_ratio(case, factor * case.mixing_ratios[0])
+
+
+def _regions(star: Star, values: Mapping[str, float]) -> dict[str, SurfaceRegion]:
+    """Spots and faculae at other values: cooler and warmer than the photosphere, or like it, and room for both."""
+    shares = {
+        name: min(max(values.get(name, region.fraction), 0.0), 1.0)
+        for name, region in (("spots", star.spots), ("faculae", star.faculae))
+        if region is not None
+    }
+    factor = min(1.0, _WHOLE_DISC / sum(shares.values())) if any(shares.values()) else 1.0
+    found = {}
+    if star.spots is not None:
+        kelvin = min(values.get("spot_temperature", star.spots.temperature_k), star.temperature_k)
+        found["given_spots"] = _region(star.spots, kelvin, factor * shares["spots"])
+    if star.faculae is not None:
+        kelvin = max(values.get("facula_temperature", star.faculae.temperature_k), star.temperature_k)
+        found["given_faculae"] = _region(star.faculae, kelvin, factor * shares["faculae"])
+    return found
+
+
+def _region(region: Region, temperature_k: float, fraction: float) -> SurfaceRegion:
+    return SurfaceRegion.model_construct(
+        temperature_k=temperature_k,
+        temperature_error_k=region.temperature_error_k,
+        covered_fraction=fraction,
+        covered_fraction_error=region.fraction_error,
+    )
 
 
 def _cloud(scenario: Scenario, values: Mapping[str, float]) -> Cloud | None:

@@ -104,7 +104,7 @@ def test_spots_cost_significance(quiet, spotted):
 
 
 def test_widths_are_told(spotted):
-    """Every study that lists the unknowns lists spots and faculae with them, share and temperature each with its error."""
+    """Studies that list the unknowns list spots and faculae with them, share and temperature with their errors."""
     star, told = spotted[0].scenario.star, dict(prior_widths(spotted[0].scenario))
     assert told["spots"] == (
         f"{100 * star.spots.fraction:.3g} +/- {100 * star.spots.fraction_error:.3g} % of the disc at "

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 
 from planner.detection.significance import Measurement
+from planner.scenario.surface import SurfaceRegion
 from planner.studies.spread import draw_searches, priors_of, summary, variance_shares
 
 DRAWS = 64
@@ -61,6 +62,44 @@ def test_everything_not_known_is_drawn(narrow):
     assert "clear" in priors[7].words
     assert priors_of(with_widths(narrow, **EXACT), narrow.cases[0]) == []
     assert [p.name for p in priors_of(with_widths(narrow, **EXACT | {"absorbers_dex": 1.0}), narrow.cases[0])] == ["CO"]
+
+
+def spotted(scenario):
+    star = scenario.star.model_copy(update={"given_spots": SurfaceRegion(), "given_faculae": SurfaceRegion()})
+    return scenario.model_copy(update={"star": star})
+
+
+REGIONS = ["spots", "spot temperature", "faculae", "facula temperature"]
+
+
+def test_spots_and_faculae_are_drawn_where_they_are_stated(narrow):
+    """Shares about their middle and never below none, temperatures about theirs; known ones are not drawn."""
+    scenario = spotted(narrow)
+    priors = {prior.name: prior for prior in priors_of(scenario, narrow.cases[0])}
+    assert list(priors)[-4:] == REGIONS
+    spots = scenario.star.spots
+    assert priors["spots"].at(0.5) == pytest.approx(spots.fraction)
+    assert priors["spots"].at(0.8413447) == pytest.approx(spots.fraction + spots.fraction_error)
+    assert priors["spots"].at(0.001) == 0.0
+    low = spots.temperature_k - spots.temperature_error_k
+    assert priors["spot temperature"].at(0.1586553) == pytest.approx(low, rel=1e-6)
+    known = SurfaceRegion(temperature_error="0 K", covered_fraction_error=0)
+    star = narrow.star.model_copy(update={"given_spots": known})
+    assert priors_of(with_widths(narrow.model_copy(update={"star": star}), **EXACT), narrow.cases[0]) == []
+
+
+def test_spots_and_faculae_have_their_part_in_the_spread(narrow, narrow_reduced):
+    """Where nothing else is uncertain they are all that drives the answer, as far as its variance is explained."""
+    scenario = with_widths(spotted(narrow), **EXACT)
+    variant = type(narrow_reduced)(
+        views=narrow_reduced.views, model=narrow_reduced.model.of(scenario), error=narrow_reduced.error
+    )
+    quantiles, measurements = draw_searches(variant, narrow.cases[0], draws=DRAWS, seed=1)
+    ones = [one[0] for one in measurements]
+    assert np.ptp([one.snr(20) for one in ones]) > 0
+    spread = summary(scenario, REGIONS, quantiles, ones, required=20, on_offer=200, seed=1)
+    assert {driver.name for driver in spread.drivers} <= set(REGIONS)
+    assert sum(driver.share for driver in spread.drivers) > 0.5
 
 
 def test_priors_at_their_quantiles(narrow):

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from planner.scenario.surface import SurfaceRegion
 from planner.studies.vary import PARAMETERS, parameter_of, shifted_ratio, vary
 
 
@@ -32,6 +33,23 @@ def test_every_parameter_arrives(narrow):
     assert (changed.planet.mass_mearth, changed.planet.radius_rearth, changed.star.radius_rsun) == (1.0, 1.1, 0.13)
     assert (changed.atmosphere.cloud.top_bar, changed.atmosphere.cloud.covered_fraction) == (0.01, 1.0)
     assert (changed.atmosphere.haze.factor, changed.atmosphere.haze.wavelength_slope) == (7.0, -4.0)
+
+
+def test_spots_and_faculae(narrow):
+    """Shares and temperatures arrive with their errors kept; both never cover more than the disc, spots stay cooler."""
+    star = narrow.star.model_copy(update={"given_spots": SurfaceRegion(), "given_faculae": SurfaceRegion()})
+    spotted = narrow.model_copy(update={"star": star})
+    values = {"spots": 0.2, "spot_temperature": 2400.0, "faculae": 0.3, "facula_temperature": 2700.0}
+    changed, _ = vary(spotted, narrow.cases[0], values)
+    assert (changed.star.spots.fraction, changed.star.faculae.fraction) == (0.2, 0.3)
+    assert (changed.star.spots.temperature_k, changed.star.faculae.temperature_k) == (2400.0, 2700.0)
+    assert changed.star.spots.fraction_error == star.spots.fraction_error
+    assert changed.star.faculae.temperature_error_k == star.faculae.temperature_error_k
+    full, _ = vary(spotted, narrow.cases[0], values | {"spots": 0.9, "faculae": 0.9, "spot_temperature": 9000.0})
+    assert full.star.spots.fraction + full.star.faculae.fraction == pytest.approx(1)
+    assert full.star.spots.temperature_k == star.temperature_k
+    assert vary(spotted, narrow.cases[0], {})[0].star.spots == star.spots
+    assert vary(narrow, narrow.cases[0], values)[0].star == narrow.star
 
 
 def test_molar_mass_acts_on_the_scale_height_alone(narrow):
@@ -79,3 +97,4 @@ def test_parameters_by_name(narrow):
     assert parameter_of(narrow, "cloud_top") is PARAMETERS["cloud_top"]
     assert parameter_of(narrow, "CO").logarithmic
     assert parameter_of(narrow, "CO2") is None
+    assert parameter_of(narrow, "spots") is None
