@@ -2,34 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Annotated, Any
 
 from pydantic import BeforeValidator, Field, model_validator
 
-from planner.scenario.fields import Record
-from planner.scenario.readings import FieldProblem, Gas, MixingRatio, Number, Text, shown
+from planner.scenario.fields import RatioRange, Record
+from planner.scenario.readings import Ends, FieldProblem, Gas, Number, Text, shown
 
 __all__ = ["Beliefs", "GasBelief", "PresenceBelief", "PriorBelief", "Sides"]
 
 Pair = tuple[float, float]
-
-
-@dataclass(frozen=True, kw_only=True)
-class _Ends:
-    """A pair, lower and higher, each read by another reading."""
-
-    value: Callable[[Any], float]
-    expected: str
-
-    def __call__(self, value: Any) -> Pair:
-        if not isinstance(value, list | tuple) or len(value) != 2:
-            raise ValueError(f"expected {self.expected}, got {shown(value)}")
-        low, high = (self.value(end) for end in value)
-        if low >= high:
-            raise ValueError(f"expected {self.expected}, got {shown(value)}")
-        return low, high
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -56,13 +40,7 @@ class _ByGas:
 _CHANCE = Number(kind="a probability", low=0, high=1, open_low=True, open_high=True)
 Chance = Annotated[float | None, BeforeValidator(_CHANCE)]
 Chances = Annotated[
-    Pair | None, BeforeValidator(_Ends(value=_CHANCE, expected="two probabilities [lower, higher] such as [0.1, 0.5]"))
-]
-Ratios = Annotated[
-    Pair | None,
-    BeforeValidator(
-        _Ends(value=MixingRatio(), expected='two mixing ratios [lower, higher] such as ["1 ppm", "100 ppm"]')
-    ),
+    Pair | None, BeforeValidator(Ends(value=_CHANCE, expected="two probabilities [lower, higher] such as [0.1, 0.5]"))
 ]
 Words = Annotated[str | None, BeforeValidator(Text())]
 
@@ -92,7 +70,7 @@ class PriorBelief(_Chances):
 class PresenceBelief(_Chances):
     """How likely a gas is there, and how much of it."""
 
-    mixing_ratio_range: Ratios = None
+    mixing_ratio_range: RatioRange | None = None
 
 
 class Sides(Record):

@@ -11,6 +11,7 @@ from pydantic import BaseModel, BeforeValidator, ConfigDict
 
 from planner.scenario.readings import (
     Choice,
+    Ends,
     FilePath,
     Flag,
     Gas,
@@ -51,6 +52,7 @@ __all__ = [
     "PerCm",
     "Ppm",
     "Probability",
+    "RatioRange",
     "Ratios",
     "Record",
     "Relative",
@@ -143,3 +145,9 @@ Amounts = Annotated[
     ),
 ]
 Ratios = Annotated[tuple[float, ...], BeforeValidator(MixingRatios())]
+RatioRange = Annotated[
+    tuple[float, float],
+    BeforeValidator(
+        Ends(value=MixingRatio(), expected='two mixing ratios [lower, higher] such as ["1 ppm", "100 ppm"]')
+    ),
+]

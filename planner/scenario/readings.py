@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import math
 import re
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from difflib import get_close_matches
 from pathlib import Path
@@ -23,6 +23,7 @@ from planner.errors import LineDataError
 __all__ = [
     "COMBINED",
     "Choice",
+    "Ends",
     "FieldProblem",
     "FilePath",
     "Flag",
@@ -310,6 +311,22 @@ class MixingRatios:
         if len(set(ratios)) != len(ratios):
             raise _refuse("different mixing ratios", value)
         return ratios
+
+
+@dataclass(frozen=True, kw_only=True)
+class Ends:
+    """A pair, lower and higher, each read by another reading."""
+
+    value: Callable[[Any], float]
+    expected: str
+
+    def __call__(self, value: Any) -> tuple[float, float]:
+        if not isinstance(value, list | tuple) or len(value) != 2:
+            raise ValueError(f"expected {self.expected}, got {shown(value)}")
+        low, high = (self.value(end) for end in value)
+        if low >= high:
+            raise ValueError(f"expected {self.expected}, got {shown(value)}")
+        return low, high
 
 
 @dataclass(frozen=True, kw_only=True)

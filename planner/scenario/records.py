@@ -16,7 +16,7 @@ from planner.scenario.beliefs import Beliefs
 from planner.scenario.fields import Name, Record, Switch
 from planner.scenario.locate import heading
 from planner.scenario.readings import COMBINED, FieldProblem, ModeNames, Sets, Tables
-from planner.scenario.search import Bins, Candidate, Case, Goal, Noise, Nuisances, Spread
+from planner.scenario.search import Bins, Candidate, Case, Fit, Goal, Noise, Nuisances, Spread
 from planner.scenario.target import Atmosphere, Cloud, Haze, Planet, Star
 
 __all__ = [
@@ -25,6 +25,7 @@ __all__ = [
     "Candidate",
     "Case",
     "Cloud",
+    "Fit",
     "Goal",
     "Haze",
     "Noise",
@@ -64,6 +65,7 @@ class Scenario(Record):
     noise: Noise | None = None
     nuisances: Nuisances = Field(default_factory=Nuisances)
     spread: Spread = Field(default_factory=Spread)
+    fit: Fit = Field(default_factory=Fit)
     bins: Bins = Field(default_factory=Bins)
     beliefs: Beliefs = Field(default_factory=Beliefs)
     """In place of the gas catalogue's, for the choice between gases."""

@@ -16,6 +16,7 @@ from planner.scenario.fields import (
     OptionalRelative,
     Ppm,
     Probability,
+    RatioRange,
     Ratios,
     Record,
     Relative,
@@ -23,7 +24,7 @@ from planner.scenario.fields import (
     Sigmas,
 )
 
-__all__ = ["Bins", "Candidate", "Case", "Goal", "Noise", "Nuisances", "Spread"]
+__all__ = ["Bins", "Candidate", "Case", "Fit", "Goal", "Noise", "Nuisances", "Spread"]
 
 
 class Candidate(Record):
@@ -79,6 +80,13 @@ class Spread(Record):
     """Of the searched gas."""
     star_radius_fraction: Relative = Field(default=0.03, alias="star_radius")
     """The planet's radius follows, since transits measure the ratio of the two."""
+
+
+class Fit(Record):
+    """Priors that only the fit of a spectrum has, beside those of the nuisances."""
+
+    mixing_ratio_range: RatioRange = (1e-10, 0.05)
+    """Of every gas but the background; evenly in the logarithm. Above its default end a gas widens its own lines."""
 
 
 class Bins(Record):

@@ -25,7 +25,7 @@ from planner.scenario import (
     starting_scenario,
 )
 from planner.scenario.beliefs import Beliefs, GasBelief, PresenceBelief, PriorBelief, Sides
-from planner.scenario.search import Spread
+from planner.scenario.search import Fit, Spread
 from planner.scenario.surface import SurfaceRegion
 
 DEMO = (data_folder("configs") / "scenarios" / "demo.toml").read_text()
@@ -215,7 +215,7 @@ def test_every_key_is_documented():
         key for row in re.findall(r"^\| (`.*?`) \|", text, re.MULTILINE) for key in re.findall(r"`(\w+)`", row)
     }
     records = [Scenario, Star, SurfaceRegion, Planet, Atmosphere, Cloud, Haze, Candidate, Goal, Noise, Nuisances, Bins]
-    records += [Spread, Beliefs, GasBelief, Sides, PriorBelief, PresenceBelief]
+    records += [Spread, Fit, Beliefs, GasBelief, Sides, PriorBelief, PresenceBelief]
     keys = {field.alias or name for record in records for name, field in record.model_fields.items()}
     # "haze" is a table of the atmosphere and a key of the nuisances
     tables = {
@@ -230,6 +230,7 @@ def test_every_key_is_documented():
         "noise",
         "nuisances",
         "spread",
+        "fit",
         "bins",
         *("beliefs", "life", "industry", "gases", "if_true", "if_false"),
     }

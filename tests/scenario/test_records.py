@@ -10,6 +10,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from pydantic import ValidationError
 
+from planner.errors import ScenarioError
 from planner.scenario import Bins, Case, Cloud, Planet, Star, parse_scenario, starting_scenario
 
 START = starting_scenario()
@@ -157,3 +158,12 @@ def test_scale_height_ppm():
     scenario = parse_scenario(START)
     ring = 2 * scenario.planet.radius_m * scenario.scale_height_km() * 1e3 / scenario.star.radius_m**2
     assert scenario.scale_height_ppm() == pytest.approx(1e6 * ring)
+
+
+def test_range_of_a_fit():
+    """Two mixing ratios in order, with or without units; a default where nothing is said."""
+    assert parse_scenario(starting_scenario()).fit.mixing_ratio_range == (1e-10, 0.05)
+    read = parse_scenario(starting_scenario() + '\n[fit]\nmixing_ratio_range = ["1 ppb", 0.01]\n')
+    assert read.fit.mixing_ratio_range == (1e-9, 0.01)
+    with pytest.raises(ScenarioError, match=r"fit.mixing_ratio_range: expected two mixing ratios \[lower, higher\]"):
+        parse_scenario(starting_scenario() + "\n[fit]\nmixing_ratio_range = [0.1, 0.01]\n")
