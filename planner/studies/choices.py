@@ -13,10 +13,11 @@ __all__ = ["Choice", "ChoiceResult", "Pattern", "Resembling"]
 
 @dataclass(frozen=True, kw_only=True)
 class Resembling:
-    """The gas of the catalogue that is hardest to tell apart from the searched one, at an amount of its own."""
+    """The gas of the catalogue that is hardest to tell apart from the searched one."""
 
     gas: str
     mixing_ratio: float
+    """Width of its prior: see `planner.studies.rivals`."""
     snr_left: float
     """Share of the S/N that is left when its amount is unknown too."""
 

@@ -39,7 +39,7 @@ def absent_rivals(workshop: Workshop, case: Case) -> tuple[str, ...]:
 
 
 def rival_ratio(gas: str) -> float:
-    """The mixing ratio at which a rival is tried: that of Earth's air today, or a part in a million if that is more.
+    """Width of the prior on a rival, in every study: the mixing ratio of Earth's air today, or 1 ppm if that is more.
 
     Industrial gases are tried at today's amount.
     """

@@ -26,6 +26,7 @@ from planner.studies.forward import BinnedDepth
 from planner.studies.nuisances import Direction, directions
 from planner.studies.plan import plan_row
 from planner.studies.results import PlanRow
+from planner.studies.rivals import rival_ratio
 from planner.studies.workshop import Progress, Sight, Workshop, measurement_of, through
 
 __all__ = ["Curve", "Survey", "snr_after"]
@@ -107,14 +108,17 @@ class Survey:
             for index in range(len(self.transits)):
                 self.curves[gas, index] = self._curve(ratios, others, self.sights[gas], index)
                 self.rows[gas, index] = plan_row(self.workshop, self.sights[gas], index)
-            self._shapes[gas] = self.sights[gas].templates_ppm
+            if gas not in self.scenario.air():
+                self._shapes[gas] = self._shape(gas)
             source = self.workshop.library.gas(gas)
             self.line_data += [*source.provenance, *source.partial]
             self._let_go(all_of_it=number % _AT_ONCE == _AT_ONCE - 1)
         self._alike = {gas: sharing_bands(gas) for gas in self.sights}
         for other in dict.fromkeys(other for alike in self._alike.values() for other in alike):
-            if other not in self._shapes and self.workshop.opacities.has_data(other):
+            known = {*self._shapes, *self.scenario.air()}
+            if other not in known and self.workshop.opacities.has_data(other):
                 self._shapes[other] = self._shape(other)
+                self._let_go(all_of_it=True)
 
     def reference(self, gas: str) -> float:
         """Geometric middle of the range where the hypothesis is true."""
@@ -132,18 +136,19 @@ class Survey:
     def rivals(self, gas: str, index: int) -> tuple[Resembling | None, float]:
         """The gas hardest to tell apart, and the share of the S/N that all gases with like bands leave together.
 
-        Gases of the scenario's air are among the nuisances already.
+        Each with the prior width of `planner.studies.rivals`. Gases of the scenario's air are among the nuisances
+        already.
         """
-        sight, there = self.sights[gas], self.scenario.air()
+        sight = self.sights[gas]
         measurement, transits = sight.measurements[index], max(self.transits[index], 1)
         whole = snr_after(measurement, transits)
         alike = {o: self._shapes[o][index][sight.usable[index]] for o in self._alike[gas] if o in self._shapes}
-        alike = {other: shape for other, shape in alike.items() if np.any(shape) and other not in there}
+        alike = {other: shape for other, shape in alike.items() if np.any(shape)}
         if not alike or whole == 0:
             return None, 1.0
         left = {other: snr_after(_beside(measurement, [shape]), transits) / whole for other, shape in alike.items()}
         worst = min(left, key=lambda other: left[other])
-        resembling = Resembling(gas=worst, mixing_ratio=self.reference(worst), snr_left=left[worst])
+        resembling = Resembling(gas=worst, mixing_ratio=rival_ratio(worst), snr_left=left[worst])
         return resembling, snr_after(_beside(measurement, list(alike.values())), transits) / whole
 
     def accuracy(self, leading: Sequence[str]) -> tuple[str, ...]:
@@ -195,10 +200,8 @@ class Survey:
         return Sight(case=case, measurements=measured, usable=usable, templates_ppm=templates, spectrum=spectrum)
 
     def _shape(self, gas: str) -> tuple[Array, ...]:
-        """Share of a gas at its reference, per mode."""
-        spectrum = self._seen(gas, self.reference(gas))
-        self._let_go(all_of_it=True)
-        return tuple(part.shares_ppm[gas] for part in spectrum)
+        """Share of a gas for one prior width of it as a rival, per mode."""
+        return tuple(part.shares_ppm[gas] for part in self._seen(gas, rival_ratio(gas)))
 
     def _nodes(self, gas: str) -> Array:
         """Mixing ratios to compute, ascending; below the lowest the gas is thin."""

@@ -19,6 +19,7 @@ from planner.scenario import parse_scenario
 from planner.studies import survey
 from planner.studies.choose import choose
 from planner.studies.plan import plan
+from planner.studies.rivals import rival_ratio
 
 SCENARIO = """
 title = "Bright (invented)"
@@ -89,6 +90,13 @@ def test_reference_is_the_middle_of_the_range_believed(result):
     """Geometric middle of the catalogue's range under the hypothesis."""
     for choice in result.choices:
         assert choice.mixing_ratio == pytest.approx(np.sqrt(np.prod(choice.mixing_ratio_range)))
+
+
+def test_rivals_have_the_widths_that_they_have_in_a_plan(result):
+    """One rule for the prior on a gas that may be there too, whichever study asks."""
+    resembling = [choice.resembling for choice in result.choices if choice.resembling is not None]
+    assert resembling
+    assert all(like.mixing_ratio == rival_ratio(like.gas) for like in resembling)
 
 
 def test_limits_are_in_order(result):
