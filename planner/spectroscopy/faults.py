@@ -22,8 +22,8 @@ __all__ = ["list_faults"]
 _REFERENCE_K = 296.0
 _RECORDS = 2000
 """Records that are written and read back: every n-th line."""
-_TOO_MUCH, _TOO_LITTLE = 1.01, 0.95
-"""A band's lines may exceed its stated sum by what rounding does, and fall short of it by what the list's cut takes."""
+_TOO_MUCH, _TOO_LITTLE = 1.01, 0.99
+"""Of a band's stated sum, its lines together."""
 _SUM_FROM_CM = 1e-20
 _OUTSIDE_FRACTION = 0.01
 _STEP_PER_CM = 0.05

@@ -35,6 +35,7 @@ from planner.spectroscopy.lists.asymmetric_rotor import (
     direction_cosine,
     spin_rotation,
 )
+from planner.spectroscopy.lists.intensities import whole_band_cut_cm
 
 __all__ = ["asymmetric_lines"]
 
@@ -89,7 +90,8 @@ def asymmetric_lines(part: Mapping[str, Any], hitran_number: int) -> Lines:
     Returns
     -------
     Lines
-        Each band and set adds up to its stated sum before weak lines are dropped.
+        Each band and set adds up to its stated sum before weak lines are dropped, and within a per cent after it
+        if more than half of it lies above the cut.
 
     Raises
     ------
@@ -128,9 +130,12 @@ def _set_lines(band: BandSet, solver: _Solver, part: Mapping[str, Any], hitran_n
     total = sum(float(group.strength.sum()) for group in groups)
     if total <= 0:
         raise LineDataError(f"{where}: {band.name}: no line has a positive wavenumber and strength")
-    ka_most, cuts = np.array(band.ka_most), np.array(band.cuts_cm)
+    scale, cuts = band.sum_cm / total, np.array(band.cuts_cm)
+    intensities = [scale * group.strength for group in groups]
+    kept = [value >= cuts[g.upper.state[g.j_upper]][:, :, None] for value, g in zip(intensities, groups, strict=True)]
+    cuts = np.minimum(cuts, whole_band_cut_cm(*(np.concatenate([x.ravel() for x in xs]) for xs in (intensities, kept))))
     spin = part.get("spin_rotation_per_cm")
-    pieces = [_columns(group, band.sum_cm / total, ka_most, cuts, spin) for group in groups]
+    pieces = [_columns(group, scale, cuts, spin) for group in groups]
     column = {name: np.concatenate([piece[name] for piece in pieces]) for name in pieces[0]}
     column = _merged(column, float(part.get("merge_per_cm", 0.0)))
     if spin is not None:
@@ -182,7 +187,8 @@ def _group(
 ) -> _Group:
     energy = lower.energy_per_cm[j_lower][:, np.newaxis, :]
     wavenumber = upper.energy_per_cm[j_upper][:, :, np.newaxis] - energy
-    real = upper.exists[j_upper][:, :, np.newaxis] & lower.exists[j_lower][:, np.newaxis, :] & (wavenumber > 0)
+    meant = upper.exists[j_upper] & (upper.ka[j_upper] <= np.array(band.ka_most)[upper.state[j_upper]])
+    real = meant[:, :, np.newaxis] & lower.exists[j_lower][:, np.newaxis, :] & (wavenumber > 0)
     wavenumber = np.where(real, wavenumber, 1.0)
     ka, kc = lower.ka[j_lower], lower.kc[j_lower]
     spin = weights[2 * (ka % 2) + kc % 2][:, np.newaxis, :]
@@ -244,15 +250,13 @@ def _factor(
     return in_j + (m2 + m5 * m) * (upper - lower) + m4 * (upper + lower)
 
 
-def _columns(
-    group: _Group, scale: float, ka_most: Floats, cuts_cm: Floats, spin: Sequence[float] | None
-) -> dict[str, NDArray[Any]]:
+def _columns(group: _Group, scale: float, cuts_cm: Floats, spin: Sequence[float] | None) -> dict[str, NDArray[Any]]:
     """The lines of a group that are strong enough, one array per property."""
     intensity = scale * group.strength
     j, up, low = np.nonzero((intensity > 0) & (intensity >= cuts_cm.min()))
     j_upper, j_lower = group.j_upper[j], group.j_lower[j]
-    state, ka = group.upper.state[j_upper, up], group.upper.ka[j_upper, up]
-    keep = (intensity[j, up, low] >= cuts_cm[state]) & (ka <= ka_most[state])
+    state = group.upper.state[j_upper, up]
+    keep = intensity[j, up, low] >= cuts_cm[state]
     j, up, low, j_upper, j_lower = (index[keep] for index in (j, up, low, j_upper, j_lower))
     column = {
         "wavenumber": group.wavenumber_per_cm[j, up, low],
@@ -260,7 +264,7 @@ def _columns(
         "energy": group.lower.energy_per_cm[j_lower, low],
         "j_upper": j_upper,
         "j_lower": j_lower,
-        "ka": ka[keep],
+        "ka": group.upper.ka[j_upper, up],
         "ka_lower": group.lower.ka[j_lower, low],
         "state": state[keep],
         "upper": _label_index(group.upper, j_upper, up),

@@ -21,7 +21,12 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.lines import Lines
-from planner.spectroscopy.lists.intensities import einstein_a_per_s, relative_intensity, worth_keeping
+from planner.spectroscopy.lists.intensities import (
+    einstein_a_per_s,
+    relative_intensity,
+    whole_band_cut_cm,
+    worth_keeping,
+)
 
 __all__ = ["doublet_lines", "doublet_states"]
 
@@ -170,11 +175,11 @@ def _band_lines(
     branches = _branches(levels[v_low], levels[v_up], band[3], int(part["largest_j"]))
     scale = band[2] / sum(branch.strength.sum() for branch in branches)
     isotopologue, nuclear = int(species["isotopologue"]), float(species["nuclear_weight"])
+    weakest_cm, intensity = float(part["weakest_cm"]), scale * np.concatenate([branch.strength for branch in branches])
+    weakest_cm = min(weakest_cm, whole_band_cut_cm(intensity, intensity >= weakest_cm))
     return Lines.join(
         [
-            _branch_lines(
-                branch, scale, (v_up, v_low), widths, (hitran_number, isotopologue), nuclear, float(part["weakest_cm"])
-            )
+            _branch_lines(branch, scale, (v_up, v_low), widths, (hitran_number, isotopologue), nuclear, weakest_cm)
             for branch in branches
         ]
     )

@@ -9,7 +9,14 @@ from numpy.typing import NDArray
 
 from planner.spectroscopy.molecules import isotopologue_abundance, partition_sum
 
-__all__ = ["C2_CM_K", "REFERENCE_TEMPERATURE_K", "einstein_a_per_s", "relative_intensity", "worth_keeping"]
+__all__ = [
+    "C2_CM_K",
+    "REFERENCE_TEMPERATURE_K",
+    "einstein_a_per_s",
+    "relative_intensity",
+    "whole_band_cut_cm",
+    "worth_keeping",
+]
 
 Floats = NDArray[np.float64]
 
@@ -19,6 +26,8 @@ C2_CM_K = 1.438776877
 LIGHT_CM_PER_S = 2.99792458e10
 REFERENCE_TEMPERATURE_K = 296.0
 _HOTTEST_K = 600.0
+_WHOLE = 0.993
+"""Of a band's sum this much is kept where half of it lies above the cut."""
 
 
 def relative_intensity(
@@ -49,6 +58,19 @@ def worth_keeping(
         for temperature_k in (REFERENCE_TEMPERATURE_K, _HOTTEST_K)
     )
     return np.asarray((intensity_cm > 0.0) & (intensity_cm * np.maximum(1.0, hot / cold) >= weakest_cm))
+
+
+def whole_band_cut_cm(intensity_cm: NDArray[np.float64], kept: NDArray[np.bool_]) -> float:
+    """The weakest line that a band needs, so that a list's cut does not maim it; infinite if it needs no more.
+
+    Given all lines of the band and which of them the cut keeps. A band that is kept for the most part keeps its sum
+    within a per cent; one that lies below the cut for the most part is left with its few strong lines.
+    """
+    whole, remaining = float(intensity_cm.sum()), float(intensity_cm[kept].sum())
+    if remaining >= _WHOLE * whole or remaining < 0.5 * whole:
+        return float("inf")
+    ranked = np.sort(intensity_cm, axis=None)[::-1]
+    return float(ranked[np.searchsorted(np.cumsum(ranked), _WHOLE * whole)])
 
 
 def einstein_a_per_s(

@@ -19,7 +19,12 @@ from numpy.typing import NDArray
 
 from planner.errors import LineDataError
 from planner.spectroscopy.lines import Lines
-from planner.spectroscopy.lists.intensities import einstein_a_per_s, relative_intensity, worth_keeping
+from planner.spectroscopy.lists.intensities import (
+    einstein_a_per_s,
+    relative_intensity,
+    whole_band_cut_cm,
+    worth_keeping,
+)
 from planner.spectroscopy.lists.linear_levels import E, F, Levels, honl_london
 
 __all__ = ["linear_lines"]
@@ -90,6 +95,10 @@ def _species_lines(
     intensity = _intensities(found, weight, *columns)
     numbers = (hitran_number, int(species["isotopologue"]))
     keep = worth_keeping(*numbers, found.wavenumber_per_cm, intensity, found.lower_energy_per_cm, weakest_cm)
+    pair, lines_of = np.unique(upper[found.band] * len(levels.names) + lower[found.band], return_inverse=True)
+    for number in range(pair.size):
+        mine = np.flatnonzero(lines_of == number)
+        keep[mine] |= intensity[mine] >= whole_band_cut_cm(intensity[mine], keep[mine])
     found, weight, intensity = found.where(keep), weight[keep], intensity[keep]
     names = np.array([name.rjust(15).rstrip() for name in levels.names])
     order = np.maximum(found.j, found.j + found.branch)
