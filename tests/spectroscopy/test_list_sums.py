@@ -1,8 +1,8 @@
 """Every band of every embedded list adds up to its stated intensity at 296 K within one per cent.
 
 Lines are told apart by the names of their levels and counted here, apart from `planner.spectroscopy.faults`. Rows of
-one pair of levels, and coupled sets that share a state, stand for one band. Bands that lie below the cut of their list for the most part are not held by it:
-they may not exceed what is stated.
+one pair of levels, and coupled sets that share a state, stand for one band. Bands
+that lie below the cut of their list for the most part are not held by it: they may not exceed what is stated.
 """
 
 from __future__ import annotations
