@@ -7,6 +7,11 @@ from pathlib import Path
 
 import pytest
 
+# The matrices here are small: threads of the linear algebra would only get in each other's way, above all when tests
+# run in several processes. It must be said before numpy is loaded.
+for name in ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS"):
+    os.environ.setdefault(name, "1")
+
 
 @pytest.fixture(scope="session")
 def reference_folder() -> Path:
