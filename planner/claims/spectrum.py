@@ -1,7 +1,8 @@
-"""The spectrum that goes with a claim: wavelengths or bin edges, depth and error, every column with its unit."""
+"""A user's spectrum: wavelengths or bin edges, depth and error, every column with its unit."""
 
 from __future__ import annotations
 
+import io
 import re
 from dataclasses import dataclass
 from pathlib import Path
@@ -20,7 +21,7 @@ __all__ = ["ObservedSpectrum", "parse_observed", "read_observed"]
 Array = NDArray[np.float64]
 
 _HOW = (
-    "a table, ECSV with units or CSV whose first line names columns with units in brackets, such as "
+    "a table, ECSV or FITS with units or CSV whose first line names columns with units in brackets, such as "
     '"from [um],to [um],depth [ppm],error [ppm]" or "wavelength [um],depth [ppm],error [ppm]", and perhaps "detector"'
 )
 _NAME_AND_UNIT = re.compile(r"\s*([^\[\]]+?)\s*\[\s*([^\[\]]+?)\s*\]\s*")
@@ -60,11 +61,15 @@ def read_observed(path: str | Path) -> ObservedSpectrum:
         If the file cannot be read or is not such a table.
     """
     try:
-        text = Path(path).read_text(encoding="utf-8")
-    except UnicodeDecodeError:
-        raise ScenarioError(f"{path}: not a text file in UTF-8") from None
+        data = Path(path).read_bytes()
     except OSError as error:
         raise ScenarioError(f"{path}: cannot be read: {error.strerror}") from None
+    if data.startswith(b"SIMPLE"):
+        return _observed(_fits_table(data, str(path)), str(path))
+    try:
+        text = data.decode("utf-8-sig")
+    except UnicodeDecodeError:
+        raise ScenarioError(f"{path}: neither FITS nor a text file in UTF-8") from None
     return parse_observed(text, str(path))
 
 
@@ -79,7 +84,11 @@ def parse_observed(text: str, where: str) -> ObservedSpectrum:
     ScenarioError
         Naming the file, the column, what was expected and what came.
     """
-    table = _table(text, where)
+    return _observed(_text_table(text, where), where)
+
+
+def _observed(table: Table, where: str) -> ObservedSpectrum:
+    _check_table(table, where)
     names, detector = _detectors(table, where)
     depth, error = (_column(table, name, "ppm", where) for name in ("depth", "error"))
     if np.any(error <= 0):
@@ -99,7 +108,26 @@ def parse_observed(text: str, where: str) -> ObservedSpectrum:
     )
 
 
-def _table(text: str, where: str) -> Table:
+def _fits_table(data: bytes, where: str) -> Table:
+    """The first table of a FITS file; names of columns in small letters, for FITS does not tell them apart."""
+    import warnings
+
+    from astropy.table import Table
+
+    try:
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")
+            table = Table.read(io.BytesIO(data), format="fits")
+            table.convert_bytestring_to_unicode()
+            for name in list(table.colnames):
+                if name != name.lower():
+                    table.rename_column(name, name.lower())
+    except Exception as error:  # the reader of astropy raises many kinds
+        raise ScenarioError(f"{where}: expected {_HOW}; got FITS: {_first_words(error)}") from None
+    return table
+
+
+def _text_table(text: str, where: str) -> Table:
     import warnings
 
     from astropy.table import Table
@@ -110,16 +138,23 @@ def _table(text: str, where: str) -> Table:
             warnings.simplefilter("ignore")  # what astropy warns of here is an error below
             table = Table.read(text.splitlines(), format="ascii.ecsv" if ecsv else "ascii.csv")
     except Exception as error:  # the readers of astropy raise many kinds
-        raise ScenarioError(f"{where}: expected {_HOW}; got: {' '.join(str(error).split())[:200]}") from None
+        raise ScenarioError(f"{where}: expected {_HOW}; got: {_first_words(error)}") from None
     if not ecsv:
         _take_units_from_names(table, where)
+    return table
+
+
+def _first_words(error: Exception) -> str:
+    return " ".join(str(error).split())[:200]
+
+
+def _check_table(table: Table, where: str) -> None:
     known = {"wavelength", "from", "to", "depth", "error", "detector"}
     for name in table.colnames:
         if name not in known:
             raise ScenarioError(f'{where}: expected {_HOW}; got a column "{name}"')
     if len(table) < _LEAST_ROWS:
         raise ScenarioError(f"{where}: expected at least {_LEAST_ROWS} rows, got {len(table)}")
-    return table
 
 
 def _take_units_from_names(table: Table, where: str) -> None:
