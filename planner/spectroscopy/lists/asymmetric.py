@@ -185,16 +185,16 @@ def _group(
     k_max: int,
     weights: Floats,
 ) -> _Group:
-    energy = lower.energy_per_cm[j_lower][:, np.newaxis, :]
-    wavenumber = upper.energy_per_cm[j_upper][:, :, np.newaxis] - energy
+    above, below = upper.energy_per_cm[j_upper][:, :, np.newaxis], lower.energy_per_cm[j_lower][:, np.newaxis, :]
+    wavenumber = above - below
     meant = upper.exists[j_upper] & (upper.ka[j_upper] <= np.array(band.ka_most)[upper.state[j_upper]])
     real = meant[:, :, np.newaxis] & lower.exists[j_lower][:, np.newaxis, :] & (wavenumber > 0)
-    wavenumber = np.where(real, wavenumber, 1.0)
     ka, kc = lower.ka[j_lower], lower.kc[j_lower]
     spin = weights[2 * (ka % 2) + kc % 2][:, np.newaxis, :]
     hotness = -SECOND_RADIATION_CONSTANT_CM_K / _REFERENCE_TEMPERATURE_K
-    thermal = spin * np.exp(hotness * energy) * wavenumber * -np.expm1(hotness * wavenumber)
-    strength = thermal * _amplitude(band, upper, lower, j_lower, j_upper, k_max) ** 2
+    # what is absorbed less what light makes come back, as populations: far fewer exponentials than lines
+    net = spin * np.exp(hotness * below) - spin * np.exp(hotness * above)
+    strength = wavenumber * net * _amplitude(band, upper, lower, j_lower, j_upper, k_max) ** 2
     return _Group(
         upper=upper,
         lower=lower,

@@ -321,17 +321,16 @@ def _coupling_matrix(coupling: Coupling, k_second: NDArray[np.int64], k_first: N
 
 def _eigen(matrices: Floats, k: NDArray[np.int64]) -> tuple[NDArray[np.bool_], Floats, Floats]:
     """Eigenvalues and vectors of each J among the functions with K <= J, padded: exists, energy, vectors."""
-    from planner.spectroscopy.lists.eigen_kernel import eigen_stack
-
     order = np.argsort(k, kind="stable")
     sizes = np.searchsorted(k[order], np.arange(matrices.shape[0]), side="right")
-    values, rows = np.full(matrices.shape[:2], np.inf), np.zeros(matrices.shape)
-    eigen_stack(np.ascontiguousarray(matrices[:, order[:, np.newaxis], order]), sizes, values, rows)
-    exists = np.arange(k.size)[np.newaxis, :] < sizes[:, np.newaxis]
-    ascending = np.argsort(values, axis=1, kind="stable")
+    ordered = matrices[:, order[:, np.newaxis], order]
+    energy, rows = np.zeros(matrices.shape[:2]), np.zeros(matrices.shape)
+    for size in np.unique(sizes[sizes > 0]):
+        same = slice(*np.searchsorted(sizes, [size, size + 1]))  # sizes grow with J
+        energy[same, :size], rows[same, :size, :size] = np.linalg.eigh(ordered[same, :size, :size])
     vectors = np.empty_like(rows)
-    vectors[:, order] = np.take_along_axis(rows, ascending[:, :, np.newaxis], axis=1).swapaxes(1, 2)
-    return exists, np.where(exists, np.take_along_axis(values, ascending, axis=1), 0.0), vectors
+    vectors[:, order] = rows
+    return np.arange(k.size)[np.newaxis, :] < sizes[:, np.newaxis], energy, vectors
 
 
 def _resemblance(

@@ -123,6 +123,7 @@ def polyad_matrices(polyad: int) -> Matrix:
     return result
 
 
+@cache
 def _factorials(quanta: Quanta) -> float:
     return float(prod(factorial(n) for n in quanta))
 
@@ -144,12 +145,10 @@ def invariants(create: str, destroy: str, degree: int, *, vector: bool = False) 
     count = round(float(traces.mean()))
     # averages of more random tensors than there are ways span the space with certainty for all practical purposes
     trial = np.random.default_rng(1).normal(size=(count + 3, *(part.shape[1] for part in parts)))
-    average = np.zeros_like(trial)
-    for element in range(24):
-        moved = trial
-        for axis, part in enumerate(parts, 1):
-            moved = np.moveaxis(np.tensordot(part[element], moved, (1, axis)), 0, axis)
-        average += moved / 24.0
+    moved = np.broadcast_to(trial, (24, *trial.shape))
+    for axis, part in enumerate(parts, 2):
+        moved = (part[:, None] @ moved.reshape(24, prod(moved.shape[1:axis]), part.shape[1], -1)).reshape(moved.shape)
+    average = moved.mean(axis=0)
     if create == destroy and not vector:
         average += (-1.0) ** degree * average.swapaxes(1, 2)
     return _echelon(average.reshape(count + 3, -1)).reshape(-1, *trial.shape[1:])
