@@ -114,7 +114,7 @@ def _decades(axes: Axes, name: str) -> None:
 
 def _add_legend(figure: Figure, modes: Sequence[str], result: LimitResult) -> None:
     lines = [Line2D([], [], lw=1.5, label=mode, **_look(number)) for number, mode in enumerate(modes)]
-    chance = f"{result.threshold_sigma:g}$\\sigma$ with {100 * result.power:g} % chance"
+    chance = f"{result.threshold_sigma:g}σ with {100 * result.power:g} % chance"
     signs = [
         Line2D([], [], color="black", lw=1.5, marker="o", ms=3.2, label=f"detectable: {chance}"),
         Line2D(

@@ -100,7 +100,7 @@ def map_figure(result: MapResult) -> Figure:
         _draw(axes, result)
         _add_key(figure, result)
         add_heading(figure, result.title, made_by(result.version, result.invented))
-        what = f"{gas_label(result.gas)} with {result.mode}: transits for {result.threshold_sigma:g}$\\sigma$"
+        what = f"{gas_label(result.gas)} with {result.mode}: transits for {result.threshold_sigma:g}σ"
         axes.set_title(f"{what}, {100 * result.power:g} % chance", loc="left", pad=3)
     return figure
 

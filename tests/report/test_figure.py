@@ -106,8 +106,8 @@ def test_sets_are_filled_with_all_their_gases(fake_plan):
     middle = np.sqrt(spectrum.from_um[bin_] * spectrum.to_um[bin_])
     inside = spectrum.depth_ppm[bin_] - 0.9 * spectrum.shares_ppm["CO2"][bin_]
     assert axes.collections[0].get_paths()[0].contains_point((middle, inside))
-    assert axes.get_title(loc="left").startswith("CH$_{4}$ + CO$_{2}$, 100 ppm")
-    assert "share of CO$_{2}$" not in [text.get_text() for text in figure.legends[0].get_texts()]
+    assert axes.get_title(loc="left").startswith("CH₄ + CO₂, 100 ppm")
+    assert "share of CO₂" not in [text.get_text() for text in figure.legends[0].get_texts()]
 
 
 def test_lines_differ_without_colour(figure):
@@ -121,7 +121,7 @@ def test_lines_differ_without_colour(figure):
 def test_titles_tell_the_verdict(figure):
     """Each panel says gas, ratio, mode, verdict and the transits its points are for."""
     assert figure.axes[0].get_title(loc="left") == (
-        "CH$_{4}$, 100 ppm, near-infrared-prism: within reach; points for 18 transits, 70.6 h"
+        "CH₄, 100 ppm, near-infrared-prism: within reach; points for 18 transits, 70.6 h"
     )
 
 

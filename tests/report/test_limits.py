@@ -114,7 +114,7 @@ def test_figure_has_two_panels_per_gas(result):
     assert len(figure.axes) == 4
     assert all(axes.get_xscale() == axes.get_yscale() == "log" for axes in figure.axes)
     titles = [axes.get_title(loc="left") for axes in figure.axes]
-    assert titles == ["CH$_{4}$: limits", "CH$_{4}$: curve of growth", "CFC-12: limits", "CFC-12: curve of growth"]
+    assert titles == ["CH₄: limits", "CH₄: curve of growth", "CFC-12: limits", "CFC-12: curve of growth"]
     assert len(figure.axes[0].lines) == 4 + 1
     assert len(figure.axes[2].lines) == 2 + 1
 

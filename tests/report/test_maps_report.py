@@ -71,7 +71,7 @@ def test_axes_of_the_figure(result):
     assert axes.get_xscale() == axes.get_yscale() == "log"
     assert axes.get_ylim() == pytest.approx((1.0, 1e-4))
     assert axes.get_xlim() == pytest.approx((1e-8, 1e-2))
-    assert axes.get_xlabel() == "Mixing ratio of CH$_{4}$"
+    assert axes.get_xlabel() == "Mixing ratio of CH₄"
     assert axes.get_ylabel() == "Cloud-top pressure (bar)"
 
 
