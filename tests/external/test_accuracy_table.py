@@ -7,7 +7,6 @@ et al. 1991; PNNL, Sharpe et al. 2004; NIST SRD 79), see comparison_folder.py. R
 from __future__ import annotations
 
 import importlib.util
-import time
 from dataclasses import asdict
 from pathlib import Path
 
@@ -19,26 +18,21 @@ from planner.studies.linedata import check, list_gases
 
 pytestmark = pytest.mark.slow
 
-SECONDS = 180.0
-"""On two cores that nobody else uses; twice that is asserted, for machines that are shared."""
 SHARE = 0.85
 """Of the windows that can be judged, this many meet the marks: the project's own aim."""
 
 
 @pytest.fixture(scope="module")
 def computed(reference_folder, tmp_path_factory) -> AccuracyTable:
-    """The table of today, with nothing kept from before, and the time it took."""
+    """The table of today, with nothing kept from before."""
     spec = importlib.util.spec_from_file_location("comparison_folder", Path(__file__).parent / "comparison_folder.py")
     module = importlib.util.module_from_spec(spec)
     spec.loader.exec_module(module)
     folder = module.make_comparison_folder(reference_folder, tmp_path_factory.mktemp("real") / "data")
     with pytest.MonkeyPatch.context() as patch:
         patch.setenv("LIMBCAST_STORE", str(tmp_path_factory.mktemp("store")))
-        start, worked = time.perf_counter(), time.process_time()
         table = check(folder).accuracy
-        took, worked = time.perf_counter() - start, time.process_time() - worked
-    print(f"\n{accuracy_page(table, list_gases())}\n{took:.0f} s, {worked:.0f} s of processor time, lists included")
-    assert worked < 2.0 * SECONDS
+    print(f"\n{accuracy_page(table, list_gases())}")
     return table
 
 

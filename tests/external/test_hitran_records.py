@@ -13,6 +13,7 @@ import pytest
 
 from planner.spectroscopy.hitran import format_par, parse_par, read_par, write_par
 from planner.spectroscopy.lines import Lines
+from planner.spectroscopy.lists.build import embedded_formulas, part_lines, read_constants
 from planner.spectroscopy.molecules import quiet_hapi
 
 # our field, hapi's name of it
@@ -65,6 +66,42 @@ def test_hapi_reads_what_we_write(tmp_path):
     for name, column in COLUMNS.items():
         np.testing.assert_array_equal(getattr(ours, name), np.asarray(theirs[column]), err_msg=name)
     assert [text.rstrip() for text in theirs["local_lower_quanta"]] == ours.lower_local.tolist()
+
+
+LISTS = [formula for formula in embedded_formulas() if read_constants(formula).line_parts]
+SHORT = {"CO", "HBr", "HCN", "HCl", "HF", "NO", "O2"}
+
+
+@pytest.mark.parametrize(
+    "formula", [pytest.param(name, marks=() if name in SHORT else pytest.mark.slow) for name in LISTS]
+)
+def test_hapi_reads_every_embedded_list(tmp_path, formula):
+    """Each line of each list, written by us, comes back from hapi's reader, as numbers and labels, as it was.
+
+    Within the digits of a record: wavenumbers 1e-6, intensities four digits, lower energies 1e-4.
+    """
+    constants = read_constants(formula)
+    lines = Lines.join([part_lines(constants, part) for part in constants.line_parts])
+    write_par(tmp_path / "table.data", lines)
+    theirs = hapi_table(tmp_path)
+    assert len(theirs["nu"]) == len(lines)
+    for name, rtol, atol in (
+        ("molecule", 0.0, 0.0),
+        ("isotopologue", 0.0, 0.0),
+        ("wavenumber_per_cm", 0.0, 0.51e-6),
+        ("intensity_cm", 0.51e-3, 0.0),
+        ("einstein_a_per_s", 0.51e-3, 0.0),
+        ("air_width_per_cm_atm", 0.0, 0.51e-4),
+        ("self_width_per_cm_atm", 0.0, 0.51e-3),
+        ("lower_energy_per_cm", 0.0, 0.51e-4),
+        ("temperature_exponent", 0.0, 0.51e-2),
+        ("upper_weight", 0.0, 0.051),
+        ("lower_weight", 0.0, 0.051),
+    ):
+        column = np.asarray(theirs[COLUMNS[name]], dtype=float)
+        np.testing.assert_allclose(column, getattr(lines, name), rtol=rtol, atol=atol, err_msg=name)
+    for column, labels in (("global_upper_quanta", lines.upper_global), ("local_lower_quanta", lines.lower_local)):
+        assert [text.rstrip() for text in theirs[column]] == [text.rstrip() for text in labels.tolist()]
 
 
 def test_reference_files_all_read(reference_folder):
