@@ -290,14 +290,23 @@ def _write_all(result: PlanResult, folder: Path) -> None:
     from planner.report.ecsv import plan_meta, plan_table, spectra_table, write_table
     from planner.report.figure import plan_figure, write_figure
     from planner.report.jsonio import write_plan_json
+    from planner.report.simulationfigure import simulation_figure
+    from planner.report.spreadfigure import spread_figure
 
     write_plan_json(result, folder / "plan.json")
     write_table(plan_table(result), folder / "plan.ecsv")
     write_table(spectra_table(result.spectra, plan_meta(result)), folder / "spectra.ecsv")
-    figure = plan_figure(result)
-    write_figure(figure, folder / "plan.png")
-    write_figure(figure, folder / "plan.pdf")
-    _tell_written(*(folder / name for name in ("plan.json", "plan.ecsv", "spectra.ecsv", "plan.png", "plan.pdf")))
+    figures = {"plan": plan_figure(result)}
+    if any(row.spread for row in result.rows):
+        figures["spread"] = spread_figure(result)
+    if any(row.simulation for row in result.rows):
+        figures["simulation"] = simulation_figure(result)
+    names = ["plan.json", "plan.ecsv", "spectra.ecsv"]
+    for name, figure in figures.items():
+        for ending in ("png", "pdf"):
+            names.append(f"{name}.{ending}")
+            write_figure(figure, folder / names[-1])
+    _tell_written(*(folder / name for name in names))
 
 
 def _check_figure(path: Path) -> None:

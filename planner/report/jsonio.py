@@ -62,13 +62,17 @@ the six above with ``_all_known``       the same with everything but the gas kno
                                         ``power_stated``, ``power_found``, ``power_error`` (standard error),
                                         ``false_alarm_sigma`` and ``false_alarms_stated``, ``_found``, ``_error`` at it,
                                         ``sigma_anywhere``: local significance that counts as the threshold when the
-                                        place of the feature was not chosen in advance
+                                        place of the feature was not chosen in advance; ``snr_stated`` with the gas;
+                                        ``sigma_edges`` of bins, and ``counts_there``, ``counts_absent``: significances
+                                        found with the gas and without
 ``spread``                              null, or what draws from the priors gave: ``draws``, ``seed``; ``transits_16``,
                                         ``transits_50``, ``transits_84`` (null where no number is enough);
                                         ``unreachable_share`` of the draws; ``chance_asked`` of passing the threshold
                                         with ``transits_asked`` (by the plan, or those on offer if fewer),
                                         ``chance_on_offer`` with ``transits_on_offer``; ``drivers``: list of ``name``,
-                                        ``share`` in the variance of the ranks in S/N, largest first
+                                        ``share`` in the variance of the ranks in S/N, largest first;
+                                        ``transits_drawn``: of every draw, ascending, null where no number is enough;
+                                        ``chances``: list of transits and the chance of passing the threshold with them
 ======================================  ==============================================================================
 """
 

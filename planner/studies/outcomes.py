@@ -41,6 +41,10 @@ class TransitSpread:
     chance_asked: float
     transits_on_offer: int
     chance_on_offer: float
+    transits_drawn: tuple[int | None, ...]
+    """Of every draw, ascending; ``None``, last, where no number is enough."""
+    chances: tuple[tuple[int, float], ...]
+    """Of passing the threshold after some numbers of transits, ascending."""
     drivers: tuple[Driver, ...]
     """Shares of the variance of the draws' ranks in significance after ``transits_asked``, largest first; they add to
     less than 1: the rest is interplay, and what a curve of second order misses."""

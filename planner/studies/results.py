@@ -71,6 +71,8 @@ class Simulation:
     draws: int
     power_stated: float
     """At this whole number of transits; a little above the power asked for, which the unrounded number gives."""
+    snr_stated: float
+    """Significance expected with the gas."""
     power_found: float
     power_error: float
     false_alarm_sigma: float
@@ -80,6 +82,12 @@ class Simulation:
     sigma_anywhere: float
     """Local significance that counts as the threshold when a feature as wide as the best band was searched for over
     the whole mode."""
+    sigma_edges: tuple[float, ...]
+    """Edges of the bins in which the draws are counted; those beyond the ends count with the last."""
+    counts_there: tuple[int, ...]
+    """Significances found with the gas."""
+    counts_absent: tuple[int, ...]
+    """And without."""
 
 
 class RemedyKind(StrEnum):

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from math import ceil
+
 import numpy as np
 from numpy.typing import NDArray
 from scipy import special
@@ -18,6 +20,9 @@ Array = NDArray[np.float64]
 
 FALSE_ALARM_SIGMA = 2.0
 """False alarms are counted here: at 5 sigma a few thousand draws would meet none."""
+_STEP_SIGMA = 0.25
+_TAIL_SIGMA = 4.0
+"""Bins in which significances are counted: so wide, and so far beyond the means."""
 _PLACES_PER_WIDTH = 4
 _FULL_WIDTH = 2.355
 """Full width at half maximum of a Gaussian over its standard deviation."""
@@ -50,13 +55,17 @@ def simulate_search(
         Observations with the gas, and as many without.
     rng : Generator
     """
-    there = rate_above(simulated_significances(measurement, transits, draws, rng), threshold_sigma)
+    significances = simulated_significances(measurement, transits, draws, rng)
+    there = rate_above(significances, threshold_sigma)
     absent = simulated_significances(measurement, transits, draws, rng, amplitude=0.0)
     alarms = rate_above(absent, FALSE_ALARM_SIGMA)
+    snr = measurement.snr(transits)
+    edges = np.arange(-_TAIL_SIGMA, ceil(snr) + _TAIL_SIGMA + _STEP_SIGMA / 2, _STEP_SIGMA)
     return Simulation(
         transits=transits,
         draws=draws,
-        power_stated=float(special.ndtr(measurement.snr(transits) - threshold_sigma)),
+        snr_stated=snr,
+        power_stated=float(special.ndtr(snr - threshold_sigma)),
         power_found=there.share,
         power_error=there.standard_error,
         false_alarm_sigma=FALSE_ALARM_SIGMA,
@@ -64,7 +73,15 @@ def simulate_search(
         false_alarms_found=alarms.share,
         false_alarms_error=alarms.standard_error,
         sigma_anywhere=sigma_anywhere(measurement, bins, band, transits, threshold_sigma),
+        sigma_edges=tuple(edges.tolist()),
+        counts_there=_counted(significances, edges),
+        counts_absent=_counted(absent, edges),
     )
+
+
+def _counted(significances: Array, edges: Array) -> tuple[int, ...]:
+    counts, _ = np.histogram(np.clip(significances, edges[0], edges[-1]), edges)
+    return tuple(counts.tolist())
 
 
 def sigma_anywhere(

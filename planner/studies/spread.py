@@ -36,6 +36,9 @@ _QUANTILES = (0.16, 0.5, 0.84)
 _FARTHEST = 3.0
 """Priors end at so many widths; beyond lies one draw in 370."""
 _LEAST_SHARE = 0.01
+_CHANCES = 20
+"""Numbers of transits at which the chance of success is worked out."""
+_FAR_BEYOND = 10
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -208,6 +211,8 @@ def summary(
         chance_asked=float(special.ndtr(significance - goal.threshold_sigma).mean()),
         transits_on_offer=on_offer,
         chance_on_offer=float(special.ndtr(best - goal.threshold_sigma).mean()),
+        transits_drawn=tuple(_whole(number) for number in np.sort(transits)),
+        chances=_chances(measurements, goal.threshold_sigma, on_offer, _whole(high)),
         drivers=tuple(Driver(name=name, share=float(share)) for share, name in shares if share >= _LEAST_SHARE),
     )
 
@@ -315,6 +320,21 @@ def _regions(star: Star) -> list[Prior]:
 
 def _shifted(middle: float, width: float) -> Callable[[float], float]:
     return lambda z: max(0.0, middle + width * z)
+
+
+def _chances(
+    measurements: Sequence[Measurement], threshold_sigma: float, on_offer: int, upper: int | None
+) -> tuple[tuple[int, float], ...]:
+    """Chance of passing the threshold from one transit to all on offer, or to what five in six draws need.
+
+    Not beyond ten times what is on offer: nobody plans so far.
+    """
+    most = max(on_offer, min(upper or on_offer, _FAR_BEYOND * on_offer))
+    numbers = np.unique(np.rint(np.geomspace(1, most, _CHANCES)).astype(int)).tolist()
+    return tuple(
+        (number, float(np.mean([special.ndtr(m.snr(number) - threshold_sigma) for m in measurements])))
+        for number in numbers
+    )
 
 
 def _whole(transits: float) -> int | None:

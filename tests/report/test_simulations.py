@@ -22,6 +22,10 @@ SIMULATION = Simulation(
     false_alarms_found=0.0245,
     false_alarms_error=0.0035,
     sigma_anywhere=5.81,
+    snr_stated=5.08,
+    sigma_edges=(-4.0, 0.0, 4.0, 8.0),
+    counts_there=(0, 300, 1700),
+    counts_absent=(1000, 1000, 0),
 )
 
 

@@ -45,6 +45,60 @@ def small(mode="grism-4-to-5-um"):
     return parse_scenario(SCENARIO.format(mode=mode))
 
 
+HAZY = """
+[atmosphere.cloud]
+top = "0.05 bar"
+covered_fraction = 0.6
+[atmosphere.haze]
+factor = 20
+"""
+SUB_NEPTUNE = {
+    'mass = "0.85 M_earth"\nradius = "1 R_earth"': 'mass = "8.6 M_earth"\nradius = "2.6 R_earth"',
+    'pressure = "1 bar"\nsurface = true\nbackground = { N2 = 1.0 }': (
+        'pressure = "10 bar"\nsurface = false\nbackground = { H2 = 0.85, He = 0.15 }'
+    ),
+    'absorbers = { CO = "10 ppm" }': "absorbers = { CH4 = 0.01, H2O = 0.001 }",
+    'gas = "N2O"\nmixing_ratio = "100 ppm"': 'gas = "CO2"\nmixing_ratio = "100 ppm"',
+}
+DIFFERENT = {
+    "a grating, methane under a partial deck and haze": (
+        "medium-grating-3-to-5-um",
+        {
+            'gas = "N2O"': 'gas = "CH4"',
+            "[[candidates]]": f"{HAZY}[[candidates]]",
+            '{ CO = "10 ppm" }': '{ CO2 = "1 %" }',
+        },
+    ),
+    "the mid infrared, ozone in moist air": (
+        "mid-infrared-slitless",
+        {
+            'gas = "N2O"\nmixing_ratio = "100 ppm"': 'gas = "O3"\nmixing_ratio = "5 ppm"',
+            '{ CO = "10 ppm" }': '{ CO2 = "400 ppm", H2O = "10 ppm", CH4 = "2 ppm" }',
+            "{ N2 = 1.0 }": "{ N2 = 0.79, O2 = 0.21 }",
+        },
+    ),
+    "a temperate sub-Neptune with the prism": ("near-infrared-prism", SUB_NEPTUNE),
+    "a spotted star, thin cold air, two orders": (
+        "cross-dispersed-near-infrared",
+        {
+            "[planet]": "[star.spots]\n[star.faculae]\n[planet]",
+            'gas = "N2O"\nmixing_ratio = "100 ppm"': 'gas = "H2O"\nmixing_ratio = "300 ppm"',
+            'pressure = "1 bar"': 'pressure = "20 mbar"',
+            'temperature = "250 K"': 'temperature = "180 K"',
+        },
+    ),
+}
+
+
+def different(name):
+    mode, changes = DIFFERENT[name]
+    text = SCENARIO.format(mode=mode)
+    for old, new in changes.items():
+        assert text.count(old) == 1, old
+        text = text.replace(old, new)
+    return parse_scenario(text)
+
+
 def measurements(scenario, samples_per_unit_ln=None):
     """Every search of a scenario with every mode, by name."""
     workshop = Workshop(scenario, samples_per_unit_ln=samples_per_unit_ln)
@@ -65,12 +119,14 @@ def transits_of(measurement, goal):
     return measurement.transits_for(min(goal, 0.5 * measurement.snr_limit()))
 
 
-def compare_samplings(scenario):
+def compare_samplings(scenario, label=""):
+    """Assert that twice the samples change little; tell by how much, and which searches have a band to speak of."""
     goal = scenario.goal.threshold_sigma
     usual, doubled = measurements(scenario), measurements(scenario, 2 * SAMPLES_PER_UNIT_LN)
     seen = [name for name, m in usual.items() if m.snr_limit() > 0.1]
     for name in seen:
         ratio = transits_of(doubled[name], goal) / transits_of(usual[name], goal)
+        print(f"{label} {name[0]}, {name[2]}: transits times {ratio:.4f}")
         assert ratio == pytest.approx(1.0, abs=0.02), name
     return seen
 
@@ -84,6 +140,13 @@ def test_doubling_the_samples_of_one_mode():
 def test_doubling_the_samples_of_the_demonstration():
     """The same for every search of the demonstration, methane to ozone, 0.6 to 12 um, that has a band in range."""
     assert len(compare_samplings(read_scenario(data_folder("configs") / "scenarios" / "demo.toml"))) >= 6
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("name", DIFFERENT)
+def test_doubling_the_samples_of_searches_unlike_each_other(name):
+    """The same for a grating, the mid infrared, hydrogen, and thin cold air of a spotted star."""
+    assert len(compare_samplings(different(name), name)) == 1
 
 
 @pytest.mark.slow

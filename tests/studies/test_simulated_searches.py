@@ -112,10 +112,14 @@ def test_stated_rates(name, tmp_path):
     for power in (0.2, 0.5, 0.9):
         transits = measurement.transits_for(target_snr(3.0, power))
         found = rate_above(simulated_significances(measurement, transits, 20_000, rng), 3.0)
+        print(f"{name}: power {power:g} found {found.share:.4f}, {found.errors_from(power):+.1f} standard errors")
         assert abs(found.errors_from(power)) < 3, (power, found)
     absent = simulated_significances(measurement, transits, 20_000, rng, amplitude=0.0)
     for sigma in (1.5, 2.0, 2.5):
-        assert abs(rate_above(absent, sigma).errors_from(one_sided_probability(sigma))) < 3, sigma
+        stated, seen = one_sided_probability(sigma), rate_above(absent, sigma)
+        errors = seen.errors_from(stated)
+        print(f"{name}: alarms at {sigma:g} sigma {stated:.4f} found {seen.share:.4f}, {errors:+.1f} standard errors")
+        assert abs(errors) < 3, sigma
 
 
 # -- where the forward model is not linear --------------------------------------------------------------------------

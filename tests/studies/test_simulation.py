@@ -49,6 +49,16 @@ def test_found_agrees_with_stated():
     assert one_sided_sigma(result.false_alarms_stated) == pytest.approx(result.false_alarm_sigma)
 
 
+def test_counts_follow_the_normal_curve():
+    """Every draw is counted; means with and without the gas are what is stated, and the width is one sigma."""
+    result = simulated()
+    middles = np.convolve(result.sigma_edges, [0.5, 0.5], "valid")
+    for counts, mean in ((result.counts_there, result.snr_stated), (result.counts_absent, 0.0)):
+        assert sum(counts) == result.draws
+        assert np.average(middles, weights=counts) == pytest.approx(mean, abs=4 / np.sqrt(result.draws))
+        assert np.average((middles - mean) ** 2, weights=counts) == pytest.approx(1.0, abs=0.1)
+
+
 def test_same_seed_same_rates():
     """A plan can be made again."""
     assert simulated() == simulated()

@@ -148,6 +148,13 @@ def test_summary_of_the_draws(narrow, searches):
     counts = [np.inf if n is None else n for n in (spread.transits_16, spread.transits_50, spread.transits_84)]
     assert 1 <= counts[0] < counts[1] <= counts[2]
     assert 0 < spread.chance_asked < spread.chance_on_offer < 1
+    drawn = [np.inf if n is None else n for n in spread.transits_drawn]
+    assert (len(drawn), drawn) == (DRAWS, sorted(drawn))
+    np.testing.assert_array_equal(np.quantile(drawn, [0.16, 0.5, 0.84], method="inverted_cdf"), counts)
+    numbers, chances = zip(*spread.chances, strict=True)
+    assert (numbers[0], list(chances)) == (1, sorted(chances))
+    assert np.interp(20, numbers, chances) == pytest.approx(spread.chance_asked, abs=0.01)
+    assert dict(spread.chances).get(200, spread.chance_on_offer) == pytest.approx(spread.chance_on_offer)
     shares = [driver.share for driver in spread.drivers]
     assert shares == sorted(shares, reverse=True)
     assert 0.5 < sum(shares) <= 1
