@@ -1,8 +1,11 @@
 """Absorption cross-sections of spectral lines: one temperature, many pressures at once.
 
-A line is summed point by point around its centre and where its wing is cut. Everywhere else, at least one cell away
-from the centre, its wing is smooth: it is summed on a few nodes per cell of the grid and interpolated once all lines
-are in. The cells are as wide as makes the work least, and the points of the grid may lie anywhere.
+A line is summed point by point around its centre alone. Farther out its wing is smooth, and the wings of all lines
+that share a cell of the grid are one series in powers of the inverse distance from the middle of that cell, in which
+a line costs a few multiplications however long its wing is. The series of all cells that reach a cell are translated
+to one polynomial over it (the fast multipole method: Greengard and Rokhlin 1987, J. Comput. Phys. 73, 325). Where a
+wing is cut, series are summed from line to line, point by point. The cells are as wide as makes the work least, and
+the points of the grid may lie anywhere.
 """
 
 from __future__ import annotations
@@ -10,7 +13,8 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass
+from functools import lru_cache
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -33,8 +37,16 @@ SECOND_RADIATION_CM_K = 1.438776877
 GAS_CONSTANT_J_PER_MOL_K = 8.314462618
 LIGHT_SPEED_M_PER_S = 299792458.0
 
-_STRETCH = 4096  # points that one task owns; fixed, so that the result does not depend on the number of threads
-_NODES = 8  # per cell: interpolates 1/x**2 one cell away from its pole to 2e-5
+_STRETCH = 12288  # points that one task owns at most; fixed, so that the result does not depend on the threads
+_POWERS = 6  # of the polynomial over a cell: good to 1e-5 for 1/x**2 two cells away from its pole
+_WORTH = 1e-6  # of a series: powers that count for less are left out
+
+# Least width of a cell, in greatest Lorentz and Doppler widths: so far out series converge, and Gaussians are over.
+_LORENTZ_WIDTHS, _DOPPLER_WIDTHS = 2.2, 6.0
+_LEAST_CELLS = 8  # in a wing
+
+# Costs in nanoseconds of a line on a point, of a line in a series, of a cell seen from both sides
+_PER_POINT, _PER_LINE, _PER_CELL = 1.0, 70.0, 8.0
 
 
 def cross_sections(
@@ -85,25 +97,27 @@ def cross_sections(
     `line_intensities` gives the strengths.
 
     A line's relative error is below 1e-4 wherever it exceeds 1e-11 of its Doppler peak: 9e-5 from the approximation
-    of the Voigt function near a centre, 5e-5 farther out, 2e-5 from the interpolation. What is subtracted has an
-    error of its own as large. `reference_cross_sections` does the same slowly.
+    of the Voigt function inside six Doppler widths, 3e-5 outside, 3e-5 at most from series and polynomials.
+    `reference_cross_sections` does the same slowly.
     """
     grid, pressure_atm = _checked(
         wavenumber_per_cm, pressures_bar, temperature_k, self_fraction, width_factor, wing_per_cm
     )
     result = np.zeros((pressure_atm.size, grid.size))
-    if not len(lines) or not pressure_atm.size:
+    if not len(lines) or not result.size:
         return result
     shapes = _line_shapes(lines, temperature_k, self_fraction, width_factor)
-    starts = range(0, grid.size, _STRETCH)
+    count = -(-grid.size // _STRETCH)
+    edges = [grid.size * number // count for number in range(count + 1)]
 
-    def work(start: int) -> None:
-        stop = start + _STRETCH
-        result[:, start:stop] = _stretch(grid[start:stop], shapes, pressure_atm, wing_per_cm, subtract_at_wing)
+    def work(row: int, start: int, stop: int) -> None:
+        _add(result[row, start:stop], grid[start:stop], shapes, pressure_atm[row], wing_per_cm, subtract_at_wing)
 
     # compiled code lets go of the interpreter, so threads share the cores; each owns its part of the result
     with ThreadPoolExecutor(_threads()) as pool:
-        list(pool.map(work, starts))
+        tasks = [pool.submit(work, row, *ends) for row in range(len(result)) for ends in pairwise(edges)]
+        for task in tasks:
+            task.result()
     return result
 
 
@@ -221,76 +235,74 @@ def _per_species(lines: Lines, value_of: Callable[[int, int], float]) -> Floats:
 # ---------------------------------------------------------------- one stretch of the grid
 
 
-@dataclass(frozen=True, kw_only=True)
-class _Cells:
-    """Equal cells over a stretch of the grid; ``nodes`` is empty where interpolation does not pay."""
+def _add(sums: Floats, points: Floats, shapes: Floats, pressure_atm: float, wing: float, subtract: bool) -> None:
+    """Add all lines at one pressure to the sums on the points of one stretch."""
+    from planner.spectroscopy import _kernels as kernels  # compiles on first import
 
-    first_edge: float
-    width: float
-    start: NDArray[np.int64]
-    nodes: Floats
+    lines = _lines_near(points, shapes, pressure_atm, wing, subtract)
+    if not lines.size:
+        return
+    cut = _cells_in_a_wing(points, lines, wing)
+    span = points[-1] - points[0]
+    width = wing / cut if cut else max(16.0 * span / points.size, 1e-6 * points[0])
+    cell_start = np.searchsorted(points, points[0] + width * np.arange(int(span / width) + 2))
+    cell_start[-1] = points.size
+    stretch = (points, sums, cell_start, float(points[0]), width)
+    moments = np.zeros((cell_start.size - 1 + 2 * cut if cut else 0, kernels.TERMS + 1))
+    ends = np.zeros((2, points.size if cut else 0, kernels.CUT_TERMS + 1))
+    kernels.add_lines(*stretch, lines, wing, moments, ends)
+    if cut:
+        fields = np.zeros((_POWERS, cell_start.size - 1))
+        kernels.add_wings(*stretch, np.ascontiguousarray(moments.T), ends, *_translations(cut), fields)
+    # the polynomials may leave -1e-5 of what a line was worth where its wing is cut
+    np.maximum(sums, 0.0, out=sums)
 
 
-def _stretch(points: Floats, shapes: Floats, pressure_atm: Floats, wing: float, subtract: bool) -> Floats:
-    """Sums of all lines on the points of one stretch, shape (pressure, point)."""
-    from planner.spectroscopy._kernels import add_lines  # compiles on first import
-
-    slack = float(np.max(np.abs(shapes[4]))) * float(pressure_atm.max())
+def _lines_near(points: Floats, shapes: Floats, pressure_atm: float, wing: float, subtract: bool) -> Floats:
+    """What `add_lines` wants to know of the lines that may reach a stretch, shape (5, line)."""
+    slack = float(np.max(np.abs(shapes[4]))) * pressure_atm
     first, last = np.searchsorted(shapes[0], [points[0] - wing - slack, points[-1] + wing + slack])
-    if first == last:
-        return np.zeros((pressure_atm.size, points.size))
-    near = np.ascontiguousarray(shapes[:, first:last])
-    cells = _cells(points, wing, slack, float(near[2].max()))
-    places = np.concatenate([points, cells.nodes])
-    sums = np.zeros((pressure_atm.size, places.size))
-    per_cell = _NODES if cells.nodes.size else 0
-    cell_numbers = (points.size, per_cell, cells.first_edge, cells.width, cells.start)
-    add_lines(places, sums, *cell_numbers, *near, pressure_atm, wing, subtract)
-    on_points, on_nodes = sums[:, : points.size], sums[:, points.size :]
-    if cells.nodes.size:
-        on_points += _interpolated(points, cells, on_nodes)
-    # the interpolation may leave -1e-5 of what a line was worth where its wing is cut
-    return np.maximum(on_points, 0.0)
+    centre, strength, doppler, lorentz, shift = shapes[:, first:last]
+    lorentz = lorentz * pressure_atm
+    taken_off = np.zeros_like(centre)
+    if subtract:
+        from scipy.special import voigt_profile
+
+        taken_off = strength * voigt_profile(wing, doppler / math.sqrt(2.0), lorentz)
+    return np.stack([centre + shift * pressure_atm, strength, doppler, lorentz, taken_off])
 
 
-def _cells(points: Floats, wing: float, slack: float, doppler: float) -> _Cells:
-    """The cells of a stretch, as wide as makes the work least.
+def _cells_in_a_wing(points: Floats, lines: Floats, wing: float) -> int:
+    """How many cells make the work least; 0 if it is least to sum each line on all points that it reaches.
 
-    With m nodes per cell a line costs about four cells of points (its own, two neighbours, a half at either end of
-    its wing) and the nodes in between: ``4 width / spacing + 2 m wing / width``, least at
-    ``width = sqrt(m wing spacing / 2)``. A cell must be wider than the core of a line and well wider than its shift,
-    ``slack``, and the ends of the wing must lie beyond the neighbours; where no width does all this and saves
-    anything, every line is summed on the points alone and the cells only help to find them.
+    With n lines near each centre, of five cells, the work is ``n 5 width / spacing`` points and
+    ``span wing / width**2`` pairs of cells.
     """
-    from planner.spectroscopy._kernels import ASYMPTOTE_FROM
-
-    spacing = (points[-1] - points[0]) / max(points.size - 1, 1)
-    width = max(math.sqrt(_NODES * wing * spacing / 2.0), ASYMPTOTE_FROM * doppler + 4.0 * slack)
-    gains = 4.0 * width + 2.0 * _NODES * wing * spacing / width < 2.0 * wing and 4.0 * width < wing - slack
-    if not gains:
-        width = max(16.0 * spacing, 1e-6 * points[0])
-    count = int((points[-1] - points[0]) / width) + 1
-    edges = points[0] + width * np.arange(count + 1)
-    start = np.searchsorted(points, edges)
-    start[-1] = points.size
-    nodes = (edges[:-1, np.newaxis] + 0.5 * width * (1.0 + _CHEBYSHEV)).ravel() if gains else np.zeros(0)
-    return _Cells(first_edge=float(points[0]), width=width, start=start, nodes=nodes)
+    count, span = lines.shape[1], points[-1] - points[0]
+    if points.size == 1:
+        return 0
+    per_length = _PER_POINT * count * points.size / span
+    pairs = _PER_CELL * span * wing
+    least = max(_LORENTZ_WIDTHS * lines[3].max(), _DOPPLER_WIDTHS * lines[2].max())
+    width = max((2.0 * pairs / (5.0 * per_length)) ** (1 / 3), least)
+    gains = per_length * 5.0 * width + _PER_LINE * count + pairs / width**2 < per_length * 2.0 * wing
+    return int(wing / width) if gains and wing > _LEAST_CELLS * width else 0
 
 
-_CHEBYSHEV = np.cos((np.arange(_NODES) + 0.5) * np.pi / _NODES)  # roots of the Chebyshev polynomial
-_TO_POWERS = np.linalg.inv(np.vander(_CHEBYSHEV, increasing=True))  # values there to coefficients of powers
+@lru_cache(maxsize=64)
+def _translations(cut: int) -> tuple[NDArray[np.int64], Floats]:
+    """For each distance of cells below ``cut``: the powers that count, and their polynomials over the cell.
 
+    Shapes ``(cut,)`` and ``(cut, power of the inverse distance, power of the place from -1 to 1)``.
+    """
+    from planner.spectroscopy._kernels import NEAR, TERMS
 
-def _interpolated(points: Floats, cells: _Cells, on_nodes: Floats) -> Floats:
-    """Values on the points from those on the nodes, shape (pressure, point): one polynomial per cell."""
-    cell = np.repeat(np.arange(cells.start.size - 1), np.diff(cells.start))
-    place = 2.0 * (points - cells.first_edge - cell * cells.width) / cells.width - 1.0
-    coefficient = _TO_POWERS @ on_nodes.reshape(on_nodes.shape[0], -1, _NODES, 1)
-    value = np.zeros((on_nodes.shape[0], points.size))
-    for power in reversed(range(_NODES)):
-        value *= place
-        value += coefficient[:, cell, power, 0]
-    return value
+    apart = np.maximum(np.arange(cut), NEAR + 1)[:, np.newaxis]
+    convergence = math.hypot(0.5, 1.0 / _LORENTZ_WIDTHS) / (apart[:, 0] - 0.5)
+    terms = np.minimum(np.ceil(math.log(_WORTH) / np.log(convergence)), TERMS).astype(np.int64)
+    place = np.cos((np.arange(_POWERS) + 0.5) * np.pi / _POWERS)  # roots of the Chebyshev polynomial
+    values = (1.0 / (apart + 0.5 * place))[:, np.newaxis] ** np.arange(2.0, 2.0 + TERMS)[:, np.newaxis]
+    return terms, np.ascontiguousarray(values @ np.linalg.inv(np.vander(place, increasing=True)).T)
 
 
 def _threads() -> int:

@@ -248,6 +248,22 @@ def test_reference_many_stretches():
     np.testing.assert_allclose(fast, slow, rtol=1e-4, atol=1e-10 * slow.max())
 
 
+@pytest.mark.parametrize("cut", [8, 9, 25, 70])
+@pytest.mark.parametrize("subtract", [False, True])
+def test_series_of_any_cells(monkeypatch, cut, subtract):
+    """However wide the cells whose lines share a series, up to lines that just converge: 3e-5 from sums without."""
+    lines, grid = random_lines(400, 2960.0, 3140.0, seed=7), np.linspace(3000.0, 3100.0, 3001)
+    widest_atm = 25.0 / cut / crosssections._LORENTZ_WIDTHS / 0.3
+    kwargs = {"temperature_k": 296.0, "self_fraction": 1.0, "pressures_bar": [1e-6, 0.01, widest_atm * ATM]}
+    monkeypatch.setattr(crosssections, "_cells_in_a_wing", lambda points, lines, wing: 0)
+    plain = cross_sections(lines, grid, **kwargs)
+    one = cross_sections(lines, grid, subtract_at_wing=subtract, **kwargs)
+    monkeypatch.setattr(crosssections, "_cells_in_a_wing", lambda points, lines, wing: cut)
+    other = cross_sections(lines, grid, subtract_at_wing=subtract, **kwargs)
+    assert np.all(np.abs(other - one) <= 3e-5 * plain)
+    assert np.any(other != one)
+
+
 @settings(derandomize=True, deadline=None, max_examples=60)
 @given(
     seed=st.integers(0, 10**6),
