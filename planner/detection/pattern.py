@@ -22,7 +22,7 @@ from numpy.typing import NDArray
 
 from planner.detection.worth import Channel, Occurrence
 
-__all__ = ["Evidence", "Levels", "PatternBits", "bits_of_evidence", "pattern_bits"]
+__all__ = ["Evidence", "Levels", "PatternBits", "bits_of_evidence", "lone_evidence", "pattern_bits"]
 
 Array = NDArray[np.float64]
 
@@ -126,6 +126,11 @@ def bits_of_evidence(evidence: Evidence, prior: float) -> tuple[float, float]:
     return max(float(bits), 0.0), float(np.sqrt(variance))
 
 
+def lone_evidence(levels: Levels, rng: np.random.Generator, draws: int) -> Evidence:
+    """Evidence of drawn amplitudes of one gas by itself."""
+    return _drawn([levels], np.eye(1), rng, draws)[0]
+
+
 def _groups(correlation: Array) -> list[tuple[int, ...]]:
     """Members linked by their correlations, in groups of `_LARGEST` at most."""
     for link in _LINKS:
@@ -149,8 +154,7 @@ def _group_evidence(
 ) -> tuple[Evidence, list[Evidence]]:
     """Evidence of drawn observations of one group, and the same with each member's amplitude left free."""
     levels = [Levels.make(*member, _LEVELS[len(members)]) for member in members]
-    seen = [_observed(levels, kind, correlation, rng, draws) for kind in ("if_true", "if_false")]
-    whole = Evidence(in_true=_ratio(levels, correlation, seen[0]), in_false=_ratio(levels, correlation, seen[1]))
+    whole, seen = _drawn(levels, correlation, rng, draws)
     lost = []
     for index in range(len(levels)):
         rest = [i for i in range(len(levels)) if i != index]
@@ -160,6 +164,15 @@ def _group_evidence(
         ratios = [_ratio(others, left, v[:, rest] - np.outer(v[:, index], slope)) for v in seen]
         lost.append(Evidence(in_true=ratios[0], in_false=ratios[1]))
     return whole, lost
+
+
+def _drawn(
+    levels: Sequence[Levels], correlation: Array, rng: np.random.Generator, draws: int
+) -> tuple[Evidence, list[Array]]:
+    """Evidence of drawn observations, and the observations of either kind of world, ``(draw, member)``."""
+    seen = [_observed(levels, kind, correlation, rng, draws) for kind in ("if_true", "if_false")]
+    ratios = [_ratio(levels, correlation, v) for v in seen]
+    return Evidence(in_true=ratios[0], in_false=ratios[1]), seen
 
 
 def _observed(levels: Sequence[Levels], kind: str, correlation: Array, rng: np.random.Generator, draws: int) -> Array:

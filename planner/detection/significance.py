@@ -133,7 +133,7 @@ class Measurement:
         count = len(self.nuisances)
         design = np.vstack([whitened[:, 1:], np.eye(count)])
         target = np.concatenate([whitened[:, 0], np.zeros(count)])
-        orthogonal, _ = linalg.qr(design, mode="economic")
+        orthogonal, _ = np.linalg.qr(design)
         return float(np.linalg.norm(target - orthogonal @ (orthogonal.T @ target)))
 
     def transits_for(self, snr: float) -> float | None:

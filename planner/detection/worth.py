@@ -15,6 +15,7 @@ with the means over the range for h. The worth is the mutual information between
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from math import log, pi, sqrt
 
 import numpy as np
@@ -65,9 +66,12 @@ class Response:
         if not np.all(self.snr > 0):
             return np.interp(ln_mixing_ratio, self.ln_mixing_ratio, self.snr)
         first, last = self.ln_mixing_ratio[[0, -1]]
-        curve = interpolate.PchipInterpolator(self.ln_mixing_ratio, np.log(self.snr))
         below = np.minimum(ln_mixing_ratio - first, 0.0)
-        return np.asarray(np.exp(curve(np.clip(ln_mixing_ratio, first, last)) + below))
+        return np.asarray(np.exp(self._curve(np.clip(ln_mixing_ratio, first, last)) + below))
+
+    @cached_property
+    def _curve(self) -> interpolate.PchipInterpolator:
+        return interpolate.PchipInterpolator(self.ln_mixing_ratio, np.log(self.snr))
 
     def mixing_ratio_for(self, snr: float) -> float | None:
         """The lowest mixing ratio whose expected significance reaches ``snr``; None if none does up to the last."""

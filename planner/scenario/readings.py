@@ -12,6 +12,7 @@ import re
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from difflib import get_close_matches
+from functools import lru_cache
 from pathlib import Path
 from typing import Any, Protocol
 
@@ -115,6 +116,11 @@ def quantity(text: str) -> u.Quantity:
         raise ValueError("the unit is missing")
     if _NUMBER_GOES_ON.match(name):
         raise ValueError(f'"{name}" is not a unit; write the number without spaces, with a point for decimals')
+    return float(number) * _unit(name)
+
+
+@lru_cache(maxsize=256)
+def _unit(name: str) -> u.UnitBase:
     try:
         with u.add_enabled_units(_MORE_UNITS):
             unit = u.Unit(name)
@@ -122,7 +128,7 @@ def quantity(text: str) -> u.Quantity:
         raise ValueError(f'"{name}" is not a unit') from None
     if not _is_one_unit(unit):
         raise ValueError(f'"{name}" multiplies numbers; write one number and one unit')
-    return float(number) * unit
+    return unit
 
 
 def _is_one_unit(unit: u.UnitBase) -> bool:

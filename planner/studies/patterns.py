@@ -12,9 +12,8 @@ from math import ceil
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import special
 
-from planner.detection.pattern import Evidence, Levels, bits_of_evidence, pattern_bits
+from planner.detection.pattern import Evidence, Levels, bits_of_evidence, lone_evidence, pattern_bits
 from planner.detection.significance import Measurement, target_snr
 from planner.detection.worth import Channel, Occurrence
 from planner.scenario.records import Case
@@ -111,13 +110,7 @@ def _greedy(candidates: Sequence[Candidate], prior: float, rng: np.random.Genera
 def _evidence(candidate: Candidate, rng: np.random.Generator) -> Evidence:
     """Log likelihood ratios of drawn amplitudes of one gas."""
     levels = Levels.make(candidate.channel, candidate.if_true, candidate.if_false, _LEVELS)
-    ratios = []
-    for chances in (levels.if_true, levels.if_false):
-        z = rng.choice(levels.snr, size=_SEARCH_DRAWS, p=chances) + rng.standard_normal(_SEARCH_DRAWS)
-        exponent = -0.5 * (z[:, None] - levels.snr) ** 2
-        true, false = (special.logsumexp(exponent, b=kind, axis=1) for kind in (levels.if_true, levels.if_false))
-        ratios.append(true - false)
-    return Evidence(in_true=ratios[0], in_false=ratios[1])
+    return lone_evidence(levels, rng, _SEARCH_DRAWS)
 
 
 class _Judge:
@@ -168,10 +161,9 @@ class _Judge:
     def _see(self, gases: tuple[str, ...]) -> list[tuple[Measurement, Array]]:
         survey, workshop = self._survey, self._survey.workshop
         case = Case(gases=gases, mixing_ratios=tuple(map(survey.reference, gases)))
-        there = workshop.thin.binned(case, shares_of=gases)
-        null = workshop.thin.binned(case, transparent=gases)
+        there = survey.model.binned(case, shares_of=gases)
+        null = survey.model.binned(case, transparent=gases)
         nuisances = survey.nuisances_of(gases)
-        workshop.opacities.let_go()
         result = []
         for index, view in enumerate(workshop.views):
             usable = np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated

@@ -22,7 +22,7 @@ from planner.scenario.records import Case
 from planner.studies.beliefs import MOST_RATIO, believed_gas, span
 from planner.studies.choices import Resembling
 from planner.studies.contamination import bin_factors, region_directions
-from planner.studies.forward import BinnedDepth
+from planner.studies.forward import BinnedDepth, ForwardModel
 from planner.studies.nuisances import Direction, directions
 from planner.studies.plan import plan_row
 from planner.studies.results import PlanRow
@@ -33,6 +33,7 @@ __all__ = ["Curve", "Survey", "snr_after"]
 
 Array = NDArray[np.float64]
 
+_STRIDE = 4
 _NODE_DEX = 1.3
 _NODES = (4, 6)
 """Computed mixing ratios per gas: about one per so many decades from the top, within these numbers."""
@@ -42,7 +43,7 @@ _NO_GAS = Case(gases=(), mixing_ratios=())
 _MOST_SNR = 1e4
 """What an S/N without any limit is taken as."""
 _AT_ONCE = 8
-"""Gases whose tables and lists are held in memory together: 0.1 GB each with three modes."""
+"""Gases whose tables and lists of lines are held in memory together."""
 _SAME_LN = 1e-3
 """Mixing ratios closer than this in their logarithm count as one."""
 _NOTICED_SNR = 0.5
@@ -75,6 +76,8 @@ class Survey:
 
     Attributes
     ----------
+    model : ForwardModel
+        On every fourth sample, with tables of its own: a quarter of those of the whole grid to build, check and read.
     sights : dict of gas to Sight
         At the references.
     curves : dict of (gas, mode's position) to Curve
@@ -86,6 +89,12 @@ class Survey:
 
     def __init__(self, workshop: Workshop, hypothesis: str, transits: Sequence[int], progress: Progress) -> None:
         self.workshop, self.scenario = workshop, workshop.scenario
+        index = np.arange(0, workshop.opacities.grid.count, _STRIDE)
+        self.model = ForwardModel(
+            self.scenario,
+            workshop.opacities.selection(index, own_tables=True),
+            [view.means(_STRIDE) for view in workshop.views],
+        )
         self.transits = transits
         self.sights: dict[str, Sight] = {}
         self.curves: dict[tuple[str, int], Curve] = {}
@@ -112,13 +121,14 @@ class Survey:
                 self._shapes[gas] = self._shape(gas)
             source = self.workshop.library.gas(gas)
             self.line_data += [*source.provenance, *source.partial]
-            self._let_go(all_of_it=number % _AT_ONCE == _AT_ONCE - 1)
+            if number % _AT_ONCE == _AT_ONCE - 1:
+                self._let_go()
         self._alike = {gas: sharing_bands(gas) for gas in self.sights}
         for other in dict.fromkeys(other for alike in self._alike.values() for other in alike):
             known = {*self._shapes, *self.scenario.air()}
             if other not in known and self.workshop.opacities.has_data(other):
                 self._shapes[other] = self._shape(other)
-                self._let_go(all_of_it=True)
+                self._let_go()
 
     def reference(self, gas: str) -> float:
         """Geometric middle of the range where the hypothesis is true."""
@@ -162,23 +172,21 @@ class Survey:
             f"{' and '.join(leading)}",
         )
 
-    def _let_go(self, all_of_it: bool = False) -> None:
-        """Free the tables of the whole grid; now and then also those on few samples and the lists of lines."""
+    def _let_go(self) -> None:
+        """Free the tables and lists of lines held in memory; the store has them."""
         self.workshop.opacities.let_go()
-        if all_of_it:
-            self.workshop.thin.opacities.let_go()
-            self.workshop.library.gas.cache_clear()
+        self.model.opacities.let_go()
+        self.workshop.library.gas.cache_clear()
 
     @cached_property
     def _common(self) -> list[Direction]:
         return self._directions(_NO_GAS)
 
     def _directions(self, case: Case) -> list[Direction]:
-        thin = self.workshop.thin
         others = [gas for gas in self.scenario.air(case) if gas not in case.gases]
         views, star = self.workshop.views, self.scenario.star
-        null = through(self._factors, thin.binned(case, shares_of=others, transparent=case.gases))
-        return [*directions(thin, case, null, views), *region_directions(star, null, views)]
+        null = through(self._factors, self.model.binned(case, shares_of=others, transparent=case.gases))
+        return [*directions(self.model, case, null, views), *region_directions(star, null, views)]
 
     @cached_property
     def _factors(self) -> tuple[Array, ...]:
@@ -188,7 +196,7 @@ class Survey:
     def _seen(self, gas: str, ratio: float) -> tuple[BinnedDepth, ...]:
         """The spectrum with some of a gas, with its share, as the star makes it look."""
         case = Case(gases=(gas,), mixing_ratios=(ratio,))
-        return through(self._factors, self.workshop.thin.binned(case, shares_of=[gas]))
+        return through(self._factors, self.model.binned(case, shares_of=[gas]))
 
     def _sight(self, gas: str, ratio: float, nuisances: list[Direction]) -> Sight:
         case = Case(gases=(gas,), mixing_ratios=(ratio,))
