@@ -203,7 +203,9 @@ def _checked(
     ):
         if not (right and math.isfinite(value)):
             raise RangeError(f"{name}: expected {expected}, got {value!r}")
-    return np.ascontiguousarray(grid), np.ascontiguousarray(pressures / BAR_PER_ATM)
+    return np.array(
+        grid
+    ), pressures / BAR_PER_ATM  # a copy of the grid, since compiled code takes none that is read-only
 
 
 def _line_shapes(lines: Lines, temperature_k: float, self_fraction: float, width_factor: float) -> Floats:

@@ -301,6 +301,18 @@ def test_shape_and_emptiness():
         assert function(one_line(), [], pressures_bar=[1.0], **kwargs).shape == (1, 0)
 
 
+def test_any_kind_of_array():
+    """Grids that are read-only, strided or of whole numbers are as good as others."""
+    grid = np.arange(2990.0, 3010.0, 0.5)
+    kwargs = {"temperature_k": 296.0, "pressures_bar": [0.1]}
+    expected = cross_sections(one_line(), grid, **kwargs)
+    strided = np.repeat(grid, 2)[::2]
+    strided.flags.writeable = False
+    np.testing.assert_array_equal(cross_sections(one_line(), strided, **kwargs), expected)
+    whole = cross_sections(one_line(), np.arange(2990, 3010), **kwargs)
+    np.testing.assert_allclose(whole, expected[:, ::2], rtol=1e-12)
+
+
 @pytest.mark.parametrize(
     ("change", "message"),
     [
