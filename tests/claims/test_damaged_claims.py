@@ -1,8 +1,9 @@
-"""Two hundred damaged claims and spectra: one clear message each, no traceback, exit status 2."""
+"""Two hundred damaged claims, and as many spectra: one clear message each, no traceback, exit status 2."""
 
 from __future__ import annotations
 
 import random
+import re
 
 import click
 import pytest
@@ -18,17 +19,17 @@ SPECTRUM = "from [um],to [um],depth [ppm],error [ppm]\n" + "".join(
     f"{3 + 0.1 * k:.1f},{3.1 + 0.1 * k:.1f},{5000 + k},{30 + k}\n" for k in range(12)
 )
 JUNK = ["\x00", '"x', "[", "]]", "=", "{", "nan", "-1e999", "\\u", "'''", "٣", "#\n[claim]\n"]
-COUNT = 100
+COUNT = 200
 
 
 def damaged_claim(number: int) -> str:
-    """A claim with one thing wrong: a value lost, garbled, of the wrong kind, cut off, or a key misspelt."""
+    """A claim with one thing wrong: a value garbled, of the wrong kind or unit, cut off, or a key misspelt or twice."""
     rng = random.Random(number)
     lines = starting_claim().splitlines()
     keys = [i for i, line in enumerate(lines) if " = " in line and not line.startswith("#")]
     place = rng.choice(keys)
     key, _, value = lines[place].partition(" = ")
-    kind = number % 5
+    kind = number % 6
     if kind == 0:
         lines[place] = f"{key}x = {value}"
     elif kind == 1:
@@ -37,8 +38,12 @@ def damaged_claim(number: int) -> str:
         lines[place] = f"{key} = {rng.choice(['-5', '[[1], 2]', '{ a = { b = 1 } }', '1979-05-27', 'inf', '[]'])}"
     elif kind == 3:
         lines = [*lines[:place], lines[place][: len(key) + 2]]
-    else:
+    elif kind == 4:
         lines.insert(place, lines[place])
+    else:
+        place = rng.choice([i for i in keys if re.search(r'"[\d.]+ \S+"', lines[i])])
+        wrong = rng.choice(["", "furlong", "mol", "5 m", ",5 ppm", "um ppm"])
+        lines[place] = re.sub(r'"([\d.]+) \S+"', rf'"\1 {wrong}"', lines[place], count=1)
     return "\n".join(lines)
 
 
