@@ -18,9 +18,10 @@ from planner.atmosphere.layers import Air
 __all__ = ["TransitDepth", "transit_depth"]
 
 _BLOCK = 512
-"""Wavenumbers per block: its arrays fit a core's caches."""
+"""Most wavenumbers per block: its arrays fit a core's caches."""
 _BLOCKS_PER_THREAD = 8
 """Fewer are done sooner than another thread is started."""
+_LOG2_OF_10 = math.log2(10.0)
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -164,14 +165,14 @@ def _one_pass(
     # imported here so that whoever only needs the records does not wait for the compiler
     from numba import config
 
-    from planner.atmosphere.kernels import integrate_chords, slant_depths
+    from planner.atmosphere.kernels import exp2_in_place, integrate_chords, slant_depths
 
     columns, squared = chords.columns_per_cm2(), chords.squared_columns_per_cm5()
     profile = np.stack([columns / columns[0], squared / squared[0], chords.area_weight_km2]).astype(np.float32)
-    smooth_depth, pair_depth = (
-        (columns[0] * smooth).astype(np.float32),
-        (squared[0] * paired).astype(np.float32),
-    )
+    size = smooth.shape[1]
+    blocks = math.ceil(size / _BLOCK)
+    width = math.ceil(size / blocks)
+    smooth_depth, pair_depth = _in_blocks(columns[0] * smooth, width), _in_blocks(squared[0] * paired, width)
     # gases mostly share their pressures, and the weights are the dearest part when the wavenumbers are few
     rows = {gas.pressures_bar.tobytes(): gas.pressures_bar for gas in gases if gas.log10_cross_section is not None}
     weights = {key: row_weights(chords, pressures) for key, pressures in rows.items()}
@@ -180,28 +181,37 @@ def _one_pass(
         for gas in gases
         if gas.log10_cross_section is not None and (ratio := air.mixing_ratios[gas.formula]) > 0
     ]
-    size = smooth.shape[1]
-    result = np.empty((2 + 2 * len(shares), size))
+    result = np.zeros((blocks, 2 + 2 * len(shares), width), dtype=np.float32)
 
-    def work(starts: range) -> None:
-        depths = np.empty((1 + len(shares), columns.size, _BLOCK), dtype=np.float32)
-        sums = np.empty((result.shape[0] + 2, _BLOCK), dtype=np.float32)
+    def work(mine: range) -> None:
+        depths = np.empty((1 + len(shares), columns.size, width), dtype=np.float32)
+        light = np.empty((1 + len(shares), width), dtype=np.float32)
         most_rows = max((padded.shape[1] for _, _, padded, _ in tables), default=0)
-        cross_section = np.zeros((most_rows, _BLOCK), dtype=np.float32)
-        for start in starts:
-            count = min(_BLOCK, size - start)
+        cross_section = np.zeros((most_rows, width), dtype=np.float32)
+        for block in mine:
             depths[:] = 0
             for row, table, padded, rows_seen in tables:
-                slant_depths(table, start, count, padded, rows_seen, cross_section, depths[row])
-            integrate_chords(depths, smooth_depth, pair_depth, profile, start, count, sums, result)
+                some = table[: rows_seen[0], block * width : (block + 1) * width]  # the first chord sees most
+                cross_section[: some.shape[0], : some.shape[1]] = some
+                exp2_in_place(cross_section[: some.shape[0]].reshape(-1), _LOG2_OF_10)
+                slant_depths(cross_section, padded, rows_seen, depths[row])
+            integrate_chords(depths, smooth_depth[block], pair_depth[block], profile, light, result[block])
 
-    threads = min(config.NUMBA_NUM_THREADS, math.ceil(size / _BLOCK) // _BLOCKS_PER_THREAD)
+    threads = min(config.NUMBA_NUM_THREADS, blocks // _BLOCKS_PER_THREAD)
     if threads <= 1:
-        work(range(0, size, _BLOCK))
+        work(range(blocks))
     else:
         with ThreadPoolExecutor(threads) as pool:
-            list(pool.map(work, (range(i * _BLOCK, size, threads * _BLOCK) for i in range(threads))))
-    return result
+            list(pool.map(work, (range(i, blocks, threads) for i in range(threads))))
+    return result.swapaxes(0, 1).reshape(result.shape[1], -1)[:, :size].astype(np.float64)
+
+
+def _in_blocks(values: NDArray[np.float64], width: int) -> NDArray[np.float32]:
+    """Rows ``(row, wavenumber)`` cut into blocks ``(block, row, width)``, the last filled up with zeros."""
+    blocks = math.ceil(values.shape[1] / width)
+    filled = np.zeros((values.shape[0], blocks * width), dtype=np.float32)
+    filled[:, : values.shape[1]] = values
+    return np.ascontiguousarray(filled.reshape(values.shape[0], blocks, width).swapaxes(0, 1))
 
 
 def _padded(weights: NDArray[np.float64]) -> tuple[NDArray[np.float32], NDArray[np.int64]]:
