@@ -1,9 +1,9 @@
 """The store of computed tables: arrays on disk, named by what they were computed from.
 
 An entry is one ``.npy`` file ``<key>-<checksum>.npy``: the key is a hash of everything the array depends on, the
-checksum is that of the file's bytes. A file appears by one atomic rename, so two processes building the same entry
-end with one good file, and a build that is killed leaves no half-written entry. A file whose bytes do not give its
-checksum is removed, rebuilt, and said.
+checksum is that of the file's bytes. A file appears by one atomic rename, so a build that is killed leaves no
+half-written entry. Of two processes that want the same entry the second waits for the first; the lock goes with the
+process that holds it. A file whose bytes do not give its checksum is removed, rebuilt, and said.
 """
 
 from __future__ import annotations
@@ -14,6 +14,7 @@ import os
 import tempfile
 import zlib
 from collections.abc import Callable, Iterator, Mapping
+from contextlib import contextmanager, suppress
 from pathlib import Path
 from typing import Any
 
@@ -23,6 +24,8 @@ from numpy.typing import NDArray
 __all__ = ["Store", "digest"]
 
 DEFAULT_LIMIT_BYTES = 6_000_000_000
+_PATIENCE_S = 60.0
+"""No single entry takes as long to build: whoever holds the lock then is stopped, or the file system forgot it."""
 
 
 def digest(*parts: bytes | str) -> str:
@@ -75,13 +78,21 @@ class Store:
         build : callable
             Computes the array when it is not there.
         """
-        name = digest(json.dumps(key, sort_keys=True))
+        name = _name(key)
         found = self._read(group, name)
         if found is not None:
             return found
-        array = np.ascontiguousarray(build())
-        self._write(group, name, array)
+        with self._alone(group, name):
+            found = self._read(group, name)  # another process may have built it while we waited
+            if found is not None:
+                return found
+            array = np.ascontiguousarray(build())
+            self._write(group, name, array)
         return array
+
+    def has(self, group: str, key: Mapping[str, Any]) -> bool:
+        """Whether there is an entry for a key; that it is whole is seen when it is fetched."""
+        return any((self.folder / group).glob(f"{_name(key)}-*.npy"))
 
     def entries(self) -> Iterator[Path]:
         """All stored files."""
@@ -114,6 +125,24 @@ class Store:
             path.unlink(missing_ok=True)
         return None
 
+    @contextmanager
+    def _alone(self, group: str, name: str) -> Iterator[None]:
+        """Keeps other processes off an entry; where that cannot be, two may build the same, which does no harm."""
+        from filelock import FileLock
+
+        file = self.folder / group / f"{name}.lock"
+        lock = FileLock(file, timeout=_PATIENCE_S)
+        with suppress(OSError, NotImplementedError):  # a folder that cannot be written, no locks, out of patience
+            file.parent.mkdir(parents=True, exist_ok=True)
+            lock.acquire()
+        try:
+            yield
+        finally:
+            if lock.is_locked:
+                lock.release()
+                with suppress(OSError):
+                    file.unlink(missing_ok=True)
+
     def _write(self, group: str, name: str, array: NDArray[Any]) -> None:
         if not self._writable:
             return
@@ -145,6 +174,10 @@ class Store:
                 path.unlink(missing_ok=True)
             else:
                 self._size_bytes += size
+
+
+def _name(key: Mapping[str, Any]) -> str:
+    return digest(json.dumps(key, sort_keys=True))
 
 
 def _checksum(path: Path) -> int:

@@ -15,6 +15,7 @@ from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.opacity import Opacities
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
+from planner.studies.ahead import build_ahead
 from planner.studies.contamination import bin_factors, contaminated, region_directions
 from planner.studies.forward import BinnedDepth, ForwardModel
 from planner.studies.nuisances import Direction, directions
@@ -62,6 +63,7 @@ class Workshop:
     ) -> None:
         self.scenario = scenario
         self.store = Store()
+        build_ahead(self._gases(), self.store, owner=self)
         self.library = LineLibrary(self.store, lines_folder)
         grid = observing_grid(scenario, samples_per_unit_ln)
         self.views = view_modes(scenario, grid)
@@ -83,11 +85,15 @@ class Workshop:
         opacities = self.opacities if stride == 1 else self.opacities.selection(index)
         return ForwardModel(self.scenario, opacities, [view.means(stride) for view in self.views])
 
+    def _gases(self) -> dict[str, None]:
+        """Every gas of the scenario, the searched ones first."""
+        atmosphere = self.scenario.atmosphere
+        searched = [gas for case in self.scenario.cases for gas in case.gases]
+        return dict.fromkeys([*searched, *atmosphere.absorbers, *atmosphere.background])
+
     def line_data(self) -> tuple[str, ...]:
         """One sentence per source used and per stretch not used, for every gas of the scenario."""
-        atmosphere = self.scenario.atmosphere
-        gases = dict.fromkeys([*(g for c in self.scenario.cases for g in c.gases), *atmosphere.absorbers])
-        gases |= dict.fromkeys(atmosphere.background)
+        gases = self._gases()
         sentences: list[str] = []
         for gas in gases:
             if self.opacities.has_data(gas):

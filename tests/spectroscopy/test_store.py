@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import multiprocessing as mp
 import os
+import time
+from concurrent.futures import ThreadPoolExecutor
 
 import numpy as np
 import pytest
@@ -78,23 +80,43 @@ def test_clear_removes_everything(store):
     assert list(store.entries()) == []
 
 
-def _build_in_process(folder):
-    Store(folder).fetch("g", {"n": 1}, lambda: np.arange(200_000.0))
+def _build_in_process(folder, log):
+    def build():
+        with log.open("a") as file:
+            file.write("built\n")
+        time.sleep(1.0)
+        return np.arange(200_000.0)
+
+    Store(folder).fetch("g", {"n": 1}, build)
 
 
 def test_two_processes_end_with_one_good_entry(tmp_path):
-    """Two runs at once on one store leave one entry that reads well."""
-    context = mp.get_context("spawn")
-    runs = [context.Process(target=_build_in_process, args=(tmp_path,)) for _ in range(2)]
+    """Of two runs at once on one store one builds and the other waits; they leave one entry that reads well."""
+    context, log, tmp_path = mp.get_context("spawn"), tmp_path / "log.txt", tmp_path / "store"
+    runs = [context.Process(target=_build_in_process, args=(tmp_path, log)) for _ in range(2)]
     for run in runs:
         run.start()
     for run in runs:
         run.join()
         assert run.exitcode == 0
     store = Store(tmp_path)
+    assert log.read_text() == "built\n"
     assert len(list(store.entries())) == 1
     np.testing.assert_array_equal(store.fetch("g", {"n": 1}, never), np.arange(200_000.0))
     assert store.notices == []
+    assert list(tmp_path.glob("g/*.lock")) == []
+
+
+def test_a_holder_that_does_not_end_is_not_waited_for_long(store, monkeypatch):
+    """Patience ends: the entry is built all the same."""
+    monkeypatch.setattr("planner.spectroscopy.store._PATIENCE_S", 0.1)
+
+    def build_again():
+        return store.fetch("g", {"n": 1}, lambda: np.ones(3))
+
+    with ThreadPoolExecutor(1) as pool:
+        array = store.fetch("g", {"n": 1}, lambda: pool.submit(build_again).result())
+    assert array.sum() == 3
 
 
 def test_interrupted_build_leaves_no_entry(store):

@@ -29,6 +29,7 @@ __all__ = [
     "build_lines",
     "embedded_formulas",
     "lines_from_table",
+    "lines_missing",
     "part_lines",
     "read_constants",
     "smooth_cross_section",
@@ -127,8 +128,12 @@ def build_lines(constants: Constants, store: Store) -> Lines | None:
     """All lines of a molecule; built once, then read from the store. None if it has no line parts."""
     if not constants.line_parts:
         return None
-    key = {"list": constants.digest, "generators": _generators_digest()}
-    return lines_from_table(store.fetch("lists", key, lambda: table_from_lines(_generate(constants))))
+    return lines_from_table(store.fetch("lists", _key(constants), lambda: table_from_lines(_generate(constants))))
+
+
+def lines_missing(constants: Constants, store: Store) -> bool:
+    """Whether a molecule has line parts whose list is not in the store yet."""
+    return bool(constants.line_parts) and not store.has("lists", _key(constants))
 
 
 def part_lines(constants: Constants, part: Mapping[str, Any]) -> Lines:
@@ -157,6 +162,10 @@ def smooth_cross_section(
     for part in constants.smooth_parts:
         total += _function(_SMOOTH_KINDS[part["kind"]])(part, wavenumber_per_cm, temperature_k)
     return total
+
+
+def _key(constants: Constants) -> dict[str, str]:
+    return {"list": constants.digest, "generators": _generators_digest()}
 
 
 def _generate(constants: Constants) -> Lines:

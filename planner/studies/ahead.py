@@ -1,0 +1,74 @@
+"""What a first run needs and the store has not got yet, made on a second core while the first reads and compiles.
+
+A second interpreter builds missing line lists, the last needed first, and then compiles the kernels of the
+atmosphere. It shares nothing with the first but the store and numba's cache: whatever it has not finished, or could
+not do, the first does itself when it comes to need it, and says what is wrong with it.
+"""
+
+from __future__ import annotations
+
+import os
+import subprocess
+import sys
+import weakref
+from collections.abc import Iterable, Sequence
+from importlib import import_module
+from pathlib import Path
+
+from planner.spectroscopy.lists.build import build_lines, embedded_formulas, lines_missing, read_constants
+from planner.spectroscopy.store import Store
+
+__all__ = ["build_ahead"]
+
+
+def build_ahead(gases: Iterable[str], store: Store, *, owner: object) -> subprocess.Popen[bytes] | None:
+    """Start to build the lists of some gases in another process; None where that would gain nothing.
+
+    A single list is built sooner than another interpreter has come up, and with one core there is nothing to share.
+
+    Parameters
+    ----------
+    gases : iterable of str
+        Formulas in the order in which they will be needed, with embedded data or without.
+    store : Store
+        Where the lists belong.
+    owner : object
+        The process is stopped, if it still runs, when this is let go of and when the program ends.
+    """
+    known = embedded_formulas()
+    missing = [gas for gas in gases if gas in known and lines_missing(read_constants(gas), store)]
+    if len(missing) < 2 or _threads() < 2:
+        return None
+    process = subprocess.Popen(
+        [sys.executable, "-m", __name__, *reversed(missing)],
+        cwd=Path(__file__).parents[2],  # there -m finds this very package
+        env={**os.environ, "LIMBCAST_STORE": str(store.folder.absolute())},
+        stdin=subprocess.DEVNULL,
+        stdout=subprocess.DEVNULL,
+        stderr=subprocess.DEVNULL,
+    )
+    weakref.finalize(owner, _stop, process)
+    return process
+
+
+def _threads() -> int:
+    """As many as numba would use, which the user may have limited."""
+    from numba import config
+
+    return int(config.NUMBA_NUM_THREADS)
+
+
+def _stop(process: subprocess.Popen[bytes]) -> None:
+    process.kill()
+    process.wait()
+
+
+def _main(gases: Sequence[str]) -> None:
+    store = Store()
+    for gas in gases:
+        build_lines(read_constants(gas), store)
+    import_module("planner.atmosphere.kernels")
+
+
+if __name__ == "__main__":
+    _main(sys.argv[1:])
