@@ -22,7 +22,6 @@ from planner.studies.observe import ModeView, source_of_light
 from planner.studies.remedies import Adviser
 from planner.studies.results import BandShare, BinnedSpectrum, Counts, PlanResult, PlanRow, StarMimic, Verdict
 from planner.studies.simulation import simulate_search
-from planner.studies.spread import add_spread
 from planner.studies.workshop import Progress, Sight, Workshop, see
 
 __all__ = [
@@ -116,7 +115,11 @@ def plan(
         cautions=(*CAUTIONS, *cautions_about_star(workshop), *_surface_cautions(scenario, rows)),
         version=__version__,
     )
-    return add_spread(workshop, result, draws=spread, progress=progress) if spread else result
+    if not spread:
+        return result
+    from planner.studies.spread import add_spread
+
+    return add_spread(workshop, result, draws=spread, progress=progress)
 
 
 def plan_row(workshop: Workshop, sight: Sight, index: int) -> PlanRow:
