@@ -7,7 +7,7 @@ bands wider than that.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -29,6 +29,8 @@ __all__ = [
     "mimic_cautions",
     "mimicry",
     "region_directions",
+    "region_names",
+    "surface_factor",
 ]
 
 Array = NDArray[np.float64]
@@ -63,6 +65,15 @@ class _Surface:
             region = replace(region, fraction=region.fraction + widths * region.fraction_error)
         return replace(self, spots=region) if which == "spots" else replace(self, faculae=region)
 
+    def on_the_disc(self) -> _Surface:
+        """With its shares cut to what a disc has: none is negative, and together they are at most 1."""
+        whole = max(1.0, sum(max(0.0, region.fraction) for region in (self.spots, self.faculae) if region is not None))
+
+        def cut(region: Region | None) -> Region | None:
+            return replace(region, fraction=max(0.0, region.fraction) / whole) if region is not None else None
+
+        return replace(self, spots=cut(self.spots), faculae=cut(self.faculae))
+
     def has_room(self, name: str, widths: float) -> bool:
         """Whether the shares of the disc stay shares when one of its numbers is moved."""
         moved = self.moved(name, widths)
@@ -84,6 +95,27 @@ class _Surface:
 def bin_factors(star: Star, views: Sequence[ModeView]) -> tuple[Array, ...]:
     """What spots and faculae multiply the depth with, per mode ``(bin,)``; ones for a quiet star."""
     return tuple(_stated(star).factor(view.bins.centre_um) for view in views)
+
+
+def region_names(star: Star) -> tuple[str, ...]:
+    """What is not known exactly of the spots and faculae that a scenario states."""
+    return _stated(star).names
+
+
+def surface_factor(star: Star, widths: Mapping[str, float], wavelength_um: Array) -> Array:
+    """What spots and faculae multiply the depth with once they are moved by some prior widths.
+
+    Parameters
+    ----------
+    star : Star
+    widths : mapping of name to float
+        Names as in `REGION_NAMES`. Shares of the disc stay between none and all of it.
+    wavelength_um : array
+    """
+    surface = _stated(star)
+    for name, width in widths.items():
+        surface = surface.moved(name, width)
+    return surface.on_the_disc().factor(wavelength_um)
 
 
 def contaminated(spectrum: BinnedDepth, factor: Array) -> BinnedDepth:

@@ -51,6 +51,8 @@ class Workshop:
         Real line files to lay over the embedded data.
     samples_per_unit_ln : int, optional
         Finer sampling than the scenario needs, for tests of convergence.
+    view : ModeView, optional
+        What was observed, in place of the scenario's modes.
     """
 
     def __init__(
@@ -60,13 +62,14 @@ class Workshop:
         lines_folder: Path | None = None,
         progress: Progress | None = None,
         samples_per_unit_ln: int | None = None,
+        view: ModeView | None = None,
     ) -> None:
         self.scenario = scenario
         self.store = Store()
         build_ahead(self._gases(), self.store, owner=self)
         self.library = LineLibrary(self.store, lines_folder)
-        grid = observing_grid(scenario, samples_per_unit_ln)
-        self.views = view_modes(scenario, grid)
+        grid = view.grid if view is not None else observing_grid(scenario, samples_per_unit_ln)
+        self.views = [view] if view is not None else view_modes(scenario, grid)
         self.opacities = Opacities(
             self.library,
             self.store,
