@@ -9,13 +9,12 @@ import astropy.units as u
 from pydantic import BeforeValidator, Field, model_validator
 
 from planner.catalogue.fields import GasName, Pair, Question, Words
-from planner.catalogue.problems import parse_as
 from planner.catalogue.readings import OneOf, Span
-from planner.errors import ScenarioError
 from planner.resources import data_folder
 from planner.scenario.beliefs import Beliefs
 from planner.scenario.fields import Record, Switch
 from planner.scenario.readings import FieldProblem, Measure, MixingRatio, Number, Tables
+from planner.scenario.tomlfile import parse_as, read_text
 
 __all__ = ["Evidence", "Finding", "Ledger", "Shown", "parse_ledger", "read_ledger", "starting_ledger"]
 
@@ -144,14 +143,7 @@ def read_ledger(path: str | Path) -> Ledger:
         If the file cannot be read or breaks a rule; every problem is listed with file, line and key.
     """
     path = Path(path)
-    try:
-        text = path.read_text(encoding="utf-8")
-    except FileNotFoundError:
-        raise ScenarioError(f"{path}: no such file; `limbcast new --ledger {path}` writes one to start from") from None
-    except UnicodeDecodeError:
-        raise ScenarioError(f"{path}: not a text file in UTF-8") from None
-    except OSError as error:
-        raise ScenarioError(f"{path}: cannot be read: {error.strerror}") from None
+    text = read_text(path, f"`limbcast new --ledger {path}` writes one to start from")
     return parse_ledger(text, str(path))
 
 

@@ -5,10 +5,10 @@ from __future__ import annotations
 from functools import cache
 from pathlib import Path
 
-from planner.catalogue.problems import parse_as
 from planner.catalogue.records import GasRecord, Hypotheses
 from planner.errors import ScenarioError
 from planner.resources import data_folder
+from planner.scenario.tomlfile import parse_as, read_text
 from planner.spectroscopy.molecules import find_molecule
 
 __all__ = [
@@ -75,7 +75,7 @@ def read_gas(path: str | Path) -> GasRecord:
         If the file cannot be read or breaks a rule; every problem is listed with file, line and key.
     """
     path = Path(path)
-    gas = parse_gas(_text(path), str(path))
+    gas = parse_gas(read_text(path), str(path))
     if gas.formula != path.stem:
         raise ScenarioError(f'{path}: formula: expected that of the file name, "{path.stem}", got "{gas.formula}"')
     return gas
@@ -101,7 +101,7 @@ def read_hypotheses(path: str | Path | None = None) -> Hypotheses:
         If the file cannot be read or breaks a rule.
     """
     path = data_folder("configs") / "hypotheses.toml" if path is None else Path(path)
-    return parse_hypotheses(_text(path), str(path))
+    return parse_hypotheses(read_text(path), str(path))
 
 
 def parse_hypotheses(text: str, where: str) -> Hypotheses:
@@ -122,12 +122,3 @@ def _shipped(formula: str) -> GasRecord:
 
 def _folder() -> Path:
     return data_folder("configs") / "gases"
-
-
-def _text(path: Path) -> str:
-    try:
-        return path.read_text(encoding="utf-8")
-    except UnicodeDecodeError:
-        raise ScenarioError(f"{path}: not a text file in UTF-8") from None
-    except OSError as error:
-        raise ScenarioError(f"{path}: cannot be read: {error.strerror}") from None

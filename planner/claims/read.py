@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from planner.catalogue.problems import parse_as
 from planner.claims.records import Claim
 from planner.errors import ScenarioError
 from planner.instrument.modefiles import list_modes, read_mode
 from planner.resources import data_folder
 from planner.scenario.locate import heading
 from planner.scenario.readings import nearest
+from planner.scenario.tomlfile import parse_as, read_text
 
 __all__ = ["parse_claim", "read_claim", "starting_claim"]
 
@@ -27,14 +27,7 @@ def read_claim(path: str | Path) -> Claim:
         If the file cannot be read, is not TOML, or breaks a rule; every problem is listed with file, line and key.
     """
     path = Path(path)
-    try:
-        text = path.read_text(encoding="utf-8")
-    except FileNotFoundError:
-        raise ScenarioError(f"{path}: no such file; `limbcast new --claim {path}` writes one to start from") from None
-    except UnicodeDecodeError:
-        raise ScenarioError(f"{path}: not a text file in UTF-8") from None
-    except OSError as error:
-        raise ScenarioError(f"{path}: cannot be read: {error.strerror}") from None
+    text = read_text(path, f"`limbcast new --claim {path}` writes one to start from")
     claim = _from_folder(parse_claim(text, str(path)), path.parent)
     _check_mode(claim, text, str(path))
     _check_star(claim, text, str(path))

@@ -10,7 +10,7 @@ from __future__ import annotations
 import re
 from collections.abc import Iterator, Sequence
 
-__all__ = ["heading", "key_lines", "line_of"]
+__all__ = ["dotted", "heading", "key_lines", "line_of"]
 
 Place = tuple[str | int, ...]
 
@@ -30,10 +30,11 @@ _TOKEN = re.compile(
 def heading(text: str, where: str, place: Place) -> str:
     """``file:line: key`` for the head of a message; no line when not even the outermost key is there."""
     line = line_of(text, place)
-    return f"{where}:{line}: {_dotted(place)}" if line else f"{where}: {_dotted(place)}"
+    file = f"{where}:{line}" if line else where
+    return f"{file}: {dotted(place)}" if place else file
 
 
-def _dotted(place: Place) -> str:
+def dotted(place: Place) -> str:
     """``candidates[2].gas``; entries are counted from 1, as a reader of the file would."""
     text = ""
     for key in place:

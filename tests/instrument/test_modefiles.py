@@ -93,7 +93,7 @@ def test_a_file_of_ones_own(tmp_path: Path) -> None:
     [
         ("near-infared-prism", r'got "near-infared-prism"; did you mean "near-infrared-prism"\?'),
         ("xyz", r"known modes: cross-dispersed-near-infrared, grating-3-to-5-um"),
-        ("no/such/file.toml", r"no/such/file\.toml: expected a file with an instrument mode"),
+        ("no/such/file.toml", r"no/such/file\.toml: no such file"),
     ],
 )
 def test_read_mode_invalid(name: str, message: str) -> None:
