@@ -290,6 +290,7 @@ def _write_all(result: PlanResult, folder: Path) -> None:
     from planner.report.ecsv import plan_meta, plan_table, spectra_table, write_table
     from planner.report.figure import plan_figure, write_figure
     from planner.report.jsonio import write_plan_json
+    from planner.report.remedyfigure import remedy_figure
     from planner.report.simulationfigure import simulation_figure
     from planner.report.spreadfigure import spread_figure
 
@@ -301,6 +302,8 @@ def _write_all(result: PlanResult, folder: Path) -> None:
         figures["spread"] = spread_figure(result)
     if any(row.simulation for row in result.rows):
         figures["simulation"] = simulation_figure(result)
+    if any(row.remedies for row in result.rows):
+        figures["remedies"] = remedy_figure(result)
     names = ["plan.json", "plan.ecsv", "spectra.ecsv"]
     for name, figure in figures.items():
         for ending in ("png", "pdf"):

@@ -203,6 +203,7 @@ def _figure(panels: Sequence[_Panel], title: str, made: str, seed: int) -> Figur
             others,
             unusable=not all(panel.spectrum.usable.all() for panel in panels),
             spotted=any(panel.spectrum.contamination_ppm is not None for panel in panels),
+            bands=any(panel.bands for panel in panels),
         )
         add_heading(figure, title, made)
     return figure
@@ -402,7 +403,7 @@ def gas_label(gas: str) -> str:
 
 
 def _add_legend(
-    figure: Figure, others: dict[str, tuple[tuple[float, ...], str]], *, unusable: bool, spotted: bool
+    figure: Figure, others: dict[str, tuple[tuple[float, ...], str]], *, unusable: bool, spotted: bool, bands: bool
 ) -> None:
     handles: list[Line2D | Patch] = [
         Line2D([], [], color="black", lw=1.1, label="all gases"),
@@ -410,7 +411,7 @@ def _add_legend(
         *(Line2D([], [], color=c, dashes=d, lw=0.9, label=f"share of {gas_label(g)}") for g, (d, c) in others.items()),
         *([Line2D([], [], **_CONTAMINATION, label="added by spots, faculae")] if spotted else []),
         Line2D([], [], color="black", marker="o", ms=2.4, mfc="white", mew=0.6, lw=0.6, label="simulated observation"),
-        Patch(facecolor="black", label="best bands"),
+        *([Patch(facecolor="black", label="best bands")] if bands else []),
         *([Patch(**_UNUSABLE, label="not usable")] if unusable else []),
     ]
     figure.legend(

@@ -1,4 +1,4 @@
-"""Figures of spreads and of simulated observations."""
+"""Figures of spreads, of simulated observations and of remedies."""
 
 from __future__ import annotations
 
@@ -11,10 +11,11 @@ from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.text import Text
 from scipy import special
 
+from planner.report.remedyfigure import remedy_figure
 from planner.report.simulationfigure import simulation_figure
 from planner.report.spreadfigure import spread_figure
 from planner.studies.outcomes import Driver, TransitSpread
-from planner.studies.results import Simulation
+from planner.studies.results import Remedy, RemedyKind, Simulation
 
 DRIVERS = {"cloud top": 0.48, "temperature": 0.17, "CH4": 0.09, "CO2": 0.05, "facula temperature": 0.02}
 
@@ -130,11 +131,37 @@ def test_found_and_stated_stand_side_by_side(tried_plan):
     np.testing.assert_allclose(np.interp(middles[half:], *curve.T), heights[half:], atol=0.02 * max(heights))
 
 
-def test_figures_can_be_made_again(spread_plan, tried_plan, tmp_path):
+@pytest.fixture
+def helped_plan(fake_plan):
+    """CFC-12 that a floor stops, and O3 without any bound, with remedies."""
+    floor = Remedy(kind=RemedyKind.FLOOR, enough=True, transits=100, snr=5.0, floor_factor=0.43, floor_ppm=21.5)
+    sky = Remedy(kind=RemedyKind.SKY, enough=False, transits=100, snr=3.3, cloud_top_bar=math.inf)
+    rows = list(fake_plan.rows)
+    rows[3] = replace(rows[3], remedies=(floor, sky))
+    rows[6] = replace(rows[6], remedies=(sky,), marginalised=replace(rows[6].marginalised, snr_limit=math.inf))
+    return replace(fake_plan, rows=tuple(rows))
+
+
+def test_remedies_stand_beside_what_there_is(helped_plan):
+    """A block for each search that has remedies, a bar for each of them and one for the search as it stands."""
+    figure = remedy_figure(helped_plan)
+    assert [len(axes.patches) for axes in figure.axes] == [3, 2]
+    assert [bar.get_width() for bar in figure.axes[0].patches] == [helped_plan.rows[3].marginalised.snr_limit, 5.0, 3.3]
+    texts = [text.get_text() for text in all_texts(figure)]
+    for words in ("a floor of 22 ppm, 0.43 of the present one", "5.00, 100 transits", "no bound, for ever"):
+        assert words in texts
+    assert inside_the_page(figure)
+
+
+def test_figures_can_be_made_again(spread_plan, tried_plan, helped_plan, tmp_path):
     """The same plan gives the same file."""
     from planner.report.figure import write_figure
 
-    for make, plan in ((spread_figure, spread_plan), (simulation_figure, tried_plan)):
+    for make, plan in (
+        (spread_figure, spread_plan),
+        (simulation_figure, tried_plan),
+        (remedy_figure, helped_plan),
+    ):
         for name in ("a.png", "b.png"):
             write_figure(make(plan), tmp_path / name)
         assert (tmp_path / "a.png").read_bytes() == (tmp_path / "b.png").read_bytes()
