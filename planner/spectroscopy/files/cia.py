@@ -106,8 +106,7 @@ def parse_cia(text_or_bytes: str | bytes, where: str) -> tuple[CollisionTable, .
     LineDataError
         On the first header or row that breaks the format, with file, line and field.
     """
-    data = text_or_bytes.encode() if isinstance(text_or_bytes, str) else text_or_bytes
-    rows = printable_rows(data, where)
+    rows = printable_rows(text_or_bytes, where)
     tables = []
     start = 0
     while start < len(rows):

@@ -17,9 +17,9 @@ import numpy as np
 from filelock import FileLock, Timeout
 from numpy.typing import NDArray
 
+from planner.disk import make_folder, write_whole
 from planner.errors import LineDataError, OutputError
 from planner.spectroscopy.coverage import COVERAGE_FILE, Declaration, format_declarations, read_declarations
-from planner.spectroscopy.files.disk import make_folder, write_whole
 from planner.spectroscopy.files.service import LineService
 from planner.spectroscopy.files.widths import format_widths, widths_path
 from planner.spectroscopy.hitran import parse_par

@@ -7,11 +7,12 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 
+from planner.disk import make_folder, write_whole
 from planner.errors import LineDataError
 from planner.spectroscopy.coverage import COVERAGE_FILE, Declaration, format_declarations, read_declarations
 from planner.spectroscopy.files.columns import evenly_spaced, parse_columns
 from planner.spectroscopy.files.describe import descriptions, formulas_in
-from planner.spectroscopy.files.disk import make_folder, read_whole, write_whole
+from planner.spectroscopy.files.disk import read_whole
 from planner.spectroscopy.files.folder import DataFiles, LineFile, kind_of, read_files
 from planner.spectroscopy.files.widths import widths_path
 from planner.spectroscopy.files.xsc import BAR_PER_TORR, CrossSectionTable, format_xsc, parse_xsc

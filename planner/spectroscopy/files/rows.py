@@ -21,7 +21,7 @@ _REPAIRS = (
 _LARGEST_OFF = 0.002  # headers round their largest value to three or four digits
 
 
-def printable_rows(data: bytes, where: str) -> list[bytes]:
+def printable_rows(text_or_bytes: str | bytes, where: str) -> list[bytes]:
     """The rows of a text file, without line ends; blank rows at its end are dropped.
 
     Raises
@@ -29,6 +29,7 @@ def printable_rows(data: bytes, where: str) -> list[bytes]:
     LineDataError
         If the file is empty or a row holds anything but printable ASCII.
     """
+    data = text_or_bytes.encode() if isinstance(text_or_bytes, str) else text_or_bytes
     rows = [row.removesuffix(b"\r") for row in data.split(b"\n")]
     while rows and not rows[-1].strip():
         rows.pop()

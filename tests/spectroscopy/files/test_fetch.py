@@ -270,7 +270,7 @@ def test_progress_ascends_to_the_end(ask):
 def test_an_unwritable_folder(service, tmp_path):
     """A file where the folder should be is refused before anything is asked."""
     (tmp_path / "lines").write_text("in the way")
-    with pytest.raises(OutputError, match="the folder cannot be made"):
+    with pytest.raises(OutputError, match="expected a folder, got a file"):
         fetch_lines(
             order_lines(find_molecule("CO2"), 500.0, 700.0, 0.9), tmp_path / "lines", LineService(service.address),
             today="2026-03-01", progress=lambda text, share: None,

@@ -153,7 +153,7 @@ def test_a_file_where_the_folder_should_be(inbox, tmp_path, store):
     """A folder that cannot be made is one clear error."""
     write_par(inbox / "a.par", lines_of(43))
     (tmp_path / "lines").write_text("in the way")
-    with pytest.raises(OutputError, match="the folder cannot be made"):
+    with pytest.raises(OutputError, match="expected a folder, got a file"):
         import_files([inbox / "a.par"], tmp_path / "lines", store)
 
 
