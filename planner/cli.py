@@ -128,7 +128,7 @@ def plan(
     if json_file is not None and not to_stdout:
         write_plan_json(result, json_file)
     if out is not None:
-        _write_all(result, out)
+        _write_all(result, out, remedies=remedies)
 
 
 @cli.command()
@@ -285,8 +285,8 @@ def _planned(scenario: Scenario, lines_folder: Path | None, **asked: Any) -> Pla
         return study(scenario, lines_folder=lines_folder, progress=progress, **asked)
 
 
-def _write_all(result: PlanResult, folder: Path) -> None:
-    """Everything a plan leaves as files."""
+def _write_all(result: PlanResult, folder: Path, *, remedies: bool = False) -> None:
+    """Everything a plan leaves as files; a figure of remedies where all of them were asked for."""
     from planner.report.ecsv import plan_meta, plan_table, spectra_table, write_table
     from planner.report.figure import plan_figure, write_figure
     from planner.report.jsonio import write_plan_json
@@ -302,7 +302,7 @@ def _write_all(result: PlanResult, folder: Path) -> None:
         figures["spread"] = spread_figure(result)
     if any(row.simulation for row in result.rows):
         figures["simulation"] = simulation_figure(result)
-    if any(row.remedies for row in result.rows):
+    if remedies and any(row.remedies for row in result.rows):
         figures["remedies"] = remedy_figure(result)
     names = ["plan.json", "plan.ecsv", "spectra.ecsv"]
     for name, figure in figures.items():

@@ -1,6 +1,7 @@
 """What would help as a figure: the significance that each remedy brings, beside what the search has without.
 
-A block of bars for each search that has remedies. Made for print as the figure of a plan.
+A block of bars for each search that has remedies and needs them; for all that have some where none needs them. Made for
+print as the figure of a plan.
 """
 
 from __future__ import annotations
@@ -18,11 +19,11 @@ from matplotlib.patches import Patch
 from planner.report.figure import STYLE, WIDTH_MM, add_heading, gas_label, made_by
 from planner.report.remedies import remedy_text
 from planner.report.words import count_text, ratio_text, snr_text
-from planner.studies.results import PlanResult, PlanRow
+from planner.studies.results import PlanResult, PlanRow, Verdict
 
 __all__ = ["remedy_figure"]
 
-_BAR_MM, _GAP_MM = 5.0, 11.0
+_BAR_MM, _GAP_MM = 4.6, 9.5
 _TOP_MM, _BOTTOM_MM, _LEFT_MM, _RIGHT_MM = 13.0, 21.0, 88.0, 34.0
 _AS_IT_STANDS: dict[str, Any] = {"facecolor": "0.8", "edgecolor": "0.35", "lw": 0.5}
 _ENOUGH: dict[str, Any] = {"facecolor": "#5f93cf", "edgecolor": "#1f4e8c", "lw": 0.5}
@@ -40,7 +41,8 @@ def remedy_figure(result: PlanResult) -> Figure:
     result : PlanResult
         With remedies in at least one row.
     """
-    rows = [row for row in result.rows if row.remedies]
+    helped = [row for row in result.rows if row.remedies]
+    rows = [row for row in helped if row.verdict is not Verdict.WITHIN_REACH] or helped
     bars = [_BAR_MM * (1 + len(row.remedies)) for row in rows]
     height = _TOP_MM + _BOTTOM_MM + sum(bars) + _GAP_MM * (len(rows) - 1)
     most = _ROOM * max(result.threshold_sigma, *(snr for row in rows for _, snr, _, _ in _bars(row) if isfinite(snr)))
