@@ -91,7 +91,7 @@ def asymmetric_lines(part: Mapping[str, Any], hitran_number: int) -> Lines:
     -------
     Lines
         Each band and set adds up to its stated sum before weak lines are dropped, and within a per cent after it
-        if more than half of it lies above the cut.
+        if more than half of it lies above the cut. A set with limits (``keep``) adds up to it within them.
 
     Raises
     ------
@@ -127,13 +127,16 @@ class _Solver:
 def _set_lines(band: BandSet, solver: _Solver, part: Mapping[str, Any], hitran_number: int, where: str) -> Lines:
     upper, lower = solver.levels(band.states, band.couplings), solver.levels((band.lower,))
     groups = list(_groups(band, upper, lower, solver.k_max, _lower_weights(part, band.lower), where))
-    total = sum(float(group.strength.sum()) for group in groups)
-    if total <= 0:
+    strength = np.concatenate([group.strength.ravel() for group in groups])
+    if not np.any(strength > 0):
         raise LineDataError(f"{where}: {band.name}: no line has a positive wavenumber and strength")
-    scale, cuts = band.sum_cm / total, np.array(band.cuts_cm)
-    intensities = [scale * group.strength for group in groups]
-    kept = [value >= cuts[g.upper.state[g.j_upper]][:, :, None] for value, g in zip(intensities, groups, strict=True)]
-    cuts = np.minimum(cuts, whole_band_cut_cm(*(np.concatenate([x.ravel() for x in xs]) for xs in (intensities, kept))))
+    cuts = np.array(band.cuts_cm)
+    own_cut = np.concatenate([_by_line(cuts[group.upper.state[group.j_upper]], group) for group in groups])
+    if np.any(np.isfinite(band.ka_most)):
+        scale = _scale_of_kept(strength, own_cut, band.sum_cm)
+    else:
+        scale = band.sum_cm / float(strength.sum())
+        cuts = np.minimum(cuts, whole_band_cut_cm(scale * strength, scale * strength >= own_cut))
     spin = part.get("spin_rotation_per_cm")
     pieces = [_columns(group, scale, cuts, spin) for group in groups]
     column = {name: np.concatenate([piece[name] for piece in pieces]) for name in pieces[0]}
@@ -155,6 +158,23 @@ def _set_lines(band: BandSet, solver: _Solver, part: Mapping[str, Any], hitran_n
         upper_local=_labels(band.j_max)[column["upper"]],
         lower_local=_labels(band.j_max)[column["lower"]],
     )
+
+
+def _by_line(by_upper: Floats, group: _Group) -> Floats:
+    """Values of upper levels, shape ``(J, upper)``, for every line of a group in turn."""
+    return np.broadcast_to(by_upper[:, :, np.newaxis], group.strength.shape).ravel()
+
+
+def _scale_of_kept(strength: Floats, cut_cm: Floats, sum_cm: float) -> float:
+    """The factor with which the lines at or above their cuts add up to a sum.
+
+    Lines are taken in the order in which a growing factor lifts them above their cuts, as long as those taken so far,
+    scaled to the sum, all lie above.
+    """
+    order = np.argsort(-strength / cut_cm)
+    together = np.cumsum(strength[order])
+    last = np.count_nonzero(sum_cm * strength[order] >= cut_cm[order] * together) - 1
+    return float(sum_cm / together[last])
 
 
 def _groups(
