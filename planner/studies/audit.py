@@ -48,7 +48,8 @@ def audit(
     ----------
     claim : Claim
     observed : ObservedSpectrum, optional
-        The spectrum itself; size, rivals, star and offsets are then judged on it.
+        The spectrum itself; size, noise, rivals, star and offsets are then judged on it, and chance and evidence
+        by its significance where that is less than the claimed one.
     follow_up : bool
         Whether to look for the observation that would settle the claim; it takes as long as the rest.
     lines_folder : Path, optional
@@ -74,7 +75,8 @@ def audit(
     if follow_up:
         findings = (*findings, check_follow_up(bench, prospects, trouble))
     name = gas_text(claim.claim.gas)
-    standing, verdict, weakest = judge(name, claim.claim.sigma, findings)
+    sigma = claim.claim.sigma if bench is None else bench.weighed_sigma
+    standing, verdict, weakest = judge(name, sigma, findings)
     return AuditResult(
         title=claim.title,
         source=claim.source,
@@ -101,7 +103,7 @@ def _checks(
         check_companions(bench, prospects),
         check_rivals(bench, rivalry),
         check_trials(claim, bench),
-        check_evidence(claim),
+        check_evidence(claim, bench),
         check_star(bench),
         check_offsets(claim, bench),
         check_reductions(claim),

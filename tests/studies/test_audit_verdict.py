@@ -111,15 +111,15 @@ def test_trials_that_are_not_told():
 @pytest.mark.parametrize(("sigma", "outcome"), [(2.0, Outcome.FAILED), (2.7, Outcome.FAILED), (3.0, Outcome.PASSED)])
 def test_evidence(sigma, outcome):
     """Less than moderate at its most favourable fails."""
-    assert check_evidence(told(f"significance = {sigma}")).outcome is outcome
+    assert check_evidence(told(f"significance = {sigma}"), None).outcome is outcome
 
 
 def test_measured_evidence_counts_where_it_is_less():
     """A quoted Bayes factor below the bound is what is judged; one above is not believed."""
-    low = check_evidence(told("significance = 4\nln_bayes_factor = 1.2"))
+    low = check_evidence(told("significance = 4\nln_bayes_factor = 1.2"), None)
     assert low.outcome is Outcome.FAILED
     assert "as measured" in low.says
-    high = check_evidence(told("significance = 2\nln_bayes_factor = 9"))
+    high = check_evidence(told("significance = 2\nln_bayes_factor = 9"), None)
     assert high.outcome is Outcome.FAILED
 
 

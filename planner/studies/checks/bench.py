@@ -70,7 +70,7 @@ class Bench:
     shape_ppm : (bin,)
         Error of each bin up to a common factor, or that of the data.
     one_transit_ppm : (bin,) or None
-        Predicted white noise of one transit, where a mode is named and no spectrum is given.
+        Predicted white noise of one transit, where a mode is named.
     """
 
     claim: Claim
@@ -243,6 +243,12 @@ class Bench:
         amount, error = self.fits.amplitude(self.template_ppm)
         return max(0.0, amount / error)
 
+    @property
+    def weighed_sigma(self) -> float | None:
+        """What chance and evidence go by: as claimed, or what the spectrum gives where that is less."""
+        told = [sigma for sigma in (self.claim.claim.sigma, self.sigma) if sigma is not None]
+        return min(told, default=None)
+
 
 def make_bench(
     claim: Claim,
@@ -261,6 +267,8 @@ def make_bench(
     mode = _used_part(claim) if claim.search.mode is not None else None
     scenario = claim.scenario((claim.search.mode or "near-infrared-prism",))
     bins, detectors, white = _bins(claim, scenario, mode, observed)
+    if observed is not None and mode is not None:
+        white = _predicted(claim, scenario, mode, bins)
     grid = LogGrid.covering(float(bins.from_um.min()), float(bins.to_um.max()))
     photons = photon_flux(source_of_light(scenario), grid.wavelength_um)
     narrowest = float(bins.width_ln.min()) * SAMPLES_PER_UNIT_LN
@@ -348,6 +356,19 @@ def _bins(
             f"({int(noise.saturated.sum())} saturate)"
         )
     return _some(bins, kept), tuple(detector.name for detector in mode.detectors), noise.depth_error_ppm[kept]
+
+
+def _predicted(claim: Claim, scenario: Scenario, mode: Mode, bins: Bins) -> Array | None:
+    """White noise of one transit in the bins of a spectrum; None where the mode cannot see all of it."""
+    try:
+        own, _, white = _bins(claim, scenario, mode, None)
+    except RangeError:
+        return None
+    if white is None or bins.from_um.min() < mode.span_um[0] or bins.to_um.max() > mode.span_um[1]:
+        return None
+    order = np.argsort(own.centre_um)
+    per_root_ln = white * np.sqrt(own.width_ln)
+    return np.asarray(np.interp(bins.centre_um, own.centre_um[order], per_root_ln[order]) / np.sqrt(bins.width_ln))
 
 
 def _some(bins: Bins, kept: NDArray[np.bool_]) -> Bins:

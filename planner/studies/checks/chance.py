@@ -31,7 +31,7 @@ _ROUNDING = 1e-6
 def check_trials(claim: Claim, bench: Bench | None) -> Finding:
     """Local significance after the gases, bands and models tried."""
     tested = "significance after all gases, bands and models tried, as independent trials; and were the place free"
-    sigma = claim.claim.sigma
+    sigma, on_data = _sigma(claim, bench)
     search = claim.search
     counts = {"gases": search.gases_searched, "bands": search.bands_searched, "models": search.models_tried}
     told = {name: count for name, count in counts.items() if count is not None}
@@ -42,7 +42,7 @@ def check_trials(claim: Claim, bench: Bench | None) -> Finding:
     local = one_sided_probability(sigma)
     overall = any_of_independent(local, trials) if local > _LEAST_PROBABILITY else 0.0
     left = one_sided_sigma(overall) if overall > _LEAST_PROBABILITY else sigma
-    left = min(left, sigma)
+    left = max(0.0, min(left, sigma))
     scan = _scan(bench, sigma)
     words = " times ".join(f"{count} {name if count > 1 else name[:-1]}" for name, count in told.items())
     says = f"{sigma:.3g} sigma in one of {trials} trial{'s' * (trials > 1)} ({words}) are worth {left:.2g} sigma"
@@ -63,7 +63,14 @@ def check_trials(claim: Claim, bench: Bench | None) -> Finding:
             "scan_probability": scan,
         },
         left_sigma=left,
+        on_data=on_data,
     )
+
+
+def _sigma(claim: Claim, bench: Bench | None) -> tuple[float | None, bool]:
+    """Significance as claimed, or what the spectrum gives where that is less; and whether it is the spectrum's."""
+    sigma = claim.claim.sigma if bench is None else bench.weighed_sigma
+    return sigma, sigma != claim.claim.sigma
 
 
 def _room(sigma: float) -> str:
@@ -100,10 +107,10 @@ def _scan(bench: Bench | None, sigma: float) -> float | None:
     return scan_probability(sigma, upcrossings_of_zero(measured, 1.0, shapes))
 
 
-def check_evidence(claim: Claim) -> Finding:
+def check_evidence(claim: Claim, bench: Bench | None) -> Finding:
     """The largest Bayes factor that the significance allows, and the prior odds that it would bring to even."""
     tested = "largest Bayes factor that the significance allows, and the prior that leaves the claim even"
-    sigma = claim.claim.sigma
+    sigma, on_data = _sigma(claim, bench)
     if sigma is None:
         says = "no significance is given"
         return Finding(check=Check.EVIDENCE, outcome=Outcome.UNTESTED, tested=tested, says=says, why=_WHY_EVIDENCE)
@@ -125,4 +132,5 @@ def check_evidence(claim: Claim) -> Finding:
         why=_WHY_EVIDENCE,
         figures={"ln_bayes_most": bound, "ln_bayes_measured": measured, "even_prior": prior},
         left_sigma=sigma,
+        on_data=on_data,
     )

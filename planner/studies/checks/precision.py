@@ -5,12 +5,15 @@ from __future__ import annotations
 from math import sqrt
 
 import numpy as np
+from numpy.typing import NDArray
 
 from planner.detection.significance import Measurement
 from planner.studies.checks.bench import Bench, floor_of
 from planner.studies.checks.findings import Check, Finding, Outcome, takes_too_much
 
 __all__ = ["check_noise"]
+
+Array = NDArray[np.float64]
 
 _TOLERANCE = 1.3
 """Throughputs from memory are good to 30 %."""
@@ -21,11 +24,13 @@ def check_noise(bench: Bench | None) -> Finding:
     """The claimed significance against the largest that the observation can have, and the error of a bin."""
     tested = "quoted error against that of photons, with and without the mode's floor, everything else known"
     if bench is None or bench.one_transit_ppm is None or bench.claim.search.transits is None:
-        missing = "the spectrum brings its own errors" if bench is not None and bench.on_data else "not given: "
-        if bench is None or not bench.on_data:
-            missing += "star, planet or air" if bench is None else "mode or number of transits"
+        missing = "not given: " + ("star, planet or air" if bench is None else "mode or number of transits")
+        if bench is not None and bench.on_data and bench.claim.search.transits is not None:
+            missing = "no mode is given that sees all of the spectrum"
         return Finding(check=Check.NOISE, outcome=Outcome.UNTESTED, tested=tested, says=missing, why=_WHY)
     transits, sigma = bench.claim.search.transits, bench.claim.claim.sigma
+    if bench.observed is not None:
+        return _on_data(bench, bench.observed.error_ppm, bench.one_transit_ppm / sqrt(transits))
     bin_ratio, figures = _bin_ratio(bench, transits)
     if sigma is None or not _size_known(bench):
         return _on_bins(tested, bin_ratio, figures)
@@ -49,6 +54,22 @@ def check_noise(bench: Bench | None) -> Finding:
         why=_WHY,
         figures=figures,
         left_sigma=left * min(1.0, bin_ratio),
+    )
+
+
+def _on_data(bench: Bench, error_ppm: Array, photons_ppm: Array) -> Finding:
+    """The errors of the spectrum against those of photons in the same bins."""
+    ratio = float(np.median(error_ppm / photons_ppm))
+    quoted, predicted = float(np.median(error_ppm)), float(np.median(photons_ppm))
+    return Finding(
+        check=Check.NOISE,
+        outcome=Outcome.FAILED if ratio < 1 / _TOLERANCE else Outcome.PASSED,
+        tested="errors of the spectrum against those of photons",
+        says=f"the errors, {quoted:.3g} ppm in the middle bin, are {ratio:.2g} of what photons allow",
+        why=_WHY,
+        figures={"error_per_bin_ppm": quoted, "photon_error_per_bin_ppm": predicted},
+        left_sigma=(bench.sigma or 0.0) * min(1.0, ratio),
+        on_data=True,
     )
 
 
