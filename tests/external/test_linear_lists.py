@@ -7,23 +7,18 @@ few numbers per band carry a list, not how well they would have foretold it; the
 
 from __future__ import annotations
 
-import contextlib
-import io
-import json
 from functools import cache
 from pathlib import Path
 
 import numpy as np
 import pytest
 
-from planner.spectroscopy.accuracy import WindowScore, alike, compare
-from planner.spectroscopy.hitran import read_par, write_par
+from planner.spectroscopy.accuracy import WindowScore, compare
+from planner.spectroscopy.hitran import read_par
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.lists.build import read_constants
 from planner.spectroscopy.lists.doublet import doublet_lines
-from planner.spectroscopy.lists.intensities import relative_intensity
 from planner.spectroscopy.lists.linear import linear_lines
-from planner.spectroscopy.molecules import partition_sum, quiet_hapi
 
 FILES = {
     "CO": "CO_full400-10000_hitran2012",
@@ -162,50 +157,6 @@ def test_windows_where_the_published_list_breaks_off(reference_folder: Path, key
     assert compare(_held(ours, real), real, (low, high)).passes()
 
 
-SUMS = [
-    ("CO", 2000.0, 2300.0),
-    ("CO", 4100.0, 4400.0),
-    ("CO2 4", 4700.0, 5000.0),
-    ("CO2 6", 6200.0, 6300.0),
-    ("N2O 2", 2100.0, 2300.0),
-    ("N2O 2", 2400.0, 2700.0),
-    ("N2O 3", 3333.6, 3600.0),
-    ("N2O 3", 4350.0, 4450.0),
-    ("HCN", 600.0, 840.0),
-    ("HCN", 1250.0, 1570.0),
-    ("HCN", 3150.0, 3420.0),
-    ("C2H2", 620.0, 850.0),
-    ("C2H2", 1200.0, 1450.0),
-    ("C2H2", 3150.0, 3390.0),
-    ("C2H2", 6450.0, 6650.0),
-]
-
-
-@pytest.mark.parametrize("temperature_k", [200.0, 250.0, 296.0, 350.0, 400.0])
-@pytest.mark.parametrize(("key", "low", "high"), SUMS)
-def test_band_sums_against_temperature(
-    reference_folder: Path, key: str, low: float, high: float, temperature_k: float
-) -> None:
-    """Summed intensity over a band region from 200 to 400 K, to 3 %: hot bands carry the right share."""
-
-    def total(lines: Lines) -> float:
-        inside = lines.where((lines.wavenumber_per_cm > low) & (lines.wavenumber_per_cm < high))
-        result = 0.0
-        for isotopologue in np.unique(inside.isotopologue):
-            own = inside.where(inside.isotopologue == isotopologue)
-            number = int(own.molecule[0])
-            place = (own.wavenumber_per_cm, own.lower_energy_per_cm)
-            growth = relative_intensity(*place, temperature_k) / relative_intensity(*place)
-            partition = partition_sum(number, int(isotopologue), 296.0) / partition_sum(
-                number, int(isotopologue), temperature_k
-            )
-            result += float(np.sum(own.intensity_cm * growth)) * partition
-        return result
-
-    real = _real(reference_folder, key)
-    assert total(alike(_embedded(key.split()[0]), real)) == pytest.approx(total(real), rel=0.03)
-
-
 def _by_label(lines: Lines, upper: str, lower: str) -> dict[tuple[int, str], int]:
     """Where in a list each line of a band stands: by isotopologue, branch and J; e is left out where it is implied."""
     labels = zip(lines.isotopologue, lines.upper_global, lines.lower_global, lines.lower_local, strict=True)
@@ -242,22 +193,3 @@ def test_lines_one_by_one(reference_folder: Path, key: str, upper: str, lower: s
     assert np.allclose(embedded.air_width_per_cm_atm[a], published.air_width_per_cm_atm[b], rtol=0.1)
     assert np.array_equal(embedded.upper_weight[a], published.upper_weight[b])
     assert np.array_equal(embedded.lower_weight[a], published.lower_weight[b])
-
-
-@pytest.mark.parametrize("formula", ["CO2", "C2H2", "NO", "HCl"])
-def test_hapi_takes_the_records(tmp_path: Path, formula: str) -> None:
-    """The strongest lines, written as 160-character records, come back from HITRAN's own library with their labels."""
-    embedded = _embedded(formula)
-    lines = embedded.where(np.sort(np.argsort(embedded.intensity_cm)[-400:]))
-    write_par(tmp_path / "table.data", lines)
-    hapi = quiet_hapi()
-    (tmp_path / "table.header").write_text(json.dumps(hapi.HITRAN_DEFAULT_HEADER | {"table_name": "table"}))
-    with contextlib.redirect_stdout(io.StringIO()):
-        hapi.db_begin(str(tmp_path))
-    table = hapi.LOCAL_TABLE_CACHE["table"]["data"]
-    assert np.allclose(table["nu"], lines.wavenumber_per_cm, rtol=0, atol=1e-6)
-    assert np.allclose(table["sw"], lines.intensity_cm, rtol=1e-3)
-    assert np.allclose(table["a"], lines.einstein_a_per_s, rtol=1e-3)
-    assert np.array_equal(table["gpp"], lines.lower_weight)
-    for column, labels in (("global_upper_quanta", lines.upper_global), ("local_lower_quanta", lines.lower_local)):
-        assert [text.rstrip() for text in table[column]] == labels.tolist()
