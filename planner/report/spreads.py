@@ -22,7 +22,7 @@ def spreads_block(result: PlanResult) -> list[RenderableType]:
     if not rows or rows[0].spread is None:
         return []
     head = Text("\nSpread over what is not known", style="bold")
-    priors = "; ".join(f"{name} {prior}" for name, prior in result.spread_priors)
+    priors = "; ".join(f"{_unknown(name)} {prior}" for name, prior in result.spread_priors)
     words = (
         f"{rows[0].spread.draws} draws of each search from: {priors}. Chance: of passing the threshold with the "
         "transits asked for, and with all on offer. What drives it: share of the variance of the ranks in S/N."
@@ -53,8 +53,15 @@ def _drivers(rows: Sequence[PlanRow]) -> Table:
     for row in rows:
         assert row.spread is not None
         shown = row.spread.drivers[:_DRIVERS_SHOWN]
-        table.add_row(*_search(row), ", ".join(f"{driver.name} {100 * driver.share:.0f} %" for driver in shown) or "-")
+        table.add_row(
+            *_search(row), ", ".join(f"{_unknown(driver.name)} {100 * driver.share:.0f} %" for driver in shown) or "-"
+        )
     return table
+
+
+def _unknown(name: str) -> str:
+    """A gas as people call it; other names are words in small letters."""
+    return gas_text(name) if name[:1].isupper() else name
 
 
 def _started() -> Table:

@@ -14,6 +14,7 @@ from scipy import special
 from planner.report.remedyfigure import remedy_figure
 from planner.report.simulationfigure import simulation_figure
 from planner.report.spreadfigure import spread_figure
+from planner.report.table import plan_text
 from planner.studies.outcomes import Driver, TransitSpread
 from planner.studies.results import Remedy, RemedyKind, Simulation
 
@@ -104,6 +105,18 @@ def test_a_row_of_panels_for_each_gas(spread_plan):
     assert any("never" in text for text in texts)
     assert "cloud top" in texts
     assert inside_the_page(figure)
+
+
+def test_gases_go_by_the_names_that_people_use(spread_plan):
+    """CFC-12 and not its formula, in the table as in the figure."""
+    drivers = (Driver(name="CCl2F2", share=0.6), Driver(name="cloud top", share=0.2))
+    rows = [replace(row, spread=replace(row.spread, drivers=drivers)) for row in spread_plan.rows]
+    plan = replace(spread_plan, rows=tuple(rows), spread_priors=(("CCl2F2", "0.3 dex in mixing ratio"),))
+    text = plan_text(plan, 120)
+    block = text[text.index("Spread over") : text.index("Held unknown")]
+    assert "CFC-12 60 %" in block
+    assert "CFC-12 0.3 dex" in block
+    assert "CFC-12" in [text.get_text() for text in all_texts(spread_figure(plan))]
 
 
 def test_bars_hold_every_draw(spread_plan):
