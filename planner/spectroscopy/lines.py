@@ -143,6 +143,6 @@ class Lines:
         """All lines of several sets as one sorted set."""
         return cls(**{f.name: np.concatenate([getattr(p, f.name) for p in parts]) for f in fields(cls)})
 
-    def where(self, mask: NDArray[Any]) -> Lines:
-        """The lines picked by a boolean mask or an index array of shape ``(line,)``."""
+    def where(self, mask: NDArray[Any] | slice) -> Lines:
+        """The lines picked by a mask or an index array of shape ``(line,)``, or by a slice, which copies nothing."""
         return Lines(**{f.name: getattr(self, f.name)[mask] for f in fields(self)})

@@ -274,7 +274,7 @@ class Opacities:
             from planner.spectroscopy.crosssections import cross_sections
 
             return cross_sections(
-                lines.where(np.arange(first, last)),
+                lines.where(slice(first, last)),
                 wavenumber,
                 temperature_k=temperature_k,
                 pressures_bar=PRESSURES_BAR,
