@@ -1,7 +1,8 @@
 """Compiled code: the Voigt function, and the loop over lines behind `planner.spectroscopy.crosssections`.
 
 Imported only when there is work to do: the import compiles, or loads what was compiled. All of it stands in one file,
-since a kept compilation is given up only when the file of its outermost function changes.
+since a kept compilation is given up only when the file of its outermost function changes. A first run waits for it:
+hence arrays come from outside, elements are named by all their indices, and what has one caller is written into it.
 """
 
 from __future__ import annotations
@@ -32,6 +33,7 @@ CUT_TERMS = 5
 _ONE_OVER_SQRT_PI = 1.0 / math.sqrt(math.pi)
 # Fused multiplication and addition, nothing else: no rule that could lead a quotient or a NaN astray.
 _OPTIONS = {"nogil": True, "error_model": "numpy", "fastmath": {"contract"}}
+_WRITTEN_IN = {"inline": "always", **_OPTIONS}
 
 
 @numba.njit(**_OPTIONS)
@@ -100,7 +102,8 @@ def _first_from(values, low, high, threshold, per_step):  # type: ignore[no-unty
     """
     if low >= high:
         return high
-    guess = low + int(min(max((threshold - values[low]) * per_step, 0.0), high - low))
+    ahead = (threshold - values[low]) * per_step
+    guess = high if ahead >= high - low else (low + math.floor(ahead) if ahead > 0.0 else low)
     while guess > low and values[guess - 1] >= threshold:
         guess -= 1
     while guess < high and values[guess] < threshold:
@@ -108,7 +111,7 @@ def _first_from(values, low, high, threshold, per_step):  # type: ignore[no-unty
     return guess
 
 
-@numba.njit(**_OPTIONS)
+@numba.njit(**_WRITTEN_IN)
 def _add_line(sums, points, start, stop, per_step, line, wing, taken_off):  # type: ignore[no-untyped-def]
     """Add a line on some points: by the second convergent as far as it holds, and point by point within."""
     centre, strength, doppler, width = line
@@ -137,7 +140,7 @@ def _add_line(sums, points, start, stop, per_step, line, wing, taken_off):  # ty
             j += 1
 
 
-def _add_lines(points, sums, cell_start, first_edge, cell_width, lines, wing, moments, ends):  # type: ignore[no-untyped-def]
+def _add_lines(points, sums, cell_start, first_edge, cell_width, lines, wing, moments, ends, own):  # type: ignore[no-untyped-def]
     """Add lines at one pressure to the sums on the points of one stretch of the grid.
 
     Parameters
@@ -158,11 +161,12 @@ def _add_lines(points, sums, cell_start, first_edge, cell_width, lines, wing, mo
         first row is that of the cell which is ``cut`` cells before the first.
     ends : (2, point, CUT_TERMS + 1)
         The same for the lines whose wing to the right, or to the left, ends at the point, inclusive.
+    own : (TERMS + 1,)
+        Scratch.
     """
     cells, cut = cell_start.size - 1, (moments.shape[0] - cell_start.size + 1) // 2
     unit = 1.0 / cell_width
     near = NEAR if moments.size else math.ceil(wing * unit) + 1
-    own = np.zeros(TERMS + 1)
     for i in range(lines.shape[1]):
         centre, strength, doppler, width, taken_off = lines[0, i], lines[1, i], lines[2, i], lines[3, i], lines[4, i]
         position = (centre - first_edge) * unit
@@ -170,9 +174,8 @@ def _add_lines(points, sums, cell_start, first_edge, cell_width, lines, wing, mo
         if moments.size and -cut <= cell < cells + cut:
             _line_moments(own, strength, position - cell - 0.5, width * unit, doppler * unit)
             own[TERMS] = taken_off
-            row = moments[cell + cut]
             for k in range(TERMS + 1):
-                row[k] += own[k]
+                moments[cell + cut, k] += own[k]
             own[CUT_TERMS] = taken_off
             for side in range(2):
                 there = cell + cut - 2 * side * cut
@@ -181,9 +184,8 @@ def _add_lines(points, sums, cell_start, first_edge, cell_width, lines, wing, mo
                     end = centre + wing - 2.0 * side * wing
                     j = _first_from(points, start, stop, end, (stop - start) * unit) - 1 + side
                     if start <= j < stop:
-                        row = ends[side, j]
                         for k in range(CUT_TERMS + 1):
-                            row[k] += own[k]
+                            ends[side, j, k] += own[k]
             taken_off = 0.0
         low, high = max(0, cell - near), min(cells, cell + near + 1)
         if low < high:
@@ -192,7 +194,7 @@ def _add_lines(points, sums, cell_start, first_edge, cell_width, lines, wing, mo
             _add_line(sums, points, start, stop, per_step, (centre, strength, doppler, width), wing, taken_off)
 
 
-@numba.njit(**_OPTIONS)
+@numba.njit(**_WRITTEN_IN)
 def _line_moments(own, strength, place, width, doppler):  # type: ignore[no-untyped-def]
     """Coefficients of ``distance**-2, distance**-3, ...`` in the wings of a line, for lengths in cells.
 
@@ -213,8 +215,10 @@ def _add_wings(points, sums, cell_start, first_edge, cell_width, moments, ends, 
 
     Parameters
     ----------
-    points, sums, cell_start, first_edge, cell_width, ends
+    points, sums, cell_start, first_edge, cell_width
         As in `_add_lines`.
+    ends
+        As there; changed.
     moments : (TERMS + 1, cell + 2 cut)
         As there, the other way round.
     terms : (cut,) int64
@@ -235,7 +239,6 @@ def _add_wings(points, sums, cell_start, first_edge, cell_width, moments, ends, 
                 for t in range(np.uint64(cells)):
                     fields[power, t] += one * moments[k, left + t] + other * moments[k, right + t]
     scale = 1.0 / (math.pi * cell_width)
-    total = np.zeros(CUT_TERMS + 1)
     for t in range(cells):
         start, stop = cell_start[t], cell_start[t + 1]
         taken_off = 0.0
@@ -249,16 +252,17 @@ def _add_wings(points, sums, cell_start, first_edge, cell_width, moments, ends, 
                 value = value * x + fields[power, t]
             sums[j] += scale * value - taken_off
         for side in range(2):
-            total[:] = 0.0
+            # what ends at a point has its share in all points farther on
             for step in range(stop - start):
                 j = start + step if side else stop - 1 - step
                 inverse = 1.0 / ((points[j] - middle) / cell_width + cut - 2.0 * side * cut)
                 value = 0.0
-                for k in range(CUT_TERMS + 1):
-                    total[k] += ends[side, j, k]
+                if step > 0:
+                    for k in range(CUT_TERMS + 1):
+                        ends[side, j, k] += ends[side, j - 1 if side else j + 1, k]
                 for k in range(CUT_TERMS - 1, -1, -1):
-                    value = (value + total[k]) * inverse
-                sums[j] += scale * value * inverse - total[CUT_TERMS]
+                    value = (value + ends[side, j, k]) * inverse
+                sums[j] += scale * value * inverse - ends[side, j, CUT_TERMS]
 
 
 def _compiled(function, signature):  # type: ignore[no-untyped-def]
@@ -272,5 +276,5 @@ def _compiled(function, signature):  # type: ignore[no-untyped-def]
 
 _NUMBERS, _TABLE, _CUBE = numba.float64[::1], numba.float64[:, ::1], numba.float64[:, :, ::1]
 _STRETCH = (_NUMBERS, _NUMBERS, numba.int64[::1], numba.float64, numba.float64)  # points to cell_width
-add_lines = _compiled(_add_lines, numba.void(*_STRETCH, _TABLE, numba.float64, _TABLE, _CUBE))
+add_lines = _compiled(_add_lines, numba.void(*_STRETCH, _TABLE, numba.float64, _TABLE, _CUBE, _NUMBERS))
 add_wings = _compiled(_add_wings, numba.void(*_STRETCH, _TABLE, _CUBE, numba.int64[::1], _CUBE, _TABLE))

@@ -252,7 +252,7 @@ def _add(sums: Floats, points: Floats, shapes: Floats, pressure_atm: float, wing
     stretch = (points, sums, cell_start, float(points[0]), width)
     moments = np.zeros((cell_start.size - 1 + 2 * cut if cut else 0, kernels.TERMS + 1))
     ends = np.zeros((2, points.size if cut else 0, kernels.CUT_TERMS + 1))
-    kernels.add_lines(*stretch, lines, wing, moments, ends)
+    kernels.add_lines(*stretch, lines, wing, moments, ends, np.zeros(kernels.TERMS + 1))
     if cut:
         fields = np.zeros((_POWERS, cell_start.size - 1))
         kernels.add_wings(*stretch, np.ascontiguousarray(moments.T), ends, *_translations(cut), fields)
