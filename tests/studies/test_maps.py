@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 
 from planner.errors import RangeError, ScenarioError
+from planner.scenario.surface import SurfaceRegion
 from planner.studies.maps import Axis, map_transits
 from planner.studies.vary import vary
 from planner.studies.workshop import Workshop, see
@@ -71,6 +72,19 @@ def test_hotter_and_lighter_need_fewer(narrow):
     assert (mapped.x.stated, mapped.y.stated) == (250.0, 0.85)
 
 
+def test_spots_by_faculae(narrow):
+    """Where the star is said to have them, their shares can be axes; cells agree with the full model."""
+    star = narrow.star.model_copy(update={"given_spots": SurfaceRegion(), "given_faculae": SurfaceRegion()})
+    spotted = narrow.model_copy(update={"star": star})
+    spots, faculae = (Axis(name=name, low=0.05, high=0.45, steps=3) for name in ("spots", "faculae"))
+    mapped = map_transits(spotted, x=spots, y=faculae)
+    assert (mapped.x.stated, mapped.y.stated) == (star.spots.fraction, None)
+    scenario, case = vary(spotted, spotted.cases[0], {"spots": 0.45, "faculae": 0.05})
+    full = see(Workshop(scenario), case).measurements[0]
+    assert mapped.snr_one_transit[0, 2] == pytest.approx(full.snr(1), rel=0.02)
+    assert mapped.nuisances[-2][0] == "spots"
+
+
 def test_levels_keep_apart_from_those_on_offer(narrow):
     """A contour next to that of the transits on offer is left out."""
     few = narrow.model_copy(update={"goal": narrow.goal.model_copy(update={"transits_available": 28})})
@@ -90,6 +104,7 @@ def test_levels_keep_apart_from_those_on_offer(narrow):
         ({"x": Axis(name="CO", low=1e-6, high=1e-7)}, RangeError, "axis CO: expected 0 < from < to"),
         ({"x": Axis(name="mass", low=1, high=2, steps=1)}, RangeError, "at least 2 steps"),
         ({"x": Axis(name="mixing_ratio", low=0.1, high=1.0)}, RangeError, "mixing ratios up to 0.9"),
+        ({"x": Axis(name="spots", low=0.1, high=0.2)}, ScenarioError, "star_radius, CO, got spots"),
         ({"x": CLOUDS, "y": CLOUDS}, ScenarioError, "got cloud_top twice"),
     ],
 )
