@@ -151,6 +151,8 @@ def demo(out: Path) -> None:
 @click.option("--ledger", "kind", flag_value="ledger", help="A ledger of findings to weigh instead.")
 def new(file: Path, kind: str | None) -> None:
     """Write a commented scenario to start from."""
+    from shlex import quote
+
     from planner.catalogue.ledger import starting_ledger
     from planner.claims.read import starting_claim
     from planner.errors import OutputError
@@ -166,7 +168,7 @@ def new(file: Path, kind: str | None) -> None:
     }
     text, command = starts[kind]
     write_text(file, text())
-    click.echo(f"wrote {file}; next: limbcast {command} {file}", err=True)
+    click.echo(f"wrote {file}; next: limbcast {command} {quote(str(file))}", err=True)
 
 
 @cli.command()

@@ -143,7 +143,7 @@ def read_ledger(path: str | Path) -> Ledger:
         If the file cannot be read or breaks a rule; every problem is listed with file, line and key.
     """
     path = Path(path)
-    text = read_text(path, f"`limbcast new --ledger {path}` writes one to start from")
+    text = read_text(path, "limbcast new --ledger")
     return parse_ledger(text, str(path))
 
 

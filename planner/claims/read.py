@@ -27,7 +27,7 @@ def read_claim(path: str | Path) -> Claim:
         If the file cannot be read, is not TOML, or breaks a rule; every problem is listed with file, line and key.
     """
     path = Path(path)
-    text = read_text(path, f"`limbcast new --claim {path}` writes one to start from")
+    text = read_text(path, "limbcast new --claim")
     claim = _from_folder(parse_claim(text, str(path)), path.parent)
     _check_mode(claim, text, str(path))
     _check_star(claim, text, str(path))

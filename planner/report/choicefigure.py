@@ -6,7 +6,7 @@ written out as well.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Collection, Sequence
 from math import log10
 
 import matplotlib
@@ -67,9 +67,9 @@ def worth_figure(result: ChoiceResult) -> Figure:
         if not shown:
             axes.set_yticks([])
             axes.text(0.5, 0.5, _NOTHING, transform=axes.transAxes, ha="center", va="center", linespacing=1.5)
-        _label_marks(figure, axes, shown)
+        _label_marks(figure, axes, shown, result.hours)
         _list_beside(figure, result, modes)
-        _legend(figure, modes)
+        _legend(figure, modes, {choice.mode for choice in shown})
         add_heading(figure, result.title, made_by(result.version, result.invented))
     return figure
 
@@ -150,8 +150,8 @@ def _scale(axes: Axes, choices: Sequence[Choice], result: ChoiceResult) -> None:
     axes.tick_params(which="both", top=True, right=True)
 
 
-def _label_marks(figure: Figure, axes: Axes, choices: Sequence[Choice]) -> None:
-    """A name beside each mark: the nearest place where it covers no mark, no other name and no edge."""
+def _label_marks(figure: Figure, axes: Axes, choices: Sequence[Choice], hours_given: float) -> None:
+    """A name beside each mark: the nearest place where it covers no mark, no line, no other name and no edge."""
     canvas = figure.canvas
     renderer = canvas.get_renderer()  # type: ignore[attr-defined]
     per_mm = figure.dpi / 25.4
@@ -159,6 +159,8 @@ def _label_marks(figure: Figure, axes: Axes, choices: Sequence[Choice]) -> None:
     taken = [Bbox.from_bounds(x - 1.1 * per_mm, y - 1.1 * per_mm, 2.2 * per_mm, 2.2 * per_mm) for x, y in places]
     taken += _bars(axes, choices)
     frame = axes.get_window_extent(renderer)
+    given = axes.transData.transform((hours_given, 0))[0]
+    taken.append(Bbox.from_extents(given - 1, frame.y0, given + 1, frame.y1))
     for choice, (x, y) in zip(choices, places, strict=True):
         text = axes.text(0, 0, gas_label(choice.gas), fontsize=7.5, transform=None, va="center", zorder=4)
         best: tuple[float, float, float, str] | None = None
@@ -234,10 +236,11 @@ def _ever(gas: str, result: ChoiceResult) -> bool:
     return any(c.plan.marginalised.hours_required is not None for c in result.choices if c.gas == gas)
 
 
-def _legend(figure: Figure, modes: Sequence[str]) -> None:
+def _legend(figure: Figure, modes: Sequence[str], shown: Collection[str]) -> None:
     handles = [
         Line2D([], [], marker=mark, color=colour, mec="black", mew=0.5, ms=4.5, lw=0, label=mode)
         for mode, (mark, colour) in zip(modes, _MARKS, strict=False)
+        if mode in shown
     ]
     handles.append(Line2D([], [], color="0.72", lw=0.8, label="16 to 84 % of opinions"))
     figure.legend(

@@ -134,7 +134,9 @@ def _chance(chance: float) -> str:
     percent = 100 * chance
     if percent > 99.95:
         return ">99.9 %"
-    return f"{percent:.1f} %" if percent >= 0.095 else f"{percent:.0e} %".replace("e-0", "e-")
+    if percent >= 0.095:
+        return f"{percent:.1f} %"
+    return f"{percent:.1g} %" if percent >= 1e-4 else "<1e-4 %"
 
 
 def _odds(chance: float) -> str:

@@ -22,7 +22,7 @@ def read_scenario(path: str | Path) -> Scenario:
         If the file cannot be read, is not TOML, or breaks a rule; every problem is listed with file, line and key.
     """
     path = Path(path)
-    scenario = parse_scenario(read_text(path, f"`limbcast new {path}` writes one to start from"), path)
+    scenario = parse_scenario(read_text(path, "limbcast new"), path)
     _check_files(scenario)
     return scenario
 

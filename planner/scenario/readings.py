@@ -40,6 +40,7 @@ __all__ = [
     "Tables",
     "Text",
     "Whole",
+    "closest",
     "nearest",
     "quantity",
     "shown",
@@ -86,11 +87,17 @@ def shown(value: Any) -> str:
     return text if len(text) <= 60 else text[:57] + "..."
 
 
-def nearest(name: str, known: Any) -> str:
-    """``; did you mean "..."?`` for the known name closest to this one, or nothing when none is close."""
+def closest(name: str, known: Iterable[str]) -> str | None:
+    """The known name that is most like this one, if one is much like it."""
     lowered = {str(k).lower(): str(k) for k in known}
     match = get_close_matches(name.lower(), lowered, n=1, cutoff=0.6)
-    return f'; did you mean "{lowered[match[0]]}"?' if match else ""
+    return lowered[match[0]] if match else None
+
+
+def nearest(name: str, known: Iterable[str]) -> str:
+    """``; did you mean "..."?`` for the known name closest to this one, or nothing when none is close."""
+    match = closest(name, known)
+    return f'; did you mean "{match}"?' if match else ""
 
 
 def _refuse(expected: str, value: Any, note: str = "") -> ValueError:

@@ -6,6 +6,7 @@ import re
 import tomllib
 from collections.abc import Mapping
 from pathlib import Path
+from shlex import quote
 from types import UnionType
 from typing import Annotated, Any, TypeVar, get_args, get_origin
 
@@ -14,7 +15,7 @@ from pydantic.fields import FieldInfo
 
 from planner.errors import ScenarioError
 from planner.scenario.locate import dotted, heading, line_of
-from planner.scenario.readings import nearest, shown
+from planner.scenario.readings import closest, nearest, shown
 
 __all__ = ["parse_as", "read_text"]
 
@@ -22,13 +23,13 @@ Place = tuple[str | int, ...]
 Model = TypeVar("Model", bound=BaseModel)
 
 
-def read_text(path: Path, remedy: str = "") -> str:
+def read_text(path: Path, new: str = "") -> str:
     """The text of a file in UTF-8, with or without the mark that some editors put at its head.
 
     Parameters
     ----------
-    remedy : str
-        What to do where there is no such file.
+    new : str
+        The command that writes such a file, for the message where there is none.
 
     Raises
     ------
@@ -38,7 +39,8 @@ def read_text(path: Path, remedy: str = "") -> str:
     try:
         return path.read_text(encoding="utf-8-sig")
     except FileNotFoundError:
-        raise ScenarioError(f"{path}: no such file{remedy and f'; {remedy}'}") from None
+        remedy = f"; `{new} {quote(str(path))}` writes one to start from" if new else ""
+        raise ScenarioError(f"{path}: no such file{remedy}") from None
     except UnicodeDecodeError:
         raise ScenarioError(f"{path}: not a text file in UTF-8") from None
     except OSError as error:
@@ -82,11 +84,20 @@ def _syntax_message(error: tomllib.TOMLDecodeError, where: str) -> str:
 
 
 def _all_problems(error: ValidationError, model: type[BaseModel], text: str, where: str) -> str:
-    problems = []
-    for item in error.errors():
+    items, problems = error.errors(), []
+    misspelt = {_meant(item, model) for item in items if item["type"] == "extra_forbidden"}
+    for item in items:
         place, message = _place_and_message(item, model)
+        if item["type"] == "missing" and place in misspelt:
+            continue  # it is there under another name, which is told
         problems.append((line_of(text, place) or 0, f"{heading(text, where, place)}: {message}"))
     return "\n".join(dict.fromkeys(message for _, message in sorted(problems, key=lambda problem: problem[0])))
+
+
+def _meant(item: Any, model: type[BaseModel]) -> Place:
+    """The place of the key that an unknown one probably stands for."""
+    place, holders, _, _ = _follow(model, tuple(item["loc"]))
+    return *place[:-1], closest(str(place[-1]), _known(holders)) or ""
 
 
 def _place_and_message(item: Any, model: type[BaseModel]) -> tuple[Place, str]:
@@ -105,7 +116,7 @@ def _place_and_message(item: Any, model: type[BaseModel]) -> tuple[Place, str]:
 
 
 def _unknown_key(model: type[BaseModel], place: Place, holders: list[type[BaseModel]]) -> str:
-    key, known = str(place[-1]), [name for record in holders for name in _fields(record)]
+    key, known = str(place[-1]), _known(holders)
     if len(place) > 1 and key in _fields(model):
         return f'unknown key; "{key}" belongs at the top of the file, above the first [table]'
     return f"unknown key{nearest(key, known) or '; known here: ' + ', '.join(known)}"
@@ -141,6 +152,10 @@ def _follow(
             field = next((found for record in holders if (found := _fields(record).get(key))), None)
             here = _models_in(field.annotation) if field else []
     return place, holders, here, field
+
+
+def _known(holders: list[type[BaseModel]]) -> list[str]:
+    return [name for record in holders for name in _fields(record)]
 
 
 def _fields(model: type[BaseModel]) -> dict[str, FieldInfo]:

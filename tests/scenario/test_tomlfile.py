@@ -41,10 +41,22 @@ def test_lines_are_counted_as_editors_do(tmp_path):
 
 
 def test_missing_file_comes_with_its_remedy(tmp_path):
-    """A remedy is told where there is one."""
-    for remedy, end in (("", "no such file$"), ("make one", "no such file; make one$")):
-        with pytest.raises(ScenarioError, match=end):
-            read_text(tmp_path / "none.toml", remedy)
+    """A command that writes one, ready to be pasted, where there is one."""
+    path = tmp_path / "my file.toml"
+    with pytest.raises(ScenarioError, match=r"my file\.toml: no such file$"):
+        read_text(path)
+    with pytest.raises(ScenarioError, match=f"no such file; `limbcast new '{path}'` writes one"):
+        read_text(path, "limbcast new")
+
+
+def test_misspelt_keys_are_told_once():
+    """A needed key under a wrong name is not missing as well; one that is not there at all is."""
+    text = starting_scenario().replace("mass =", "mas =", 1).replace("threshold = 5", "")
+    with pytest.raises(ScenarioError) as caught:
+        parse_scenario(text)
+    told = str(caught.value)
+    assert told.count("star.mas") == 1
+    assert "goal.threshold: missing" in told
 
 
 def test_kinds_of_a_record():
