@@ -72,7 +72,12 @@ def published(folder: Path, name: str) -> Lines:
 @pytest.mark.parametrize(("formula", "name", "low", "high"), WINDOWS)
 def test_window(reference_folder, formula, name, low, high):
     """Height differences in bins of R = 100 meet the project's marks."""
-    score = compare(embedded(formula), published(reference_folder, name), (low, high))
+    real = published(reference_folder, name)
+    unknown = real.where(
+        (real.lower_energy_per_cm < 0.0) & (real.wavenumber_per_cm > low) & (real.wavenumber_per_cm < high)
+    )
+    # a fifth of phosphine at 3 um has no lower energy in HITRAN2012, which is right at 296 K only
+    score = compare(embedded(formula), real, (low, high), temperature_k=296.0 if len(unknown) else 250.0)
     print(f"\n{name}\n{score.describe()}")
     assert score.passes(), score.describe()
 
