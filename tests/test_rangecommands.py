@@ -7,47 +7,15 @@ import json
 import pytest
 from astropy.table import Table
 from click.testing import CliRunner
+from small_system import NARROW
 
 from planner.cli import cli
-
-SCENARIO = """
-title = "Narrow band"
-invented = true
-modes = ["grism-4-to-5-um"]
-[star]
-name = "star"
-temperature = "2650 K"
-radius = "0.12 R_sun"
-mass = "0.092 M_sun"
-distance = "12.8 pc"
-magnitudes = { J = "11.28 mag", Ks = "10.28 mag" }
-[planet]
-name = "planet"
-mass = "0.85 M_earth"
-radius = "1 R_earth"
-period = "5.49 d"
-impact_parameter = 0.25
-[atmosphere]
-temperature = "250 K"
-pressure = "1 bar"
-surface = true
-background = { N2 = 1.0 }
-absorbers = { CO = "10 ppm" }
-[[candidates]]
-gas = "N2O"
-mixing_ratio = "10 ppm"
-[goal]
-threshold = 5
-transits_available = 200
-[noise]
-floor = "3 ppm"
-"""
 
 
 @pytest.fixture
 def folder(tmp_path, monkeypatch):
     """A working folder with a scenario in it."""
-    (tmp_path / "a.toml").write_text(SCENARIO)
+    (tmp_path / "a.toml").write_text(NARROW)
     monkeypatch.chdir(tmp_path)
     return tmp_path
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from small_system import SYSTEM
 
 from planner.detection.significance import Measurement
 from planner.errors import ScenarioError
@@ -16,19 +17,6 @@ SCENARIO = """
 title = "Two grisms"
 invented = true
 modes = {modes}
-[star]
-name = "s"
-temperature = "2650 K"
-radius = "0.12 R_sun"
-mass = "0.092 M_sun"
-distance = "12.8 pc"
-magnitudes = {{ J = "11.28 mag", Ks = "10.28 mag" }}
-[planet]
-name = "p"
-mass = "0.85 M_earth"
-radius = "1 R_earth"
-period = "5.49 d"
-impact_parameter = 0.25
 [atmosphere]
 temperature = "250 K"
 pressure = "1 bar"
@@ -46,7 +34,7 @@ BOTH = ["grism-2-to-4-um", "grism-4-to-5-um", "combined"]
 
 
 def scenario(modes=BOTH, transits=200):
-    return parse_scenario(SCENARIO.format(modes=modes, transits=transits))
+    return parse_scenario(SCENARIO.format(modes=modes, transits=transits) + SYSTEM)
 
 
 @pytest.fixture(scope="module")

@@ -6,6 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from small_system import SYSTEM
 
 from planner.detection.significance import Measurement
 from planner.detection.simulate import matched_filter
@@ -20,20 +21,7 @@ SCENARIO = """
 title = "Spotted"
 invented = true
 modes = ["grism-4-to-5-um"]
-[star]
-name = "s"
-temperature = "2650 K"
-radius = "0.12 R_sun"
-mass = "0.092 M_sun"
-distance = "12.8 pc"
-magnitudes = {{ J = "11.28 mag", Ks = "10.28 mag" }}
 {regions}
-[planet]
-name = "p"
-mass = "0.85 M_earth"
-radius = "1 R_earth"
-period = "5.49 d"
-impact_parameter = 0.25
 [atmosphere]
 temperature = "250 K"
 pressure = "1 bar"
@@ -55,7 +43,7 @@ covered_fraction_error = 0
 
 
 def scenario(regions=""):
-    return parse_scenario(SCENARIO.format(regions=regions))
+    return parse_scenario(SCENARIO.format(regions=regions) + SYSTEM)
 
 
 def sight(regions=""):

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+from small_system import SYSTEM
 
 from planner.resources import data_folder
 from planner.scenario import parse_scenario, read_scenario
@@ -14,19 +15,6 @@ SCENARIO = """
 title = "Small"
 invented = true
 modes = ["{mode}"]
-[star]
-name = "s"
-temperature = "2650 K"
-radius = "0.12 R_sun"
-mass = "0.092 M_sun"
-distance = "12.8 pc"
-magnitudes = {{ J = "11.28 mag", Ks = "10.28 mag" }}
-[planet]
-name = "p"
-mass = "0.85 M_earth"
-radius = "1 R_earth"
-period = "5.49 d"
-impact_parameter = 0.25
 [atmosphere]
 temperature = "250 K"
 pressure = "1 bar"
@@ -42,7 +30,7 @@ threshold = 3
 
 
 def small(mode="grism-4-to-5-um"):
-    return parse_scenario(SCENARIO.format(mode=mode))
+    return parse_scenario(SCENARIO.format(mode=mode) + SYSTEM)
 
 
 HAZY = """
@@ -92,7 +80,7 @@ DIFFERENT = {
 
 def different(name):
     mode, changes = DIFFERENT[name]
-    text = SCENARIO.format(mode=mode)
+    text = SCENARIO.format(mode=mode) + SYSTEM
     for old, new in changes.items():
         assert text.count(old) == 1, old
         text = text.replace(old, new)

@@ -6,6 +6,7 @@ from math import log
 
 import numpy as np
 import pytest
+from small_system import SYSTEM
 
 from planner.scenario import parse_scenario
 from planner.studies import nuisances
@@ -17,19 +18,6 @@ SCENARIO = """
 title = "Small"
 invented = true
 modes = ["grism-4-to-5-um"]
-[star]
-name = "s"
-temperature = "2650 K"
-radius = "0.12 R_sun"
-mass = "0.092 M_sun"
-distance = "12.8 pc"
-magnitudes = { J = "11.28 mag", Ks = "10.28 mag" }
-[planet]
-name = "p"
-mass = "0.85 M_earth"
-radius = "1 R_earth"
-period = "5.49 d"
-impact_parameter = 0.25
 [atmosphere]
 temperature = "250 K"
 pressure = "1 bar"
@@ -49,7 +37,7 @@ threshold = 5
 @pytest.fixture(scope="module")
 def workshop():
     """One mode, CO in N2 under clouds and haze, N2O searched."""
-    return Workshop(parse_scenario(SCENARIO))
+    return Workshop(parse_scenario(SCENARIO + SYSTEM))
 
 
 def by_name(workshop):

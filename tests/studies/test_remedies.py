@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from small_system import SYSTEM
 
 from planner.detection.significance import Measurement
 from planner.scenario import parse_scenario
@@ -18,19 +19,6 @@ SCENARIO = """
 title = "Small"
 invented = true
 modes = ["grism-4-to-5-um"]
-[star]
-name = "s"
-temperature = "2650 K"
-radius = "0.12 R_sun"
-mass = "0.092 M_sun"
-distance = "12.8 pc"
-magnitudes = {{ J = "11.28 mag", Ks = "10.28 mag" }}
-[planet]
-name = "p"
-mass = "0.85 M_earth"
-radius = "1 R_earth"
-period = "5.49 d"
-impact_parameter = 0.25
 [atmosphere]
 temperature = "250 K"
 pressure = "1 bar"
@@ -50,7 +38,7 @@ floor = "{floor} ppm"
 
 
 def scenario(top=0.02, ratio=3e-6, floor=15, transits=1000):
-    return parse_scenario(SCENARIO.format(top=top, ratio=ratio, floor=floor, transits=transits))
+    return parse_scenario(SCENARIO.format(top=top, ratio=ratio, floor=floor, transits=transits) + SYSTEM)
 
 
 @pytest.fixture(scope="module")
