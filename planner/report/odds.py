@@ -125,7 +125,7 @@ def _headline(result: OddsResult) -> Text:
     text.append(
         f" (95 % of {result.opinions} opinions; the middle one {_chance(middle)})\nbefore: "
         f"{_chance(result.prior[0])} to {_chance(result.prior[2])} (judgement: {result.prior_because})\n"
-        f"odds: {_odds(low)} to {_odds(high)}"
+        f"odds: from {_odds(low)} up to {_odds(high)}"
     )
     return text
 
