@@ -18,6 +18,7 @@ from planner.commands.audit import audit
 from planner.commands.check import check
 from planner.commands.choose import choose, odds
 from planner.commands.contrast import contrast
+from planner.commands.fit import fit
 from planner.commands.gases import gases
 from planner.commands.linefiles import fetch, import_
 from planner.commands.options import Measured, Stretch, progress_bar
@@ -69,6 +70,7 @@ cli.add_command(contrast)
 cli.add_command(choose)
 cli.add_command(odds)
 cli.add_command(audit)
+cli.add_command(fit)
 cli.add_command(limit)
 cli.add_command(map_)
 
