@@ -75,6 +75,19 @@ def test_transits_against_the_full_model(narrow, narrow_workshop, narrow_reduced
         assert few.transits_for(target) == pytest.approx(full.transits_for(target), rel=0.02)
 
 
+def test_bins_that_few_samples_do_not_serve(narrow, narrow_workshop, monkeypatch):
+    """A bin that fails every proof keeps all its samples: what is allowed is kept to, whatever the scenario."""
+    hopeless = {"_TRAINING": 4, "_TRAINING_PER_CASE": 1, "_CHECKS": 2, "_PROOFS": 2, "_ROUNDS": 1, "_ALLOWED": 1e-13}
+    for name, value in hopeless.items():
+        monkeypatch.setattr(module, name, value)
+    error, *rows = module._Choice(narrow_workshop, domain_of(narrow), lambda text, share: None).make()
+    assert error[0] == 0.0
+    view, table = narrow_workshop.views[0], np.array(rows)
+    few = SparseMeans([module._bin_of(table, 0, b) for b in range(len(view.bins))])
+    samples = np.random.default_rng(0).normal(size=(2, narrow_workshop.opacities.grid.count))
+    np.testing.assert_allclose(few(samples), view.means()(samples), rtol=1e-9, atol=1e-12)
+
+
 def test_combined_modes_share_the_samples_of_their_parts(narrow, narrow_workshop, narrow_reduced):
     """A combination has the bins of its parts one after the other, and takes no samples of its own."""
     both = narrow.model_copy(update={"modes": ("grism-4-to-5-um", "grism-2-to-4-um", "combined")})
