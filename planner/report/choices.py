@@ -40,11 +40,11 @@ def choice_view(result: ChoiceResult, width: int) -> Group:
     return Group(
         _headline(result),
         Text(f"Modes: {modes}."),
-        *_titled("What it is worth in the hours given", _ranking(ranked, letters, width), _NOTE),
+        *_titled("What it is worth in the hours given", _ranking(ranked, letters, width), _note(width)),
         _rest(result, ranked),
         *_titled("Which gas wins, over the opinions", _winners(result)),
         *_titled("Patterns: several gases in one mode", _patterns(result, letters), _PATTERN_NOTE),
-        *_titled("Reach", _reach(result.choices, letters), _REACH_NOTE),
+        *_titled("Reach", _reach(result.choices, letters, width), _REACH_NOTE),
         *_list(
             "No line data yet", [", ".join(gas_text(gas) for gas in result.without_data)] * bool(result.without_data)
         ),
@@ -57,11 +57,18 @@ def choice_view(result: ChoiceResult, width: int) -> Group:
     )
 
 
-_NOTE = (
-    "transits: at the mixing ratio shown, all unknowns marginalised; all known: with only the gas unknown. bits: what "
-    "the measured amplitude tells about the hypothesis; yes/no: what a bare detection tells. opinions: 16 and 84 % of "
-    "them give less. chance: of the hypothesis after a detection, and after a null, between 16 and 84 % of opinions."
+_NOTES = (
+    ("\ntransits", "transits: at the mixing ratio shown, all unknowns marginalised"),
+    ("all\nknown", "; all known: with only the gas unknown"),
+    ("\nbits", ". bits: what the measured amplitude tells about the hypothesis"),
+    ("yes/no\nbits", "; yes/no: what a bare detection tells"),
+    ("opinions\n16-84 %", ". opinions: 16 and 84 % of them give less"),
+    (
+        "chance\nif seen",
+        ". chance: of the hypothesis after a detection, and after a null, between 16 and 84 % of opinions.",
+    ),
 )
+"""By the heading of the column that each explains."""
 _PATTERN_NOTE = (
     "each alone: in the order of the gases. A gas that can go costs less than a twentieth of the bits when left out; "
     "one that is worth nothing alone may still be needed to tell another apart. Not seeing a gas counts as well."
@@ -148,7 +155,7 @@ def _ranking(choices: Sequence[Choice], letters: Mapping[str, str], width: int) 
         ("\ngas", 6), ("\n", 1), ("mixing\nratio", 7), ("\ntransits", 8), ("all\nknown", 5), ("S/N in\nthe h", 6),
         ("\nbits", 5), ("opinions\n16-84 %", 10), ("yes/no\nbits", 6), ("chance\nif seen", 9), ("if not\nseen", 9),
     )  # fmt: skip
-    shown = [heading for heading, _ in columns if width >= _WIDE or heading not in _WIDE_ONLY]
+    shown = [heading for heading, _ in columns if _is_shown(heading, width)]
     for heading, least in columns:
         if heading in shown:
             left = heading in ("\ngas", "\n")
@@ -170,6 +177,16 @@ def _ranking(choices: Sequence[Choice], letters: Mapping[str, str], width: int) 
         )
         table.add_row(*(cell for cell, (heading, _) in zip(cells, columns, strict=True) if heading in shown))
     return table
+
+
+def _is_shown(heading: str, width: int) -> bool:
+    """Whether a terminal is wide enough for a column."""
+    return width >= _WIDE or heading not in _WIDE_ONLY
+
+
+def _note(width: int) -> str:
+    """What the columns that are shown mean."""
+    return "".join(words for heading, words in _NOTES if _is_shown(heading, width))
 
 
 def _rest(result: ChoiceResult, ranked: Sequence[Choice]) -> Text:
@@ -230,15 +247,16 @@ def _against_single(pattern: Pattern) -> str:
     return f"{verdict} {gas_text(gas)}, {bits_text(bits)}"
 
 
-def _reach(choices: Sequence[Choice], letters: Mapping[str, str]) -> Table:
+def _reach(choices: Sequence[Choice], letters: Mapping[str, str], width: int) -> Table:
+    wide = width >= _WIDE
     table = _table()
     table.add_column("\ngas", min_width=7)
     table.add_column("\n")
-    for heading in ("range\nbelieved", "\ndetects", "\nfloor", "null\nexcludes"):
-        table.add_column(heading, justify="right")
-    table.add_column("like")
+    for heading in (*["range\nbelieved"] * wide, "\ndetects", "\nfloor", "null\nexcludes"):
+        table.add_column(heading, justify="right", no_wrap=True)
+    table.add_column("\nlike", no_wrap=True)
     table.add_column("\nunique", justify="right", no_wrap=True)
-    table.add_column("\nbest bands, um", ratio=1)
+    table.add_column("\nbest bands, um" if wide else "\nbest band, um", ratio=1)
     for choice in choices:
         low, high = choice.mixing_ratio_range
         like = choice.resembling
@@ -247,11 +265,11 @@ def _reach(choices: Sequence[Choice], letters: Mapping[str, str]) -> Table:
         table.add_row(
             gas_text(choice.gas),
             letters[choice.mode],
-            f"{ratio_text(low)} - {ratio_text(high)}",
+            *[f"{ratio_text(low)} - {ratio_text(high)}"] * wide,
             *(_ratio_or_never(x) for x in (choice.reachable_ratio, choice.limit_ratio, choice.excluded_ratio)),
             f"{gas_text(like.gas)} ({like.snr_left:.2f})" if like else "-",
             f"{choice.uniqueness:.2f}",
-            bands_text(choice.plan.best_bands[:2]) or "-",
+            bands_text(choice.plan.best_bands[: 2 if wide else 1]) or "-",
         )
     return table
 
