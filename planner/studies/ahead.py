@@ -52,10 +52,8 @@ def build_ahead(gases: Iterable[str], store: Store, *, owner: object) -> subproc
 
 
 def _threads() -> int:
-    """As many as numba would use, which the user may have limited."""
-    from numba import config
-
-    return int(config.NUMBA_NUM_THREADS)
+    """As many as numba would use, which the user may have limited; to ask numba would take as long as to begin."""
+    return int(os.environ.get("NUMBA_NUM_THREADS") or os.cpu_count() or 1)
 
 
 def _stop(process: subprocess.Popen[bytes]) -> None:
