@@ -150,7 +150,9 @@ def advance(state: NestedState, ln_likelihood: LnLikelihood, *, seed: int, worke
 
 
 def remaining(state: NestedState) -> float:
-    """By how much the live points can still raise ln(evidence), at most about."""
+    """By how much the live points can still raise ln(evidence), at most about; nothing where they are all alike."""
+    if np.ptp(state.live_ln_likelihood) == 0:
+        return 0.0
     best = float(state.live_ln_likelihood.max()) + _ln_left(state)
     dead = logsumexp(_ln_shares(state)[: len(state.dead)] + state.dead_ln_likelihood) if len(state.dead) else -np.inf
     return float(np.logaddexp(dead, best) - dead)

@@ -57,6 +57,15 @@ def test_information_of_a_flat_likelihood_is_none():
     assert run.information == pytest.approx(0, abs=1e-6)
 
 
+def test_a_constant_likelihood_is_done_at_once():
+    """Its mean over the prior is itself, and nothing more can be learnt."""
+    state = begin(lambda point: -3.0, 2, live=LIVE, seed=1)
+    assert remaining(state) == 0
+    run = outcome(state)
+    assert run.ln_evidence == pytest.approx(-3)
+    assert run.information == pytest.approx(0, abs=1e-12)
+
+
 def test_taken_up_again(state):
     """From a kept state a run goes on as if it had never stopped."""
     kept = begin(hill, 2, live=LIVE, seed=1)
