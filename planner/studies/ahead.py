@@ -1,8 +1,8 @@
-"""What a first run needs and the store has not got yet, made on a second core while the first reads and compiles.
+"""What a first run needs and the store has not got yet, made on two cores: lists on one, compiled loops on the other.
 
-A second interpreter builds missing line lists, the last needed first, and then compiles the kernels of the
-atmosphere. It shares nothing with the first but the store and numba's cache: whatever it has not finished, or could
-not do, the first does itself when it comes to need it, and says what is wrong with it.
+A second interpreter builds missing line lists in the order in which they will be needed, while this one compiles. They
+share nothing but the store: whatever the other has not begun, or could not do, this one does itself when it comes to
+need it, and says what is wrong with it.
 """
 
 from __future__ import annotations
@@ -22,9 +22,10 @@ __all__ = ["build_ahead"]
 
 
 def build_ahead(gases: Iterable[str], store: Store, *, owner: object) -> subprocess.Popen[bytes] | None:
-    """Start to build the lists of some gases in another process; None where that would gain nothing.
+    """Have the lists of some gases built by another process and compile meanwhile; None where that gains nothing.
 
     A single list is built sooner than another interpreter has come up, and with one core there is nothing to share.
+    The other process may still be at work on the return.
 
     Parameters
     ----------
@@ -40,7 +41,7 @@ def build_ahead(gases: Iterable[str], store: Store, *, owner: object) -> subproc
     if len(missing) < 2 or _threads() < 2:
         return None
     process = subprocess.Popen(
-        [sys.executable, "-m", __name__, *reversed(missing)],
+        [sys.executable, "-m", __name__, *missing],
         cwd=Path(__file__).parents[2],  # there -m finds this very package
         env={**os.environ, "LIMBCAST_STORE": str(store.folder.absolute())},
         stdin=subprocess.DEVNULL,
@@ -48,6 +49,8 @@ def build_ahead(gases: Iterable[str], store: Store, *, owner: object) -> subproc
         stderr=subprocess.DEVNULL,
     )
     weakref.finalize(owner, _stop, process)
+    for kernels in ("planner.spectroscopy._kernels", "planner.atmosphere.kernels"):
+        import_module(kernels)
     return process
 
 
@@ -65,7 +68,6 @@ def _main(gases: Sequence[str]) -> None:
     store = Store()
     for gas in gases:
         build_lines(read_constants(gas), store)
-    import_module("planner.atmosphere.kernels")
 
 
 if __name__ == "__main__":
