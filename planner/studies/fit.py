@@ -7,7 +7,7 @@ full grid as well, and the change that this makes is reported.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from importlib import metadata
 from pathlib import Path
@@ -25,9 +25,9 @@ from planner.spectroscopy.store import digest
 from planner.studies.fitting.draws import bin_report, drawn, offsets, recheck, with_level
 from planner.studies.fitting.likelihood import LevelledData
 from planner.studies.fitting.observed import fitted_gases, fitted_scenario, lacking, view_observed
-from planner.studies.fitting.posterior import found_of, goodness_of
+from planner.studies.fitting.posterior import cut_by_its_prior, found_of, goodness_of
 from planner.studies.fitting.problem import FitProblem
-from planner.studies.fitting.records import Evidence, FitResult
+from planner.studies.fitting.records import Evidence, FitResult, Found
 from planner.studies.fitting.unknowns import domain_of_fit, unknowns_of
 from planner.studies.reduced import ReducedError, reduce_opacity
 from planner.studies.workshop import Progress, Workshop
@@ -106,6 +106,7 @@ def fit(
         for n, (problem, run) in enumerate(zip(bench.problems, runs, strict=True))
     ]
     problem, run, posterior = bench.problems[0], runs[0], posteriors[0]
+    found = tuple(found_of(u, d) for u, d in zip(problem.unknowns, posterior.shown.T, strict=True))
     best_ppm = with_level(problem.data, problem.spectrum_ppm(run.points[np.argmax(run.ln_likelihood)]))
     free = len(problem.unknowns) + (len(observed.detectors) if problem.data.offset_ppm else 0)
     return FitResult(
@@ -114,7 +115,7 @@ def fit(
         spectrum=spectrum,
         seed=seed,
         live=live,
-        found=tuple(found_of(u, d) for u, d in zip(problem.unknowns, posterior.shown.T, strict=True)),
+        found=found,
         offsets=offsets(observed, problem.data, posterior),
         evidences=tuple(_evidence(p, r) for p, r in zip(bench.problems, runs, strict=True)),
         goodness=goodness_of(problem.data, best_ppm, (observed.from_um, observed.to_um), free),
@@ -122,7 +123,7 @@ def fit(
         bins=bin_report(observed, problem, best_ppm, posteriors),
         line_data=(*bench.workshop.line_data(), *bench.workshop.store.notices),
         assumptions=_assumptions(scenario, problem, bench.error, live, seed),
-        cautions=(*_CAUTIONS, *bench.cautions),
+        cautions=(*_CAUTIONS, *bench.cautions, *_cut(scenario, found)),
         version=__version__,
     )
 
@@ -247,6 +248,17 @@ def _evidence(problem: FitProblem, run: NestedRun) -> Evidence:
         parameters=len(problem.unknowns),
         evaluations=run.evaluations,
         effective_size=run.effective_size,
+    )
+
+
+def _cut(scenario: Scenario, found: Sequence[Found]) -> tuple[str, ...]:
+    """Gases whose posterior the prior cuts off."""
+    high = scenario.fit.mixing_ratio_range[1]
+    return tuple(
+        f"{one.name} runs into the upper end of its prior, {high:g}: its range would reach further with a wider "
+        "mixing_ratio_range in [fit]"
+        for one in found
+        if cut_by_its_prior(one)
     )
 
 

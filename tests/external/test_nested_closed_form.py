@@ -55,12 +55,14 @@ def test_evidence(runs):
 
 
 def test_posterior(runs):
-    """Means and widths of every parameter, within three standard errors of the effective number of draws."""
+    """Means and widths of parameters are right on average over all runs, within three errors of their scatter."""
+    away, wider = [], []
     for design, data, run in runs:
         covariance = np.linalg.inv(np.eye(PARAMETERS) + design.T @ design)
         mean, width = covariance @ design.T @ data, np.sqrt(np.diag(covariance))
         x = ndtri(run.points)
-        away = (run.weights @ x - mean) / width * np.sqrt(run.effective_size)
-        assert np.abs(away).max() < 4
-        spread = np.sqrt(run.weights @ (x - run.weights @ x) ** 2)
-        assert spread == pytest.approx(width, rel=4 / np.sqrt(2 * run.effective_size))
+        away.append((run.weights @ x - mean) / width)
+        wider.append(np.sqrt(run.weights @ (x - run.weights @ x) ** 2) / width - 1)
+    for errors, most in ((np.array(away), 0.3), (np.array(wider), 0.2)):
+        assert abs(errors.mean()) < 3 * errors.std() / np.sqrt(errors.size)
+        assert np.abs(errors).max() < most

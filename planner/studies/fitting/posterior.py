@@ -13,7 +13,7 @@ from planner.studies.fitting.likelihood import LevelledData
 from planner.studies.fitting.records import Found, GoodnessOfFit, Residual
 from planner.studies.fitting.unknowns import Unknown
 
-__all__ = ["LeftOut", "effective_size", "found_of", "goodness_of", "leave_out_each", "offset_of"]
+__all__ = ["LeftOut", "cut_by_its_prior", "effective_size", "found_of", "goodness_of", "leave_out_each", "offset_of"]
 
 Array = NDArray[np.float64]
 
@@ -23,6 +23,8 @@ _LOW_END = 0.2
 _TOLD_FROM_NONE = np.exp(-2.5)
 """With less than this of its share left at the low end, a gas counts as told from none: moderate evidence on Jeffreys'
 scale (see `planner.detection.evidence`), for there the likelihood is that of none."""
+_TOP_END = 0.05
+"""Part of a gas's prior at its upper end, which a posterior that is not cut there hardly reaches."""
 _TOO_BAD, _TOO_GOOD = 0.01, 0.999
 _LARGEST = 3
 _LEAST_SIZE = 0.1
@@ -73,6 +75,12 @@ def offset_of(detector: str, draws: Array, width_ppm: float) -> Found:
         draws=draws,
         prior_ends=(-3 * width_ppm, 3 * width_ppm),
     )
+
+
+def cut_by_its_prior(found: Found) -> bool:
+    """Whether the posterior of a gas runs into the upper end of its prior: denser there than the prior itself."""
+    low, high = found.prior_ends
+    return found.gas and float(np.mean(found.draws > high - _TOP_END * (high - low))) > _TOP_END
 
 
 def goodness_of(data: LevelledData, best_ppm: Array, edges_um: tuple[Array, Array], parameters: int) -> GoodnessOfFit:

@@ -20,16 +20,19 @@ from planner.studies.fit import fit
 from planner.studies.fitting.observed import fitted_scenario, view_observed
 from planner.studies.workshop import Workshop
 
-TRUTH = {"CH4": 1e-4, "CO2": 4e-4, "temperature": 250.0, "radius": 1.0, "gravity": 1.0}
+TRUTH = {"CH4": 1e-4, "CO2": 4e-4, "temperature": 250.0, "radius": 1.0, "gravity": 1.0, "cloud top": 0.3}
 ERROR_PPM = 15.0
 COMMAND = [sys.executable, "-c", "from planner.cli import main; main()"]
 
 
 def demo_with_methane():
-    """The demonstration's planet with CH4 as its only candidate: CH4, CO2, H2O and five numbers more are unknown."""
+    """The demonstration's planet under a cloud, CH4 its only candidate: three gases and five numbers are unknown.
+
+    (Its clear sky would be the end of a one-sided prior, near which no posterior has its middle.)
+    """
     text = (data_folder("configs") / "scenarios" / "demo.toml").read_text()
-    first = text.index('[[candidates]]\ngas = "CFC-12"')
-    return text[:first] + text[text.index("[goal]") :]
+    first, last = text.index('[[candidates]]\ngas = "CFC-12"'), text.index("[goal]")
+    return text[:first] + '[atmosphere.cloud]\ntop = "0.3 bar"\n' + text[last:]
 
 
 def methane_spectrum(scenario):

@@ -7,7 +7,14 @@ import pytest
 from scipy import stats
 
 from planner.studies.fitting.likelihood import LevelledData
-from planner.studies.fitting.posterior import effective_size, found_of, goodness_of, leave_out_each, offset_of
+from planner.studies.fitting.posterior import (
+    cut_by_its_prior,
+    effective_size,
+    found_of,
+    goodness_of,
+    leave_out_each,
+    offset_of,
+)
 from planner.studies.fitting.unknowns import Unknown
 
 GAS = Unknown(name="CH4", words="flat", value=lambda u: 1e-10 * 1e8**u, gas=True, logarithmic=True)
@@ -30,6 +37,14 @@ def test_a_gas_that_is_not_told_from_none():
     found = found_of(GAS, draws)
     assert found.low_end_share == pytest.approx(2.0, rel=0.1)
     assert np.log10(found.upper_95) == pytest.approx(-6.2, abs=0.05)
+
+
+def test_a_posterior_that_the_prior_cuts():
+    """Only where it runs into the upper end."""
+    rng = np.random.default_rng(1)
+    assert cut_by_its_prior(found_of(GAS, rng.uniform(-4, -2, 1000)))
+    assert not cut_by_its_prior(found_of(GAS, rng.uniform(-10, -4, 1000)))
+    assert not cut_by_its_prior(found_of(GAS, rng.normal(-4, 0.3, 1000)))
 
 
 def test_offset():
