@@ -63,9 +63,10 @@ class BinMeans:
         result = np.empty((*samples.shape[:-1], self._detector.size))
         for detector in np.unique(self._detector):
             mine = self._detector == detector
-            running = np.cumsum(samples * self._weights[detector], axis=-1)
-            running = np.concatenate([np.zeros((*samples.shape[:-1], 1)), running], axis=-1)
-            result[..., mine] = running[..., self.stop[mine]] - running[..., self.start[mine]]
+            first, last = self.start[mine].min(), self.stop[mine].max()
+            running = np.zeros((*samples.shape[:-1], last - first + 1))
+            np.cumsum(samples[..., first:last] * self._weights[detector, first:last], axis=-1, out=running[..., 1:])
+            result[..., mine] = running[..., self.stop[mine] - first] - running[..., self.start[mine] - first]
         return result
 
 
