@@ -40,14 +40,17 @@ def build_ahead(gases: Iterable[str], store: Store, *, owner: object) -> subproc
     missing = [gas for gas in gases if gas in known and lines_missing(read_constants(gas), store)]
     if len(missing) < 2 or _threads() < 2:
         return None
-    process = subprocess.Popen(
-        [sys.executable, "-m", __name__, *missing],
-        cwd=Path(__file__).parents[2],  # there -m finds this very package
-        env={**os.environ, "LIMBCAST_STORE": str(store.folder.absolute())},
-        stdin=subprocess.DEVNULL,
-        stdout=subprocess.DEVNULL,
-        stderr=subprocess.DEVNULL,
-    )
+    try:
+        process = subprocess.Popen(
+            [sys.executable, "-m", __name__, *missing],
+            cwd=Path(__file__).parents[2],  # there -m finds this very package
+            env={**os.environ, "LIMBCAST_STORE": str(store.folder.absolute())},
+            stdin=subprocess.DEVNULL,
+            stdout=subprocess.DEVNULL,
+            stderr=subprocess.DEVNULL,
+        )
+    except OSError:  # where no other process may be started, the lists are built here
+        return None
     weakref.finalize(owner, _stop, process)
     for kernels in ("planner.spectroscopy._kernels", "planner.atmosphere.kernels"):
         import_module(kernels)

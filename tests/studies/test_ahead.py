@@ -44,3 +44,9 @@ def test_it_ends_with_its_owner(tmp_path):
     assert process.poll() is None
     del owner
     assert process.returncode is not None
+
+
+def test_without_another_process(tmp_path, monkeypatch):
+    """Where none can be started nothing is built ahead, and nothing fails."""
+    monkeypatch.setattr(ahead.sys, "executable", str(tmp_path / "none"))
+    assert ahead.build_ahead(["HCl", "HF"], Store(tmp_path), owner=Owner()) is None
