@@ -2,7 +2,8 @@
 
 Tables hold log10 of the line cross-section as float32 on (pressure, wavenumber), one per gas, temperature node and
 block of the grid. Temperature nodes stand 12 % apart and are interpolated in 1/T, in which a Boltzmann factor is
-linear. Pressures are three per decade from 1e-6 to 10 bar and one Doppler-limited row that is held below.
+linear. Pressures are three per decade from 1e-6 to 10 bar, higher where the air reaches deeper, and one Doppler-limited
+row that is held below.
 """
 
 from __future__ import annotations
@@ -10,7 +11,7 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping, Sequence
 from copy import copy
 from functools import lru_cache
-from math import floor, log
+from math import ceil, floor, log, log10
 from pathlib import Path
 from typing import Any
 
@@ -25,9 +26,10 @@ from planner.spectroscopy.sources import GasSource, LineLibrary, NoDataError
 from planner.spectroscopy.store import Store, digest
 from planner.spectroscopy.watercontinuum import WINDOWS_PER_CM, water_continuum
 
-__all__ = ["LEAST_SELF_FRACTION", "PRESSURES_BAR", "TEMPERATURE_STEP", "Opacities", "temperature_nodes"]
+__all__ = ["LEAST_SELF_FRACTION", "TEMPERATURE_STEP", "Opacities", "pressure_rows", "temperature_nodes"]
 
-PRESSURES_BAR: NDArray[np.float64] = np.concatenate([[1e-8], np.logspace(-6, 1, 22)])
+_ROWS_PER_DECADE = 3
+_HIGHEST_BAR = 10.0
 TEMPERATURE_STEP = 1.12
 _LOWEST_K = 100.0
 _NOTHING = np.float32(-60.0)
@@ -47,6 +49,13 @@ def temperature_nodes(temperature_k: float) -> tuple[float, float]:
     return _LOWEST_K * TEMPERATURE_STEP**low, _LOWEST_K * TEMPERATURE_STEP**high
 
 
+def pressure_rows(highest_bar: float = _HIGHEST_BAR) -> NDArray[np.float64]:
+    """Pressures of the tables in bar, shape ``(pressure,)``: to 10 bar, or as far above as they are asked for."""
+    steps = ceil(_ROWS_PER_DECADE * log10(max(highest_bar, _HIGHEST_BAR)) - 1e-9)
+    rows = np.logspace(-6, steps / _ROWS_PER_DECADE, 6 * _ROWS_PER_DECADE + steps + 1)
+    return np.concatenate([[1e-8], rows])
+
+
 class Opacities:
     """Cross-sections of gases and pairs on one grid, or on a selection of its samples.
 
@@ -60,6 +69,8 @@ class Opacities:
         The samples.
     air : mapping of formula to mixing ratio
         Sets the broadening.
+    highest_bar : float
+        The tables reach at least this pressure, and at least 10 bar.
     wing_per_cm : float
         Line wings are cut at this distance.
     water_continuum : bool
@@ -75,12 +86,14 @@ class Opacities:
         grid: LogGrid,
         *,
         air: Mapping[str, float],
+        highest_bar: float = _HIGHEST_BAR,
         wing_per_cm: float = 25.0,
         water_continuum: bool = True,
         progress: Progress | None = None,
     ) -> None:
         self.grid = grid
         self.wavenumber_per_cm = grid.wavenumber_per_cm
+        self.pressures_bar = pressure_rows(highest_bar)
         self._air = dict(air)
         self._library = library
         self._store = store
@@ -173,14 +186,14 @@ class Opacities:
                 table = self._interpolated(source, temperature_k, self_fraction)
                 if source.measured is not None:
                     table = np.where(source.measured_at(wavenumber), _NOTHING, table)
-            smooth = source.smooth_cross_section(wavenumber, temperature_k, PRESSURES_BAR)
+            smooth = source.smooth_cross_section(wavenumber, temperature_k, self.pressures_bar)
             if smooth is not None and len(smooth) == 1:
                 flat = flat + smooth[0]
             elif smooth is not None:
                 table = _log10(smooth if table is None else smooth + 10.0**table)
         return GasOpacity(
             formula=formula,
-            pressures_bar=PRESSURES_BAR,
+            pressures_bar=self.pressures_bar,
             log10_cross_section=table,
             flat_cross_section_cm2=flat if np.any(flat) else None,
         )
@@ -216,7 +229,7 @@ class Opacities:
     def _build_node(self, formula: str, temperature_k: float, self_fraction: float) -> NDArray[np.float32]:
         """Table on the whole grid at a temperature node, shape ``(pressure, wavenumber)``."""
         source, mixed = self._mixed(formula)
-        table = np.full((PRESSURES_BAR.size, self.grid.count), _NOTHING, dtype=np.float32)
+        table = np.full((self.pressures_bar.size, self.grid.count), _NOTHING, dtype=np.float32)
         blocks = self.grid.blocks()
         for number, block in enumerate(blocks):
             self._progress(f"{formula} at {temperature_k:.0f} K", number / len(blocks))
@@ -232,7 +245,7 @@ class Opacities:
         source, mixed = self._mixed(formula)
         wavenumber = np.ascontiguousarray(self.wavenumber_per_cm)
         values = self._sums(source, mixed, wavenumber, digest(wavenumber.tobytes()), temperature_k, self_fraction)
-        return np.full((PRESSURES_BAR.size, wavenumber.size), _NOTHING, np.float32) if values is None else values
+        return np.full((self.pressures_bar.size, wavenumber.size), _NOTHING, np.float32) if values is None else values
 
     def _mixed(self, formula: str) -> tuple[GasSource, Broadened]:
         """The data of a gas with lines, and its lines as the air broadens them."""
@@ -267,7 +280,7 @@ class Opacities:
             "wing_per_cm": self._wing_per_cm,
             "lowered_at_the_cut": int(lowered.sum()),
             "block": place,
-            "pressures_bar": PRESSURES_BAR.tolist(),
+            "pressures_bar": self.pressures_bar.tolist(),
         }
 
         def sums(subtract_at_wing: bool) -> NDArray[np.float64]:
@@ -277,7 +290,7 @@ class Opacities:
                 lines.where(slice(first, last)),
                 wavenumber,
                 temperature_k=temperature_k,
-                pressures_bar=PRESSURES_BAR,
+                pressures_bar=self.pressures_bar,
                 self_fraction=self_fraction,
                 wing_per_cm=self._wing_per_cm,
                 subtract_at_wing=subtract_at_wing,

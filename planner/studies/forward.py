@@ -12,9 +12,12 @@ from planner.atmosphere.layers import Air
 from planner.atmosphere.refraction import refraction_boundary
 from planner.atmosphere.transmission import TransitDepth, transit_depth
 from planner.scenario.records import Case, Scenario
-from planner.spectroscopy.opacity import Opacities
+from planner.spectroscopy.grid import LogGrid
+from planner.spectroscopy.opacity import Opacities, Progress
+from planner.spectroscopy.sources import LineLibrary
+from planner.spectroscopy.store import Store
 
-__all__ = ["NO_CHANGE", "BinnedDepth", "Change", "ForwardModel"]
+__all__ = ["NO_CHANGE", "BinnedDepth", "Change", "ForwardModel", "opacities_of"]
 
 Array = NDArray[np.float64]
 
@@ -51,6 +54,23 @@ class BinnedDepth:
     depth_ppm: Array
     shares_ppm: Mapping[str, Array]
     slopes_ppm: Mapping[str, Array]
+
+
+def opacities_of(
+    scenario: Scenario, library: LineLibrary, store: Store, grid: LogGrid, progress: Progress | None = None
+) -> Opacities:
+    """The opacities that a scenario asks for, on a grid."""
+    atmosphere = scenario.atmosphere
+    return Opacities(
+        library,
+        store,
+        grid,
+        air=scenario.air(),
+        highest_bar=atmosphere.pressure_bar,
+        wing_per_cm=atmosphere.line_wing_per_cm,
+        water_continuum=atmosphere.water_continuum,
+        progress=progress,
+    )
 
 
 class ForwardModel:

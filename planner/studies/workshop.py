@@ -12,12 +12,11 @@ from numpy.typing import NDArray
 
 from planner.detection.significance import Measurement
 from planner.scenario.records import Case, Scenario
-from planner.spectroscopy.opacity import Opacities
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
 from planner.studies.ahead import build_ahead
 from planner.studies.contamination import bin_factors, contaminated, region_directions
-from planner.studies.forward import BinnedDepth, ForwardModel
+from planner.studies.forward import BinnedDepth, ForwardModel, opacities_of
 from planner.studies.nuisances import Direction, directions
 from planner.studies.observe import ModeView, observing_grid, view_modes
 
@@ -70,15 +69,7 @@ class Workshop:
         self.library = LineLibrary(self.store, lines_folder)
         grid = view.grid if view is not None else observing_grid(scenario, samples_per_unit_ln)
         self.views = [view] if view is not None else view_modes(scenario, grid)
-        self.opacities = Opacities(
-            self.library,
-            self.store,
-            grid,
-            air=scenario.air(),
-            wing_per_cm=scenario.atmosphere.line_wing_per_cm,
-            water_continuum=scenario.atmosphere.water_continuum,
-            progress=progress,
-        )
+        self.opacities = opacities_of(scenario, self.library, self.store, grid, progress)
         self.model = self._on_every(1)
         self.thin = self._on_every(_STRIDE)
 

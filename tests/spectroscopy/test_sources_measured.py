@@ -15,7 +15,7 @@ from planner.spectroscopy.files.xsc import CrossSectionTable
 from planner.spectroscopy.grid import LogGrid
 from planner.spectroscopy.lines import Lines
 from planner.spectroscopy.lists.build import read_constants, smooth_cross_section
-from planner.spectroscopy.opacity import PRESSURES_BAR, Opacities
+from planner.spectroscopy.opacity import Opacities, pressure_rows
 from planner.spectroscopy.sources import LineLibrary, NoDataError
 from planner.spectroscopy.store import Store
 
@@ -55,7 +55,7 @@ def test_measured_bands_replace_embedded_ones_in_their_range(library, tmp_path):
     """Inside the table its values, outside the embedded bands, nothing added up; the sentence names both."""
     source = library(tables=(table("CCl3F", 5e-18),)).gas("CFC-11")
     inside = (NU >= 820) & (NU <= 870)
-    values = source.smooth_cross_section(NU, 250.0, PRESSURES_BAR)
+    values = source.smooth_cross_section(NU, 250.0, pressure_rows())
     assert values.shape == (1, NU.size)
     np.testing.assert_allclose(values[0, inside], 5e-18)
     embedded = smooth_cross_section(read_constants("CCl3F"), NU, 250.0)
@@ -90,7 +90,7 @@ def test_opacity_follows_measured_pressures(library, tmp_path):
     column = 10.0 ** gas.log10_cross_section[:, NU.searchsorted(850.0)].astype(float)
     assert column[0] == pytest.approx(1e-18, rel=1e-3)
     assert column[-1] == pytest.approx(3e-18, rel=1e-3)
-    at_half = np.interp(0.5, PRESSURES_BAR, column)
+    at_half = np.interp(0.5, pressure_rows(), column)
     assert at_half == pytest.approx(2e-18, rel=0.03)  # half a bar is 375 Torr
 
 

@@ -27,12 +27,11 @@ from planner.instrument.modes import Mode
 from planner.instrument.noise import transit_noise
 from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.grid import SAMPLES_PER_UNIT_LN, LogGrid
-from planner.spectroscopy.opacity import Opacities
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
 from planner.star.flux import photon_flux
 from planner.studies.checks.fits import Fits
-from planner.studies.forward import BinnedDepth, Change, ForwardModel
+from planner.studies.forward import BinnedDepth, Change, ForwardModel, opacities_of
 from planner.studies.nuisances import directions
 from planner.studies.observe import BinMeans, source_of_light
 from planner.studies.rivals import rival_ratio
@@ -276,15 +275,7 @@ def make_bench(
     weights = np.tile(photons[index] * grid.wavelength_um[index], (int(bins.detector.max()) + 1, 1))
     store = Store()
     library = LineLibrary(store, lines_folder)
-    opacities = Opacities(
-        library,
-        store,
-        grid,
-        air=scenario.air(),
-        wing_per_cm=scenario.atmosphere.line_wing_per_cm,
-        water_continuum=scenario.atmosphere.water_continuum,
-        progress=progress,
-    ).selection(index, own_tables=True)
+    opacities = opacities_of(scenario, library, store, grid, progress).selection(index, own_tables=True)
     gas = claim.claim.gas
     if not (opacities.has_data(gas) and opacities.covered(gas).any()):
         raise RangeError(

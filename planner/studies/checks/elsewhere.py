@@ -14,13 +14,12 @@ from planner.detection.significance import Measurement
 from planner.instrument.modefiles import list_modes
 from planner.report.words import band_text, count_text, gas_text, hours_text
 from planner.scenario.records import Scenario
-from planner.spectroscopy.opacity import Opacities
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
 from planner.studies.checks.bench import Bench, height_ppm
 from planner.studies.checks.findings import Check, Finding, Outcome
 from planner.studies.checks.rivalry import Rivalry
-from planner.studies.forward import Change, ForwardModel
+from planner.studies.forward import Change, ForwardModel, opacities_of
 from planner.studies.observe import ModeView, observing_grid, view_modes
 from planner.studies.workshop import see
 
@@ -92,15 +91,8 @@ def look_elsewhere(
 def _table(scenario: Scenario, lines_folder: Path | None, progress: Progress | None) -> _Table:
     grid = observing_grid(scenario)
     views, store = view_modes(scenario, grid), Store()
-    opacities = Opacities(
-        LineLibrary(store, lines_folder),
-        store,
-        grid,
-        air=scenario.air(),
-        wing_per_cm=scenario.atmosphere.line_wing_per_cm,
-        water_continuum=scenario.atmosphere.water_continuum,
-        progress=progress,
-    ).selection(np.arange(0, grid.count, _STRIDE), own_tables=True)
+    opacities = opacities_of(scenario, LineLibrary(store, lines_folder), store, grid, progress)
+    opacities = opacities.selection(np.arange(0, grid.count, _STRIDE), own_tables=True)
     return _Table(views=views, model=ForwardModel(scenario, opacities, [view.means(_STRIDE) for view in views]))
 
 
