@@ -140,11 +140,11 @@ def _draw_gas(axes: Axes, found: Found, *, first: bool) -> None:
     name = gas_label(found.name) if gas_text(found.name) == found.name else gas_text(found.name)
     if found.upper_95 is not None:
         axes.axvline(np.log10(found.upper_95), color="black", lw=1.0, dashes=(1.0, 1.0), zorder=4)
-        axes.set_title(f"{name}: below\n{value_text(found, found.upper_95)} (95 %)", pad=3, fontsize=7.5)
+        axes.set_title(f"{name}, 95 %:\nbelow {value_text(found, found.upper_95)}", pad=3, fontsize=7.5)
     else:
         axes.axvline(np.log10(found.median), color="black", lw=1.0, zorder=4)
         text = range_text(found, found.low_68, found.high_68)
-        axes.set_title(f"{name}:\n{text}", pad=3, fontsize=7.5)
+        axes.set_title(f"{name}, 68 %:\n{text}", pad=3, fontsize=7.5)
     axes.set_xlim(low, high)
     axes.set_ylim(0, 1.12 * max(float(heights.max()), 1.5 / (high - low)))
     axes.xaxis.set_major_locator(MaxNLocator(5, integer=True))
