@@ -24,7 +24,9 @@ def test_deep_surface_without_refraction():
     """Under 92 bar the air is opaque far above the surface, in every bin; under 0.1 bar it is not."""
     heights = []
     for pressure in ("92 bar", "0.1 bar"):
-        text = NARROW.replace('"1 bar"', f'"{pressure}"').replace("surface = true", "surface = true\nrefraction = false")
+        text = NARROW.replace('"1 bar"', f'"{pressure}"').replace(
+            "surface = true", "surface = true\nrefraction = false"
+        )
         scenario = parse_scenario(text)
         case = scenario.cases[0]
         depth = Workshop(scenario).thin.binned(case)[0].depth_ppm
