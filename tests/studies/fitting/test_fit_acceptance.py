@@ -54,6 +54,7 @@ def methane_spectrum(scenario):
 
 
 @pytest.mark.slow
+@pytest.mark.benchmark
 def test_finds_what_was_put_in(capsys):
     """The truth lies in the middle 95 % of every posterior, the full grid agrees, and the time is printed."""
     scenario = parse_scenario(demo_with_methane())
