@@ -79,13 +79,14 @@ def _bayes(gas: str, ln_bayes: float, error: float) -> list[str]:
     side = f"for {gas}" if for_it else f"against {gas}"
     odds = f"{exp(size):.3g}" if exp(min(size, 700.0)) < _MOST_ODDS else f"more than {_MOST_ODDS:.0e}"
     doubt = even_prior(size)
-    before = f"{doubt:.2g}" if doubt >= 1e-6 else "one in a million"
+    if doubt < 1 / _MOST_ODDS:
+        before = "less than one in a million" if for_it else "all but one in a million"
+    else:
+        before = f"{doubt:.2g}" if for_it else f"1 - {doubt:.2g}"
     return [
         f"ln(Bayes factor) {ln_bayes:+.2f} +/- {error:.2f}: {strength_of(size)} evidence {side} on Jeffreys' scale",
         f"the same in odds: the data move them by a factor of {odds} {side}",
-        f"the same as a demand: who gave {gas} a probability of "
-        + (f"{before} before the data" if for_it else f"1 - {before} before the data")
-        + " is at even odds after them",
+        f"the same as a demand: who gave {gas} a probability of {before} before the data is at even odds after them",
     ]
 
 

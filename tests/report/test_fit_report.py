@@ -106,6 +106,9 @@ def test_evidence_in_three_ways(result):
     against = " ".join(evidence_sentences(replace(result, evidences=(there, replace(absent, ln_evidence=-268.0)))))
     assert "by a factor of 7.39 against CH4" in against
     assert "1 - 0.12 before the data" in against
+    surely = " ".join(evidence_sentences(replace(result, evidences=(there, replace(absent, ln_evidence=-300.0)))))
+    assert "more than 1e+06 for CH4" in surely
+    assert "less than one in a million before the data" in surely
     alone = evidence_sentences(replace(result, evidences=(there,)))
     assert len(alone) == 1
 
