@@ -26,7 +26,7 @@ def start(store):
 def test_a_killed_build_keeps_what_was_finished(tmp_path):
     """After SIGKILL every stored entry reads well, and the next run uses it and ends as if nothing had happened."""
     run = start(tmp_path)
-    deadline = time.monotonic() + 120
+    deadline = time.monotonic() + 400
     while len(list(Store(tmp_path).entries())) < 6 and time.monotonic() < deadline:
         time.sleep(0.02)
     run.send_signal(signal.SIGKILL)
