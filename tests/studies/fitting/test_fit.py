@@ -6,15 +6,12 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from scipy import stats
 
 from planner.errors import RangeError, StoreError
 from planner.report.fitstate import FitFolder
-from planner.studies import fit as module
-from planner.studies.fit import fit, run_nested
+from planner.studies.fit import fit
 
 LIVE = 40
-SPECTRA, CALIBRATION_LIVE = 200, 30
 
 
 def small_fit(small, observed, **more):
@@ -120,40 +117,6 @@ def test_gas_without_data(small, small_observed):
     )
     with pytest.raises(RangeError, match=r"Ar: no data from 4.35 to 5.01 um; bring some with --lines"):
         small_fit(blind, small_observed, without="Ar")
-
-
-@pytest.mark.slow
-def test_ranks_of_the_truth_are_uniform(small, small_observed, capsys):
-    """Two hundred spectra from the priors, a fit to each: the truth lies anywhere in the posterior, evenly.
-
-    Truths are drawn from the priors and spectra from the same reduced opacity that fits them, with noise and a level;
-    the fits are whole runs of the nested sampling with few live points. Kolmogorov and Smirnov's test by scipy.
-    """
-    bench = module._set_up(small, small_observed, None, None, lambda text, share: None)
-    problem, rng = bench.problems[0], np.random.default_rng(17)
-    places = np.array([_place(problem, rng, seed) for seed in range(SPECTRA)])
-    chances = [stats.kstest(column, "uniform").pvalue for column in places.T]
-    with capsys.disabled():
-        names = [*(u.name for u in problem.unknowns), "level"]
-        print("\n" + ", ".join(f"{name} {chance:.2f}" for name, chance in zip(names, chances, strict=True)))
-        inside = [np.mean(np.abs(column - 0.5) < 0.34) for column in places.T]
-        print("in the middle 68 %: " + ", ".join(f"{share:.2f}" for share in inside))
-    assert min(chances) > 0.001
-
-
-def _place(problem, rng, seed):
-    """Where the truth lies in each posterior, 0 to 1."""
-    truth, data = rng.random(len(problem.unknowns)), problem.data
-    level = data.offset_ppm * rng.normal()
-    seen = problem.spectrum_ppm(truth) + level + data.error_ppm * rng.normal(size=data.error_ppm.size)
-    mine = replace(problem, data=replace(data, depth_ppm=seen))
-    run = run_nested(mine, live=CALIBRATION_LIVE, seed=seed, workers=2)
-    chosen = rng.choice(len(run.weights), size=100, p=run.weights)
-    levels = []
-    for point in run.points[chosen]:
-        mean, width = mine.data.level(problem.spectrum_ppm(point))
-        levels.append(mean[0] + width[0] * rng.normal())
-    return [*(run.weights @ (run.points < truth)), np.mean(np.array(levels) < level)]
 
 
 def test_limits_follow_the_draws(result):
