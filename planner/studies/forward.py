@@ -11,9 +11,10 @@ from numpy.typing import NDArray
 from planner.atmosphere.layers import Air
 from planner.atmosphere.refraction import refraction_boundary
 from planner.atmosphere.transmission import TransitDepth, transit_depth
+from planner.pool import Progress
 from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.grid import LogGrid
-from planner.spectroscopy.opacity import Opacities, Progress
+from planner.spectroscopy.opacity import Opacities
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
 

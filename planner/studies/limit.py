@@ -18,12 +18,12 @@ from scipy import special
 
 from planner import __version__
 from planner.detection.significance import Measurement, target_snr
+from planner.pool import in_threads
 from planner.scenario.records import Case, Scenario
 from planner.studies.domain import distinct_cases, domain_of
 from planner.studies.nuisances import prior_widths
 from planner.studies.outcomes import LimitCurve, LimitPoint, LimitResult, Obstacle
 from planner.studies.plan import CAUTIONS, assumptions, cautions_about_star
-from planner.studies.pool import in_threads
 from planner.studies.reduced import Reduced, reduce_opacity
 from planner.studies.vary import vary
 from planner.studies.workshop import Progress, Sight, Workshop, see

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from planner import __version__
 from planner.detection.significance import Measurement, target_snr
 from planner.errors import RangeError, ScenarioError
+from planner.pool import in_threads
 from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.molecules import find_molecule
 from planner.studies.domain import distinct_cases, domain_of
@@ -20,7 +21,6 @@ from planner.studies.nuisances import prior_widths
 from planner.studies.observe import ModeView
 from planner.studies.outcomes import MapAxis, MapResult
 from planner.studies.plan import CAUTIONS, assumptions, cautions_about_star
-from planner.studies.pool import in_threads
 from planner.studies.reduced import reduce_opacity
 from planner.studies.vary import PARAMETERS, Parameter, parameter_of, vary
 from planner.studies.workshop import Progress, Workshop, see

@@ -17,11 +17,11 @@ from scipy import special
 from scipy.stats import qmc, rankdata
 
 from planner.detection.significance import Measurement, target_snr
+from planner.pool import in_threads
 from planner.scenario.records import Case, Scenario, Star
 from planner.studies.domain import domain_of
 from planner.studies.nuisances import CLEAR_SKY_DECK_BAR
 from planner.studies.outcomes import Driver, TransitSpread
-from planner.studies.pool import in_threads
 from planner.studies.reduced import Reduced, reduce_opacity
 from planner.studies.results import PlanResult, PlanRow
 from planner.studies.vary import shifted_ratio, vary

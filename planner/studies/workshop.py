@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Protocol
@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.detection.significance import Measurement
+from planner.pool import Progress
 from planner.scenario.records import Case, Scenario
 from planner.spectroscopy.sources import LineLibrary
 from planner.spectroscopy.store import Store
@@ -23,7 +24,6 @@ from planner.studies.observe import ModeView, observing_grid, view_modes
 __all__ = ["Progress", "Setting", "Sight", "Workshop", "measurement_of", "see", "through"]
 
 Array = NDArray[np.float64]
-Progress = Callable[[str, float], None]
 
 _STRIDE = 4
 """Differences for nuisance directions use every fourth sample."""
@@ -65,7 +65,7 @@ class Workshop:
     ) -> None:
         self.scenario = scenario
         self.store = Store()
-        build_ahead(self._gases(), self.store, owner=self)
+        build_ahead(self._first_needed_first(), self.store, owner=self)
         self.library = LineLibrary(self.store, lines_folder)
         grid = view.grid if view is not None else observing_grid(scenario, samples_per_unit_ln)
         self.views = [view] if view is not None else view_modes(scenario, grid)
@@ -84,6 +84,12 @@ class Workshop:
         atmosphere = self.scenario.atmosphere
         searched = [gas for case in self.scenario.cases for gas in case.gases]
         return dict.fromkeys([*searched, *atmosphere.absorbers, *atmosphere.background])
+
+    def _first_needed_first(self) -> dict[str, None]:
+        """The same in the order in which their lines are needed: what the first search is about, the air, the rest."""
+        atmosphere, cases = self.scenario.atmosphere, self.scenario.cases
+        first = cases[0].gases if cases else ()
+        return dict.fromkeys([*first, *atmosphere.absorbers, *atmosphere.background, *self._gases()])
 
     def line_data(self) -> tuple[str, ...]:
         """One sentence per source used and per stretch not used, for every gas of the scenario."""
@@ -115,8 +121,8 @@ def see(setting: Setting, case: Case) -> Sight:
     others = [gas for gas in model.scenario.air(case) if gas not in case.gases]
     factors = bin_factors(model.scenario.star, views)
     spectrum = through(factors, model.binned(case, shares_of=[*case.gases, *others]))
-    null = through(factors, model.binned(case, shares_of=others, transparent=case.gases))
-    templates = [_template(case, there, absent) for there, absent in zip(spectrum, null, strict=True)]
+    null = through(factors, setting.thin.binned(case, shares_of=others, transparent=case.gases))
+    templates = _templates(model, case, spectrum, factors)
     nuisances = directions(setting.thin, case, null, views)
     nuisances += region_directions(model.scenario.star, null, views)
     usable = [np.isfinite(view.noise.depth_error_ppm) & ~view.noise.saturated for view in views]
@@ -138,11 +144,14 @@ def through(factors: Sequence[Array], spectrum: Sequence[BinnedDepth]) -> tuple[
     return tuple(contaminated(part, factor) for part, factor in zip(spectrum, factors, strict=True))
 
 
-def _template(case: Case, spectrum: BinnedDepth, null: BinnedDepth) -> Array:
+def _templates(
+    model: ForwardModel, case: Case, spectrum: Sequence[BinnedDepth], factors: Sequence[Array]
+) -> list[Array]:
     """What the searched gases make: for one, its share where its data cover; for a set, all that goes with it."""
     if len(case.gases) == 1:
-        return spectrum.shares_ppm[case.gases[0]]
-    return spectrum.depth_ppm - null.depth_ppm
+        return [part.shares_ppm[case.gases[0]] for part in spectrum]
+    absent = through(factors, model.binned(case, transparent=case.gases))
+    return [part.depth_ppm - without.depth_ppm for part, without in zip(spectrum, absent, strict=True)]
 
 
 def measurement_of(

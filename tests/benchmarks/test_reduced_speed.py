@@ -6,11 +6,11 @@ import time
 
 import pytest
 
+from planner.pool import in_threads
 from planner.resources import data_folder
 from planner.scenario import read_scenario
 from planner.studies.domain import domain_of
 from planner.studies.forward import Change
-from planner.studies.pool import in_threads
 from planner.studies.reduced import _Choice, reduce_opacity
 from planner.studies.spread import draw_searches
 from planner.studies.workshop import Workshop

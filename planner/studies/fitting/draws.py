@@ -11,11 +11,11 @@ from scipy import special
 
 from planner.claims.spectrum import ObservedSpectrum
 from planner.detection.nested import NestedRun, draws
+from planner.pool import in_threads
 from planner.studies.fitting.likelihood import LevelledData
 from planner.studies.fitting.posterior import LeftOut, effective_size, leave_out_each, offset_of
 from planner.studies.fitting.problem import FitProblem
 from planner.studies.fitting.records import BinReport, Found, Recheck
-from planner.studies.pool import in_threads
 from planner.studies.workshop import Progress, Workshop
 
 __all__ = ["Posterior", "bin_report", "drawn", "offsets", "recheck", "with_level"]

@@ -6,9 +6,9 @@ from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from typing import TypeVar
 
-from planner.studies.workshop import Progress
+__all__ = ["Progress", "in_threads"]
 
-__all__ = ["in_threads"]
+Progress = Callable[[str, float], None]
 
 Item = TypeVar("Item")
 Result = TypeVar("Result")

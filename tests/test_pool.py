@@ -7,7 +7,7 @@ import threading
 import pytest
 from numba import config
 
-from planner.studies.pool import in_threads
+from planner.pool import in_threads
 
 
 def test_results_keep_their_order():
