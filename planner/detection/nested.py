@@ -10,7 +10,6 @@ stopped, and its state is nothing but arrays.
 from __future__ import annotations
 
 from collections.abc import Callable
-from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from itertools import islice
 
@@ -28,8 +27,6 @@ _CUBE_WHILE = 0.1
 """As long as so much of the prior is left, drawing from all of it is cheaper than from ellipsoids."""
 _ENLARGED = 1.25
 """Volume of the ellipsoids over that which holds the live points."""
-_QUEUE = 8
-"""Points that are looked for at once, whatever the threads, so that these do not change the result."""
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -85,7 +82,7 @@ class NestedRun:
         return float(1 / np.sum(self.weights**2))
 
 
-def begin(ln_likelihood: LnLikelihood, parameters: int, *, live: int, seed: int, workers: int = 1) -> NestedState:
+def begin(ln_likelihood: LnLikelihood, parameters: int, *, live: int, seed: int) -> NestedState:
     """The first live points, drawn from the prior.
 
     Parameters
@@ -96,12 +93,9 @@ def begin(ln_likelihood: LnLikelihood, parameters: int, *, live: int, seed: int,
     live : int
         Points that live at any time: the error of ln(evidence) falls with their root, the work grows with them.
     seed : int
-    workers : int
-        Threads.
     """
     points = np.random.default_rng([seed, 0]).random((live, parameters))
-    with ThreadPoolExecutor(workers) as pool:
-        values = np.array(list(pool.map(ln_likelihood, points)))
+    values = np.array([ln_likelihood(point) for point in points])
     return NestedState(
         dead=np.empty((0, parameters)),
         dead_ln_likelihood=np.empty(0),
@@ -112,32 +106,28 @@ def begin(ln_likelihood: LnLikelihood, parameters: int, *, live: int, seed: int,
     )
 
 
-def advance(state: NestedState, ln_likelihood: LnLikelihood, *, seed: int, workers: int = 1) -> NestedState:
+def advance(state: NestedState, ln_likelihood: LnLikelihood, *, seed: int) -> NestedState:
     """One leg further: as many points die as live, and e times less of the prior is left."""
     from dynesty import NestedSampler  # takes a while to load
 
     live, parameters = state.live.shape
-    with ThreadPoolExecutor(workers) as pool:
-        sampler = NestedSampler(
-            ln_likelihood,
-            lambda u: u,
-            parameters,
-            nlive=live,
-            bound="multi",
-            sample="unif",
-            live_points=[state.live.copy(), state.live.copy(), state.live_ln_likelihood.copy()],
-            bootstrap=0,  # ellipsoids wide enough for their own bootstrap leave few draws inside the likelihood
-            enlarge=_ENLARGED,
-            first_update={"min_ncall": np.inf, "min_eff": 0.0},
-            rstate=np.random.default_rng([seed, 1 + state.legs]),
-            pool=pool,
-            queue_size=_QUEUE,
-            use_pool={"update_bound": False},
-        )
-        if np.exp(_ln_left(state)) < _CUBE_WHILE:
-            sampler.update_bound_if_needed(-np.inf, force=True)
-        for _ in islice(sampler.sample(dlogz=None, add_live=False, save_bounds=False), live):
-            pass
+    sampler = NestedSampler(
+        ln_likelihood,
+        lambda u: u,
+        parameters,
+        nlive=live,
+        bound="multi",
+        sample="unif",
+        live_points=[state.live.copy(), state.live.copy(), state.live_ln_likelihood.copy()],
+        bootstrap=0,  # ellipsoids wide enough for their own bootstrap leave few draws inside the likelihood
+        enlarge=_ENLARGED,
+        first_update={"min_ncall": np.inf, "min_eff": 0.0},
+        rstate=np.random.default_rng([seed, 1 + state.legs]),
+    )
+    if np.exp(_ln_left(state)) < _CUBE_WHILE:
+        sampler.update_bound_if_needed(-np.inf, force=True)
+    for _ in islice(sampler.sample(dlogz=None, add_live=False, save_bounds=False), live):
+        pass
     died = sampler.results
     return NestedState(
         dead=np.concatenate([state.dead, died.samples_u]),

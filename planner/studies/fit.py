@@ -37,8 +37,10 @@ __all__ = ["SEED", "Keeper", "fit", "run_nested"]
 Array = NDArray[np.float64]
 
 SEED = 1
-LIVE = 200
-"""Live points: ln(evidence) is then good to about a quarter, and a fit of eight parameters takes minutes."""
+LIVE = 100
+"""Live points: ln(evidence) is then good to about a quarter, and a fit of eight parameters takes minutes.
+
+Models run one after the other: on few samples two threads wait for each other longer than they gain."""
 _ENOUGH = 0.1
 """A run ends when what is left can raise ln(evidence) by no more than this."""
 _CAUTIONS = (
@@ -133,7 +135,6 @@ def run_nested(
     *,
     live: int,
     seed: int,
-    workers: int,
     state: NestedState | None = None,
     each: Callable[[NestedState], None] = lambda state: None,
 ) -> NestedRun:
@@ -146,10 +147,10 @@ def run_nested(
     """
     ln_likelihood = problem.ln_likelihood
     if state is None:
-        state = begin(ln_likelihood, len(problem.unknowns), live=live, seed=seed, workers=workers)
+        state = begin(ln_likelihood, len(problem.unknowns), live=live, seed=seed)
         each(state)
     while remaining(state) > _ENOUGH:
-        state = advance(state, ln_likelihood, seed=seed, workers=workers)
+        state = advance(state, ln_likelihood, seed=seed)
         each(state)
     return outcome(state)
 
@@ -204,8 +205,6 @@ def _set_up(
 
 def _run(bench: _Bench, problem: FitProblem, live: int, seed: int, keeper: Keeper | None, tell: Progress) -> NestedRun:
     """One run, taken up where it was kept."""
-    from numba import config
-
     name = f"without-{problem.without}" if problem.without else "with-all"
     key = _key_of(bench, problem, live, seed)
     text = f"sampling air without {problem.without}" if problem.without else "sampling air with all gases"
@@ -218,7 +217,7 @@ def _run(bench: _Bench, problem: FitProblem, live: int, seed: int, keeper: Keepe
 
     problem.spectrum_ppm(np.full(len(problem.unknowns), 0.5))  # tells at once if the air cannot be
     kept = keeper.fetch(name, key) if keeper is not None else None
-    return run_nested(problem, live=live, seed=seed, workers=config.NUMBA_NUM_THREADS, state=kept, each=each)
+    return run_nested(problem, live=live, seed=seed, state=kept, each=each)
 
 
 def _key_of(bench: _Bench, problem: FitProblem, live: int, seed: int) -> str:

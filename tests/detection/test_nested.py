@@ -16,10 +16,10 @@ def hill(point):
     return float(-0.5 * (((x - 0.3) / 0.05) ** 2 + ((y - 0.6 - 0.3 * (x - 0.3)) / 0.1) ** 2))
 
 
-def whole(*, seed=1, workers=1):
-    state = begin(hill, 2, live=LIVE, seed=seed, workers=workers)
+def whole(*, seed=1):
+    state = begin(hill, 2, live=LIVE, seed=seed)
     while remaining(state) > 0.1:
-        state = advance(state, hill, seed=seed, workers=workers)
+        state = advance(state, hill, seed=seed)
     return state
 
 
@@ -76,11 +76,6 @@ def test_taken_up_again(state):
     for name in ("dead", "dead_ln_likelihood", "live", "live_ln_likelihood"):
         np.testing.assert_array_equal(getattr(again, name), getattr(state, name))
     assert again.evaluations == state.evaluations
-
-
-def test_threads_do_not_change_the_result(state):
-    """Points are looked for in the same order whoever looks for them."""
-    np.testing.assert_array_equal(whole(workers=2).dead, state.dead)
 
 
 def test_seed_changes_the_result(state):
