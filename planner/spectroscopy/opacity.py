@@ -221,9 +221,11 @@ class Opacities:
         low = self._node(source.molecule.formula, low_k, share)
         if high_k == low_k:
             return low
-        high = self._node(source.molecule.formula, high_k, share)
         weight = np.float32((1 / low_k - 1 / temperature_k) / (1 / low_k - 1 / high_k))
-        return low + weight * (high - low)
+        between = self._node(source.molecule.formula, high_k, share) - low
+        between *= weight
+        between += low
+        return between
 
     def _build_node(self, formula: str, temperature_k: float, self_fraction: float) -> NDArray[np.float32]:
         """Table on the whole grid at a temperature node, shape ``(pressure, wavenumber)``."""
