@@ -16,6 +16,7 @@ import zlib
 from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager, suppress
 from pathlib import Path
+from threading import Lock
 from typing import Any
 
 import numpy as np
@@ -36,6 +37,10 @@ def digest(*parts: bytes | str) -> str:
         total.update(len(data).to_bytes(8, "little"))
         total.update(data)
     return total.hexdigest()[:24]
+
+
+_LOADING = Lock()
+"""Headers are read one at a time: CPython 3.11 fails where two threads parse texts at once."""
 
 
 class Store:
@@ -114,7 +119,8 @@ class Store:
         for path in (self.folder / group).glob(f"{name}-*.npy"):
             try:
                 if f"{_checksum(path):08x}" == path.stem.rpartition("-")[2]:
-                    array: NDArray[Any] = np.load(path, mmap_mode="r", allow_pickle=False)
+                    with _LOADING:
+                        array: NDArray[Any] = np.load(path, mmap_mode="r", allow_pickle=False)
                     os.utime(path)
                     return array
             except FileNotFoundError:
