@@ -41,7 +41,7 @@ class Stretch(click.ParamType):
         """The two wavenumbers."""
         import astropy.units as u
 
-        from planner.scenario.readings import quantity
+        from planner.scenario.quantities import quantity
 
         low, _, high = str(value).partition(":")
         try:

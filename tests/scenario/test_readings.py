@@ -11,6 +11,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from planner.scenario.quantities import quantity
 from planner.scenario.readings import (
     Gas,
     GasAmounts,
@@ -20,7 +21,6 @@ from planner.scenario.readings import (
     Number,
     Sets,
     nearest,
-    quantity,
     shown,
 )
 
