@@ -10,6 +10,7 @@ from pathlib import Path
 
 import pytest
 from click.testing import CliRunner
+from small_system import SYSTEM
 
 from planner.cli import cli
 
@@ -17,19 +18,7 @@ SCENARIO = """
 title = "{title}"
 invented = true
 modes = ["grism-4-to-5-um"]
-[star]
-name = "s"
-temperature = "2650 K"
-radius = "0.12 R_sun"
-mass = "0.092 M_sun"
-distance = "{distance} pc"
-magnitudes = {{ J = "11.28 mag", Ks = "10.28 mag" }}
-[planet]
-name = "p"
-mass = "0.85 M_earth"
-radius = "1 R_earth"
-period = "5.49 d"
-impact_parameter = 0.25
+{system}
 [atmosphere]
 temperature = "250 K"
 pressure = "1 bar"
@@ -46,8 +35,9 @@ threshold = 3
 @pytest.fixture
 def folder(tmp_path, monkeypatch):
     """Two airs of one planet, and one of another."""
-    for name, gas, distance in (("a", "N2O", 12.8), ("b", "OCS", 12.8), ("far", "OCS", 20)):
-        (tmp_path / f"{name}.toml").write_text(SCENARIO.format(title=name, gas=gas, distance=distance))
+    for name, gas, distance in (("a", "N2O", "12.8 pc"), ("b", "OCS", "12.8 pc"), ("far", "OCS", "20 pc")):
+        system = SYSTEM.strip().replace("12.8 pc", distance)
+        (tmp_path / f"{name}.toml").write_text(SCENARIO.format(title=name, gas=gas, system=system))
     monkeypatch.chdir(tmp_path)
     return tmp_path
 

@@ -6,6 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from small_system import SYSTEM
 
 from planner.detection.significance import Measurement, one_sided_probability
 from planner.detection.simulate import rate_above, simulated_significances
@@ -20,19 +21,7 @@ SCENARIO = """
 title = "{title}"
 invented = true
 modes = {modes}
-[star]
-name = "s"
-temperature = "2650 K"
-radius = "{radius} R_sun"
-mass = "0.092 M_sun"
-distance = "12.8 pc"
-magnitudes = {{ J = "11.28 mag", Ks = "10.28 mag" }}
-[planet]
-name = "p"
-mass = "0.85 M_earth"
-radius = "1 R_earth"
-period = "5.49 d"
-impact_parameter = 0.25
+{system}
 [atmosphere]
 temperature = "{temperature} K"
 pressure = "1 bar"
@@ -53,8 +42,8 @@ def scenario(
     tables = "\n".join(f'[[candidates]]\ngas = "{gas}"\nmixing_ratio = {ratio}' for gas, ratio in candidates)
     return parse_scenario(
         SCENARIO.format(
-            title=title, absorbers=absorbers, temperature=temperature, radius=radius, power=power, candidates=tables,
-            modes=modes,
+            title=title, absorbers=absorbers, temperature=temperature, power=power, candidates=tables, modes=modes,
+            system=SYSTEM.strip().replace("0.12 R_sun", f"{radius} R_sun"),
         ),
         f"{title}.toml",
     )  # fmt: skip
